@@ -1,0 +1,265 @@
+"""Case files: one TOML file, read and checked, with the materials and plasmas it names.
+
+:func:`load_case` is the only way from a file to the objects of a run. Nothing wrong in a file
+leaves it but :class:`charging.errors.InputError`, which names file, line, key and value.
+"""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Callable, Iterable, Iterator, Mapping
+from dataclasses import dataclass, replace
+from pathlib import Path
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Any, TypeVar
+
+from pydantic import ValidationError
+
+from charging.case_errors import input_error, problems_of
+from charging.case_library import Sources, find_material, find_plasma
+from charging.case_tables import (
+    Attitude,
+    Body,
+    Case,
+    Emission,
+    Limit,
+    Link,
+    MarginPolicy,
+    Mode,
+    OrbitFixed,
+    OrbitKepler,
+    PlasmaEvent,
+    PlasmaTable,
+    Review,
+    Sun,
+    SunlitEclipse,
+    Surface,
+    Time,
+)
+from charging.errors import KeyPath, Problem, ProblemsFound
+from charging.toml_file import TomlFile, parse_toml, read_toml
+from charging.units import case_bare_keys, rewrite_quantities
+
+if TYPE_CHECKING:
+    from environments.plasma import Plasma
+    from materials.library import Material
+
+__all__ = [
+    "Attitude",
+    "Body",
+    "Case",
+    "Emission",
+    "Limit",
+    "Link",
+    "LoadedCase",
+    "MarginPolicy",
+    "Mode",
+    "OrbitFixed",
+    "OrbitKepler",
+    "PlasmaEvent",
+    "PlasmaTable",
+    "Review",
+    "Sun",
+    "SunlitEclipse",
+    "Surface",
+    "Time",
+    "case_schema",
+    "load_case",
+    "load_case_text",
+]
+
+T = TypeVar("T")
+_LAYER_PROPERTIES = ("relative_permittivity", "bulk_resistivity_ohm_m", "activation_energy_eV")
+
+
+@dataclass(frozen=True, slots=True)
+class LoadedCase:
+    """A case with everything it names.
+
+    Attributes
+    ----------
+    case : Case
+        The checked tables.
+    path : Path
+        The file as named by the person.
+    text, sha256 : str
+        Its text, and the SHA-256 of its bytes in hexadecimal.
+    materials, plasmas : mapping
+        Material or plasma by the text that names it in the case.
+    material_texts, plasma_texts : mapping
+        Their TOML texts by the same keys: with them the case can be run again.
+    """
+
+    case: Case
+    path: Path
+    text: str
+    sha256: str
+    materials: Mapping[str, Material]
+    material_texts: Mapping[str, str]
+    plasmas: Mapping[str, Plasma]
+    plasma_texts: Mapping[str, str]
+
+
+def load_case(path: str | Path, *, allow_outside: bool = False) -> LoadedCase:
+    """Read a case file and the materials and plasmas it names.
+
+    Parameters
+    ----------
+    path : str or Path
+        The case file, up to 1 MB of UTF-8 TOML.
+    allow_outside : bool, optional
+        Whether the case may name files outside its own folder (links are followed first).
+
+    Returns
+    -------
+    LoadedCase
+        Frozen.
+
+    Raises
+    ------
+    InputError
+        Anything that cannot be used, with file, line, key, value and what is allowed.
+    """
+    path = Path(path)
+    return _loaded(read_toml(path), path, Sources(path, allow_outside))
+
+
+def load_case_text(
+    text: str,
+    *,
+    file: str = "case.toml",
+    material_texts: Mapping[str, str] | None = None,
+    plasma_texts: Mapping[str, str] | None = None,
+) -> LoadedCase:
+    """Return a case from its text, as a result file keeps it.
+
+    Parameters
+    ----------
+    text : str
+        TOML text of the case.
+    file : str, optional
+        How messages call it.
+    material_texts, plasma_texts : mapping, optional
+        TOML texts by the text that names them in the case; what is not in them is a library name.
+
+    Raises
+    ------
+    InputError
+        As `load_case`; also when the case names a file that is not among the texts.
+    """
+    sources = Sources(material_texts=material_texts or {}, plasma_texts=plasma_texts or {})
+    return _loaded(parse_toml(text, file=file), Path(file), sources)
+
+
+def case_schema() -> dict[str, Any]:
+    """Return the JSON schema of a case file (keys with units; checks between keys not included).
+
+    Examples
+    --------
+    >>> sorted(case_schema()["required"])
+    ['body', 'orbit', 'plasma', 'surface', 'title']
+    """
+    return Case.model_json_schema()
+
+
+def _loaded(toml: TomlFile, path: Path, sources: Sources) -> LoadedCase:
+    case, origin = _checked(toml)
+    problems: list[Problem] = []
+    materials = _found(_materials_named(case), find_material, sources, problems)
+    plasmas = _found(_plasmas_named(case), find_plasma, sources, problems)
+    if not problems:
+        problems += _layer_problems(case, {name: found[0] for name, found in materials.items()})
+    if problems:
+        raise input_error(problems, toml.document, file=toml.file, lines=toml.lines, origin=origin)
+    return LoadedCase(
+        case=case,
+        path=path,
+        text=toml.text,
+        sha256=hashlib.sha256(toml.text.encode("utf-8")).hexdigest(),
+        materials=MappingProxyType({name: found[0] for name, found in materials.items()}),
+        material_texts=MappingProxyType({name: found[1] for name, found in materials.items()}),
+        plasmas=MappingProxyType({name: found[0] for name, found in plasmas.items()}),
+        plasma_texts=MappingProxyType({name: found[1] for name, found in plasmas.items()}),
+    )
+
+
+def _found(
+    named: Iterable[tuple[KeyPath, str]],
+    find: Callable[[str, Sources], tuple[T, str]],
+    sources: Sources,
+    problems: list[Problem],
+) -> dict[str, tuple[T, str]]:
+    """Return what the names stand for; add those that stand for nothing to `problems`."""
+    found: dict[str, tuple[T, str]] = {}
+    for key, name in named:
+        if name in found:
+            continue
+        try:
+            found[name] = find(name, sources)
+        except ProblemsFound as error:
+            problems += [replace(fault, key=key, value=name) for fault in error.problems]
+    return found
+
+
+def _checked(toml: TomlFile) -> tuple[Case, Mapping[KeyPath, KeyPath]]:
+    """Return the case of a document, and which of its keys stand in the file as bare ones."""
+    rewritten = rewrite_quantities(toml.document, case_bare_keys())
+    problems = list(rewritten.problems)
+    case = None
+    try:
+        case = Case.model_validate(rewritten.document)
+    except ValidationError as error:
+        problems += [
+            problem
+            for problem in problems_of(error, rewritten.document)
+            if problem.key not in rewritten.absent
+        ]
+    if case is None or problems:
+        raise input_error(
+            problems, toml.document, file=toml.file, lines=toml.lines, origin=rewritten.origin
+        )
+    return case, rewritten.origin
+
+
+def _materials_named(case: Case) -> Iterator[tuple[KeyPath, str]]:
+    for index, surface in enumerate(case.surface):
+        yield ("surface", index, "material"), surface.material
+
+
+def _plasmas_named(case: Case) -> Iterator[tuple[KeyPath, str]]:
+    yield ("plasma", "use"), case.plasma.use
+    for index, event in enumerate(case.plasma.event):
+        yield ("plasma", "event", index, "use"), event.use
+    for index, mode in enumerate(case.mode):
+        if mode.plasma is not None:
+            yield ("mode", index, "plasma"), mode.plasma
+    for index, name in enumerate(case.review.plasmas):
+        yield ("review", "plasmas", index), name
+
+
+def _layer_problems(case: Case, materials: Mapping[str, Material]) -> Iterator[Problem]:
+    """Yield surfaces whose material does not go with having, or not having, a thickness."""
+    for index, surface in enumerate(case.surface):
+        material = materials[surface.material]
+        if material.kind == "dielectric" and surface.thickness_m is None:
+            yield Problem(
+                ("surface", index, "thickness_m"),
+                f'is missing; its material "{material.name}" is a dielectric',
+                missing=True,
+                allowed="metres above 0",
+            )
+        elif material.kind == "conductor" and surface.thickness_m is not None:
+            yield Problem(
+                ("surface", index, "thickness_m"),
+                f'does not go with its material "{material.name}", a conductor',
+                value=surface.thickness_m,
+                next_step="Leave it out.",
+            )
+        elif surface.thickness_m is not None:
+            lacking = [name for name in _LAYER_PROPERTIES if name not in material.values]
+            if lacking:
+                yield Problem(
+                    ("surface", index, "material"),
+                    f"has no {' and no '.join(lacking)}, which a surface with thickness_m needs",
+                    value=surface.material,
+                )

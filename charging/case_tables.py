@@ -1,0 +1,340 @@
+"""The tables of a case file as frozen, strict objects; attribute = key of the file.
+
+Every number carries its unit in its name. Each table checks itself; what concerns several tables
+is in :mod:`charging.case_checks`, which :class:`Case` runs. Read a file with
+:func:`charging.case.load_case`.
+"""
+
+from __future__ import annotations
+
+import math
+from datetime import UTC, datetime, timedelta
+from typing import Annotated, ClassVar, Literal, Self, TypeAlias
+
+from pydantic import (
+    AfterValidator,
+    BaseModel,
+    ConfigDict,
+    Discriminator,
+    Field,
+    StringConstraints,
+    Tag,
+    model_validator,
+)
+
+from charging.case_checks import (
+    check_case,
+    check_event,
+    check_kepler,
+    check_limit,
+    check_link,
+    check_mode,
+    check_surface,
+)
+from charging.case_values import NAME_PATTERN, direction, free_text, reference, utc_time
+
+EARTH_EQUATORIAL_RADIUS_KM = 6378.137  # WGS-84 defining constant
+LONGEST_RUN_H = 24.0 * 366.0
+
+Name: TypeAlias = Annotated[str, StringConstraints(pattern=NAME_PATTERN)]
+"""Name of a surface, mode, material or plasma; never used as a path."""
+FreeText: TypeAlias = Annotated[str, AfterValidator(free_text)]
+Reference: TypeAlias = Annotated[str, AfterValidator(reference)]
+"""Library name, or a file when it ends in .toml or holds a slash."""
+Moment: TypeAlias = Annotated[datetime, AfterValidator(utc_time)]
+"""Moment in UTC; the file must say Z or an offset."""
+Direction: TypeAlias = Annotated[tuple[float, float, float], AfterValidator(direction)]
+"""Unit vector along what was written; any length but zero is accepted."""
+Positive: TypeAlias = Annotated[float, Field(gt=0.0)]
+Share: TypeAlias = Annotated[float, Field(ge=0.0, le=1.0)]
+Angle: TypeAlias = Annotated[float, Field(ge=-360.0, le=360.0)]
+Temperature: TypeAlias = Annotated[float, Field(gt=0.0, le=2000.0)]
+SolarActivity: TypeAlias = Annotated[float, Field(ge=50.0, le=500.0)]
+
+
+class Table(BaseModel):
+    """Common manner of every table: strict types, no unknown keys, no nan or inf, frozen."""
+
+    model_config = ConfigDict(strict=True, frozen=True, extra="forbid", allow_inf_nan=False)
+
+
+class OrbitKepler(Table):
+    """Mean Kepler elements about the Earth at `epoch`, which is the start of the run."""
+
+    kind: Literal["kepler"]
+    center: Literal["earth"] = Field(default="earth", description="central body")
+    epoch: Moment = Field(description="start of the run, UTC with Z")
+    semi_major_axis_km: float = Field(gt=EARTH_EQUATORIAL_RADIUS_KM, le=1e6)
+    eccentricity: float = Field(ge=0.0, lt=1.0)
+    inclination_deg: float = Field(ge=0.0, le=180.0)
+    raan_deg: Angle = Field(description="right ascension of the ascending node")
+    argument_of_perigee_deg: Angle
+    mean_anomaly_deg: Angle = Field(description="mean anomaly at epoch")
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_kepler(self, EARTH_EQUATORIAL_RADIUS_KM)
+        return self
+
+
+class OrbitFixed(Table):
+    """No orbit: the same sun and plasma for the whole run, the standards' own analysis."""
+
+    kind: Literal["fixed"]
+    illumination: Share = Field(description="share of the solar disc in view, 0 to 1")
+    sun_direction: Direction = Field(description="towards the Sun, body axes")
+    epoch: Moment = Field(default=datetime(2000, 1, 1, tzinfo=UTC), description="start, UTC with Z")
+    duration_h: float | None = Field(
+        default=None, gt=0.0, le=LONGEST_RUN_H, description="length of the run, here or in [time]"
+    )
+
+
+Orbit: TypeAlias = Annotated[OrbitKepler | OrbitFixed, Field(discriminator="kind")]
+
+
+class Time(Table):
+    """Length of the run, output grid and starting state."""
+
+    duration_h: float | None = Field(
+        default=None, gt=0.0, le=LONGEST_RUN_H, description="length of run"
+    )
+    output_step_s: float = Field(default=60.0, ge=1e-3, description="spacing of the output times")
+    start: Literal["uncharged", "equilibrium"] = Field(
+        default="uncharged",
+        description="all potentials 0 V, or in equilibrium with the first moment",
+    )
+
+
+class Sun(Table):
+    """Solar activity, distance, and the height below which air absorbs the ultraviolet."""
+
+    f107: SolarActivity = Field(default=150.0, description="10.7 cm radio flux, 1e-22 W m-2 Hz-1")
+    f107_81day: SolarActivity = Field(
+        default_factory=lambda given: float(given["f107"]),
+        description="81-day mean of f107; default: f107",
+    )
+    distance_au: float | None = Field(
+        default=None,
+        ge=0.01,
+        le=100.0,
+        description="distance from the Sun, fixed orbits only; default 1",
+    )
+    absorbing_height_km: float = Field(
+        default=0.0, ge=0.0, le=1000.0, description="added to the Earth's radius for the shadow"
+    )
+
+
+class Attitude(Table):
+    """How the body axes point: +z to nadir, +x along velocity, +y = z × x."""
+
+    law: Literal["nadir"] = "nadir"
+
+
+class PlasmaEvent(Table):
+    """A second plasma mixed in: linear over the rise, whole for the hold, then fading."""
+
+    onset: Moment | None = Field(default=None, description="begin of the rise, UTC with Z")
+    onset_h: float | None = Field(default=None, ge=0.0, description="begin, hours from the start")
+    rise_min: float = Field(ge=0.0, le=60.0 * LONGEST_RUN_H)
+    hold_min: float = Field(ge=0.0, le=60.0 * LONGEST_RUN_H)
+    decay_min: float = Field(
+        gt=0.0, le=60.0 * LONGEST_RUN_H, description="time constant of the exponential decay"
+    )
+    use: Reference = Field(description="plasma of the event")
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_event(self)
+        return self
+
+
+class PlasmaTable(Table):
+    """Plasma around the spacecraft and events on top of it."""
+
+    use: Reference = Field(description="library name (halflit plasmas) or file")
+    accept_assumed: FreeText | None = Field(
+        default=None, description="reason why a plasma of assumed figures may carry a verdict"
+    )
+    event: tuple[PlasmaEvent, ...] = ()
+
+
+class Body(Table):
+    """Size and collecting geometry of the whole spacecraft."""
+
+    radius_m: float = Field(gt=0.0, le=1000.0, description="radius of the equivalent sphere")
+    collection: Literal["auto", "sphere", "plane", "cylinder"] = "auto"
+
+
+class Emission(Table):
+    """Choice among published emission laws."""
+
+    secondary_law: Literal["both", "sanders_inouye_1979", "lin_joy_2005"] = Field(
+        default="both", description="both: the verdict takes the worse"
+    )
+
+
+class SunlitEclipse(Table):
+    """Surface temperature that relaxes between a sunlit and an eclipse value."""
+
+    sunlit_K: Temperature
+    eclipse_K: Temperature
+    time_constant_min: Positive
+
+
+def _number_or_table(value: object) -> str:
+    return "table" if isinstance(value, dict | SunlitEclipse) else "number"
+
+
+SurfaceTemperature: TypeAlias = Annotated[
+    Annotated[Temperature, Tag("number")] | Annotated[SunlitEclipse, Tag("table")],
+    Discriminator(_number_or_table),
+]
+
+
+class Surface(Table):
+    """One outer surface: material, area, and what lies behind it."""
+
+    name: Name
+    material: Reference = Field(description="library name (halflit materials) or file")
+    area_m2: Positive
+    thickness_m: float | None = Field(default=None, gt=0.0, le=1.0, description="of a dielectric")
+    normal: Direction | None = Field(default=None, description="outward, body axes")
+    tracks_sun: bool = Field(default=False, description="turns about body y towards the Sun")
+    side: Literal["front", "back"] | None = Field(default=None, description="of a sun tracker")
+    attached_to: Name = Field(default="structure", description="structure or an isolated conductor")
+    floating: bool = Field(default=False, description="an isolated conductor")
+    capacitance_F: float | None = Field(
+        default=None, gt=0.0, description="of an isolated conductor to what it is attached to"
+    )
+    neighbours: tuple[Name, ...] = ()
+    temperature_K: SurfaceTemperature | None = None
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_surface(self)
+        return self
+
+
+class Link(Table):
+    """A resistor between two conductors."""
+
+    between: tuple[Name, Name]
+    resistance_ohm: Positive
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_link(self)
+        return self
+
+
+class Mode(Table):
+    """A whole run of its own that differs in what is given here."""
+
+    name: Name
+    alternative: Literal[True]
+    illumination: Share | None = Field(default=None, description="fixed orbits only")
+    sun_direction: Direction | None = Field(default=None, description="fixed orbits only")
+    plasma: Reference | None = None
+    f107: SolarActivity | None = None
+    events: bool = Field(default=True, description="false drops the plasma events")
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_mode(self)
+        return self
+
+
+class MarginPolicy(Table):
+    """Allowed value = limit / factor."""
+
+    factor: float = Field(ge=1.0, le=100.0)
+    basis: FreeText
+
+
+class Limit(Table):
+    """A limit that replaces the default of its kind and scope, else adds to them."""
+
+    kind: Literal["normal", "inverted", "field"] = Field(
+        description="surface below structure, surface above structure, field in a dielectric"
+    )
+    surfaces: tuple[Name, ...] | None = Field(default=None, description="default: all")
+    allowed_V: Positive | None = None
+    allowed_V_m: Positive | None = Field(default=None, description="for kind = field")
+    requirement_id: FreeText | None = None
+    source_document: FreeText | None = None
+    clause: FreeText | None = None
+    margin_policy: MarginPolicy | None = None
+    reason: FreeText | None = None
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_limit(self)
+        return self
+
+
+class Review(Table):
+    """What a design review evaluates besides the case's own plasma."""
+
+    plasmas: tuple[Reference, ...] = ()
+    ages: tuple[Literal["begin", "end"], ...] = ("begin", "end")
+
+
+class Case(Table):
+    """A whole case file."""
+
+    title: FreeText
+    orbit: Orbit
+    time: Time = Field(default_factory=Time)
+    sun: Sun = Field(default_factory=Sun)
+    attitude: Attitude = Field(default_factory=Attitude)
+    plasma: PlasmaTable
+    body: Body
+    emission: Emission = Field(default_factory=Emission)
+    surface: tuple[Surface, ...]
+    link: tuple[Link, ...] = ()
+    mode: tuple[Mode, ...] = ()
+    limit: tuple[Limit, ...] = ()
+    review: Review = Field(default_factory=Review)
+
+    STRUCTURE: ClassVar[str] = "structure"
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Self:
+        check_case(self)
+        return self
+
+    @property
+    def epoch(self) -> datetime:
+        """Start of the run, aware, UTC."""
+        return self.orbit.epoch
+
+    @property
+    def duration_s(self) -> float:
+        """Length of the run [s], wherever the file gives it."""
+        hours = self.time.duration_h
+        if hours is None and isinstance(self.orbit, OrbitFixed):
+            hours = self.orbit.duration_h
+        assert hours is not None  # check_case refused a case without
+        return 3600.0 * hours
+
+    @property
+    def event_onset_s(self) -> tuple[float, ...]:
+        """Begin of each plasma event [s] after the start; negative: before it."""
+        return tuple(
+            3600.0 * event.onset_h
+            if event.onset_h is not None
+            else ((event.onset or self.epoch) - self.epoch) / timedelta(seconds=1)
+            for event in self.plasma.event
+        )
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """Names of the surfaces in the order of the file."""
+        return tuple(surface.name for surface in self.surface)
+
+    @property
+    def output_times(self) -> int:
+        """Number of output times: start + k·step, and the end."""
+        steps = self.duration_s / self.time.output_step_s
+        whole = math.floor(steps + 1e-9)  # 24 h in steps of 0.1 s must not gain one by rounding
+        return whole + 1 + (steps - whole > 1e-9)

@@ -1,0 +1,1 @@
+"""Currents of one surface in one plasma: collection, emission, escape, balance."""

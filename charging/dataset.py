@@ -1,0 +1,262 @@
+"""The result of a mode as an xarray dataset that follows CF-1.11.
+
+One table, `VARIABLES`, says what every variable is; writer, checks and
+documentation read it.
+"""
+
+from collections.abc import Mapping
+from typing import NamedTuple
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from charging import __version__
+from charging.audit import charge_audit
+from charging.case import LoadedCase
+from charging.currents.surface import MECHANISMS, electron_sheath
+from charging.orbit_run import TOLERANCE, CaseRun, ModeRun
+from charging.surroundings import epoch64, event_strength, seconds64
+
+Array = NDArray[np.float64]
+
+ALL_MECHANISMS = (*MECHANISMS, "conduction", "bias_or_emitter")
+REGION_MASKS = {"penumbra": 1, "umbra": 2, "plasma_event": 4}
+
+
+class Variable(NamedTuple):
+    """Dimensions, unit and meaning of one variable."""
+
+    dims: tuple[str, ...]
+    units: str | None
+    long_name: str
+
+
+VARIABLES: Mapping[str, Variable] = {
+    "potential": Variable(("surface", "time"), "V", "surface potential against the plasma"),
+    "structure_potential": Variable(("time",), "V", "structure potential against the plasma"),
+    "differential_potential": Variable(("surface", "time"), "V", "surface minus structure"),
+    "electric_field": Variable(
+        ("surface", "time"), "V m-1", "voltage across a dielectric over its thickness, 0 without"
+    ),
+    "current_density": Variable(
+        ("mechanism", "surface", "time"),
+        "A m-2",
+        "current density per exposed area, positive charge arriving",
+    ),
+    "charge_residual": Variable(
+        ("node", "time"), "C", "charge arrived by independent quadrature minus charge stored"
+    ),
+    "illumination": Variable(("time",), "1", "share of the solar disc in view of the body"),
+    "illuminated_fraction": Variable(
+        ("surface", "time"), "1", "share of a surface that other parts do not shade"
+    ),
+    "incidence_cosine": Variable(("surface", "time"), "1", "cosine of the angle of sunlight"),
+    "surface_temperature": Variable(("surface", "time"), "K", "temperature of the surface"),
+    "position": Variable(("axis", "time"), "m", "position from the Earth's centre, inertial"),
+    "sun_direction": Variable(
+        ("axis", "time"), "1", "unit vector to the Sun, inertial (fixed case: body axes)"
+    ),
+    "region": Variable(("time",), None, "light and plasma event"),
+    "population_density": Variable(("population", "time"), "m-3", "number density"),
+    "population_temperature": Variable(("population",), "eV", "temperature"),
+    "population_current_density": Variable(
+        ("population", "time"), "A m-2", "one-sided current density at plasma potential"
+    ),
+    "electron_debye_length": Variable(("time",), "m", "Debye length of the electrons as printed"),
+    "surface_area": Variable(("surface",), "m2", "exposed area"),
+}
+
+
+def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
+    """Evaluate one mode and one emission law at the output times.
+
+    Parameters
+    ----------
+    run : CaseRun
+    mode : ModeRun
+    member : int
+        Index of the law in ``mode.laws``; 0 is the nominal one.
+
+    Returns
+    -------
+    xarray.Dataset
+        Dimensions surface, time, mechanism, node, population, axis; labels as auxiliary
+        coordinates ``surface_name`` and so on (``ds.set_xindex("surface_name")``).
+    """
+    net, path, times = mode.net, mode.trajectories[member], mode.times_s
+    state = path(times)
+    node_potential = net.potentials(state)
+    surface = node_potential[:, net.surface_node].T
+    shot = mode.way.snapshot(times)
+    light = (shot.illumination * shot.incidence_cosine).T
+    flows = mode.balance.flows(member, times, state, light)
+    setting, temperature = mode.around.at(times)
+
+    by_mechanism = np.zeros((len(ALL_MECHANISMS), *surface.shape))
+    by_mechanism[: len(MECHANISMS)] = np.moveaxis(flows.surface_A_m2, 0, -1).transpose(1, 0, 2)
+    conduction = by_mechanism[ALL_MECHANISMS.index("conduction")]
+    conduction[net.film_surface] = flows.film_A_m2.T
+    field = np.zeros_like(surface)
+    field[net.film_surface] = (state[:, net.film_node] / net.film_thickness_m).T
+
+    audit = charge_audit(mode.balance, member, path)
+    residual = np.stack(
+        [np.interp(times, audit.ends_s, column, left=0.0) for column in audit.residual_C.T]
+    )
+    electrons, ions = mode.balance.models[member].electrons, mode.balance.models[member].ions
+    groups = (electrons, ions)
+    shares = np.concatenate([setting.strength[:, g.plasma] for g in groups], axis=1).T
+    density = np.concatenate([g.density_m3 for g in groups])
+    thermal = np.concatenate([g.thermal_current_A_m2 for g in groups])
+    values: dict[str, Array] = {
+        "potential": surface,
+        "structure_potential": node_potential[:, 0],
+        "differential_potential": surface - node_potential[:, 0],
+        "electric_field": field,
+        "current_density": by_mechanism,
+        "charge_residual": residual,
+        "illumination": shot.illumination,
+        "illuminated_fraction": np.ones_like(surface),
+        "incidence_cosine": shot.incidence_cosine,
+        "surface_temperature": temperature.T,
+        "position": shot.position_m,
+        "sun_direction": shot.sun_direction,
+        "region": _region(mode, shot.illumination),
+        "population_density": shares * density[:, None],
+        "population_temperature": np.concatenate([g.temperature_eV for g in groups]),
+        "population_current_density": shares * thermal[:, None],
+        "electron_debye_length": electron_sheath(electrons, setting.strength)[0],
+        "surface_area": net.area_m2,
+    }
+    dataset = xr.Dataset(
+        {name: (VARIABLES[name].dims, value) for name, value in values.items()},
+        coords={
+            "time": epoch64(run.loaded.case) + seconds64(times),
+            "surface_name": ("surface", list(run.loaded.case.names)),
+            "mechanism_name": ("mechanism", list(ALL_MECHANISMS)),
+            "node_name": ("node", list(net.node_names)),
+            "population_name": ("population", population_labels(mode)),
+            "axis_name": ("axis", ["x", "y", "z"]),
+        },
+    )
+    dataset.attrs = attributes(run.loaded, mode, member, audit.relative)
+    return with_attributes(dataset)
+
+
+def with_attributes(dataset: xr.Dataset) -> xr.Dataset:
+    """Set units, names, flags and encodings from `VARIABLES`; done last, before writing."""
+    for name, variable in VARIABLES.items():
+        attrs: dict[str, object] = {"long_name": variable.long_name}
+        if variable.units is not None:
+            attrs["units"] = variable.units
+        dataset[name].attrs = attrs
+        dataset[name].encoding = {"_FillValue": None}
+    dataset["region"].attrs |= {
+        "flag_masks": np.array(list(REGION_MASKS.values()), dtype=np.int8),
+        "flag_meanings": " ".join(REGION_MASKS),
+    }
+    for name, text in {
+        "surface_name": "name of the surface",
+        "mechanism_name": "name of the current",
+        "node_name": "name of the node",
+        "population_name": "plasma, species and number of the population",
+        "axis_name": "name of the axis",
+    }.items():
+        dataset[name].attrs = {"long_name": text}
+    dataset["time"].attrs = {
+        "standard_name": "time",
+        "long_name": "UTC",
+        "axis": "T",
+        "units_metadata": "leap_seconds: none",
+    }
+    first = np.datetime_as_string(dataset["time"].values[0], unit="s")
+    dataset["time"].encoding = {
+        "units": f"seconds since {str(first).replace('T', ' ')}",
+        "calendar": "standard",
+        "dtype": "float64",
+        "_FillValue": None,
+    }
+    return dataset
+
+
+def attributes(
+    loaded: LoadedCase, mode: ModeRun, member: int, audit_relative: float
+) -> dict[str, object]:
+    """Global attributes: with them the run can be repeated from the file alone."""
+    return {
+        "Conventions": "CF-1.11",
+        "title": loaded.case.title,
+        "source": f"halflit {__version__}: surface charging by current balance along an orbit",
+        "comment": (
+            "An estimate. Program requirements, applicable standards and qualified specialists "
+            "decide; crewed use needs its own safety process. Not modelled: internal charging, "
+            "discharge transients, plumes, electron exchange between surfaces, surface "
+            "conduction, potential barriers raised by neighbours."
+        ),
+        "halflit_version": __version__,
+        "mode": mode.name,
+        "secondary_law": mode.laws[member],
+        "backscatter_law": "prokopenko_laframboise_1980",
+        "ion_impact_law": "whipple_1981",
+        "conduction_law": "Arrhenius with adamec_calderwood_1981",
+        "case_file": loaded.path.name,
+        "case_text": loaded.text,
+        "case_sha256": loaded.sha256,
+        **_texts("material", loaded.material_texts),
+        **_texts("plasma", loaded.plasma_texts),
+        "seeds": "none",
+        "march_method": "RODAS, order 4(3), dense output",
+        "march_absolute_tolerance_V": TOLERANCE.absolute,
+        "march_relative_tolerance": TOLERANCE.relative,
+        "march_steps": len(mode.trajectories[member].step_s),
+        "march_attempts": mode.trajectories[member].attempts,
+        "charge_audit_relative": audit_relative,
+        "warnings": "\n".join(warnings_of(loaded, mode)) or "none",
+    }
+
+
+def _texts(kind: str, texts: Mapping[str, str]) -> dict[str, object]:
+    import hashlib
+    import json
+
+    return {
+        f"{kind}_texts": json.dumps(dict(texts), ensure_ascii=False, sort_keys=True),
+        f"{kind}_sha256": json.dumps(
+            {name: hashlib.sha256(text.encode()).hexdigest() for name, text in texts.items()},
+            ensure_ascii=False,
+            sort_keys=True,
+        ),
+    }
+
+
+def population_labels(mode: ModeRun) -> list[str]:
+    """Names of all populations, electrons first, in the order of the kernel."""
+    labels = []
+    for electrons in (True, False):
+        for plasma in mode.plasmas:
+            number = 0
+            for p in plasma.populations:
+                if (p.species.charge_number < 0) == electrons:
+                    number += 1
+                    labels.append(f"{plasma.name}: {p.species.name} {number}")
+    return labels
+
+
+def warnings_of(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
+    """What a reader of the result must know about this run."""
+    found = []
+    for plasma in dict.fromkeys(mode.plasmas):
+        if plasma.basis == "assumed":
+            found.append(f'plasma "{plasma.name}" rests on assumed figures')
+    return tuple(found)
+
+
+def _region(mode: ModeRun, light: Array) -> NDArray[np.int8]:
+    flags = np.zeros(light.shape, dtype=np.int8)
+    flags[(light > 0.0) & (light < 1.0)] |= REGION_MASKS["penumbra"]
+    flags[light <= 0.0] |= REGION_MASKS["umbra"]
+    for event in mode.around.episodes:
+        # below 1 % of its strength an event is over
+        flags[event_strength(mode.times_s, event) > 0.01] |= REGION_MASKS["plasma_event"]
+    return flags

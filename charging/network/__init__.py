@@ -1,0 +1,1 @@
+"""Many surfaces in time: nodes, capacitance, conduction, march."""

@@ -1,0 +1,137 @@
+"""The charge balance of a whole spacecraft as a stiff system for the march."""
+
+from dataclasses import dataclass
+from typing import NamedTuple, Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from charging.currents.lookup import NetCurrents
+from charging.currents.surface import Setting, SurfaceModel, surface_currents
+from charging.currents.tables import REACH_V
+from charging.network.nodes import Network
+from materials.conduction import LARGEST_FIELD_V_m, arrhenius_kernel, enhancement_kernel
+
+Array = NDArray[np.float64]
+Index = NDArray[np.intp]
+
+
+class Around(Protocol):
+    """What the balance needs to know of the orbit, at any times [m]."""
+
+    def at(self, time_s: Array) -> tuple[Setting, Array]:
+        """Return plasma shares [m, P] and light [m, S], and surface temperatures [K, m, S]."""
+        ...
+
+
+class Flows(NamedTuple):
+    """Currents of one evaluation by the direct path, at times [m].
+
+    surface_A_m2 : ndarray [m, S, 6], order of `surface.MECHANISMS`;
+    film_A_m2 : ndarray [m, F], conduction arriving at the outer face;
+    link_A : ndarray [m, L], from the first to the second end (positive lowers the first).
+    """
+
+    surface_A_m2: Array
+    film_A_m2: Array
+    link_A: Array
+
+
+@dataclass(frozen=True, slots=True)
+class ChargeBalance:
+    """``System`` of the march for members that differ in their surface model.
+
+    Attributes
+    ----------
+    models : tuple of SurfaceModel
+        One per member.
+    table : NetCurrents
+        Built from `models`.
+    net : Network
+    around : Around
+    mass : ndarray [n, n]
+    """
+
+    models: tuple[SurfaceModel, ...]
+    table: NetCurrents
+    net: Network
+    around: Around
+    mass: Array
+
+    def rhs(self, member: Index, time_s: Array, y: Array) -> Array:
+        """Charge rates [A] of the state variables [m, n]."""
+        return self._rates(member, time_s, y)[0]
+
+    def rhs_and_jacobian(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array]:
+        """Charge rates [A] of the state variables [m, n] and derivatives [A/V, m, n, n]."""
+        net = self.net
+        rate, slope, film_slope = self._rates(member, time_s, y)
+        moves = net.moves
+        jacobian = ((moves * (net.area_m2 * slope)[:, None, :])[:, :, None, :] * moves).sum(axis=-1)
+        jacobian[:, net.film_node, net.film_node] += film_slope
+        jacobian -= net.link_stiffness_S
+        return rate, jacobian
+
+    def _rates(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array, Array]:
+        """Charge rates [m, n], slopes of the surfaces [A m-2 V-1, m, S] and films [A/V, m, F]."""
+        net = self.net
+        setting, temperature = self.around.at(time_s)
+        potential = net.potentials(y)[:, net.surface_node]
+        current, slope = self.table(member, potential, setting)
+        rate = (net.moves * (net.area_m2 * current)[:, None, :]).sum(axis=-1)
+        film, film_slope = self._films(temperature, y)
+        area = net.area_m2[net.film_surface]
+        rate[:, net.film_node] += film * area
+        if net.link_nodes:
+            rate -= (net.link_rows * self._links(y)[..., None]).sum(axis=-2)
+        return rate, slope, film_slope * area
+
+    def _films(self, temperature_K: Array, y: Array) -> tuple[Array, Array]:
+        """Conduction through films [A m-2], positive to the outer face, and slope by y."""
+        net = self.net
+        field = y[:, net.film_node] / net.film_thickness_m
+        temperature = temperature_K[:, net.film_surface]
+        sigma = arrhenius_kernel(temperature, net.film_activation_eV) / net.film_resistivity_ohm_m
+        factor, d_factor = enhancement_kernel(field, temperature, net.film_permittivity)
+        return -sigma * factor * field, -sigma * (factor + d_factor * field) / net.film_thickness_m
+
+    def _links(self, y: Array) -> Array:
+        return (self.net.link_rows * y[:, None, :]).sum(axis=-1) * self.net.link_conductance_S
+
+    def flows(
+        self, member: int, time_s: Array, y: Array, light: Array | None = None
+    ) -> Flows:
+        """Evaluate all currents of one member by the direct path, not by the march's tables.
+
+        `light` [m, S] replaces the interpolated one where the exact one is known.
+        """
+        potential = self.net.potentials(y)[:, self.net.surface_node]
+        setting, temperature = self.around.at(time_s)
+        if light is not None:
+            setting = setting._replace(light=light)
+        by_mechanism = surface_currents(self.models[member], potential, setting).by_mechanism
+        return Flows(by_mechanism, self._films(temperature, y)[0], self._links(y))
+
+    def node_currents(self, flows: Flows) -> Array:
+        """Net current into every node [A, m, n], conduction and links included."""
+        net = self.net
+        into = np.zeros((len(flows.film_A_m2), len(net.node_names)))
+        arriving = flows.surface_A_m2.sum(axis=-1) * net.area_m2
+        np.add.at(into, (slice(None), net.surface_node), arriving)
+        film = flows.film_A_m2 * net.area_m2[net.film_surface]
+        np.add.at(into, (slice(None), net.film_node), film)
+        np.add.at(into, (slice(None), net.film_parent), -film)
+        for row, ends in enumerate(net.link_nodes):
+            into[:, ends[0]] -= flows.link_A[:, row]
+            into[:, ends[1]] += flows.link_A[:, row]
+        return into
+
+    def controlled(self, y: Array) -> Array:
+        """Absolute and differential potentials: both must be right."""
+        return np.concatenate([y, self.net.potentials(y)[..., 1:]], axis=-1)
+
+    def admissible(self, y: Array) -> NDArray[np.bool_]:
+        """Potentials inside the tables and fields inside the conduction law."""
+        inside = (np.abs(self.controlled(y)) < 0.5 * REACH_V).all(axis=-1)
+        field = np.abs(y[:, self.net.film_node]) / self.net.film_thickness_m
+        return inside & (field < LARGEST_FIELD_V_m).all(axis=-1)
