@@ -49,9 +49,11 @@ def charge_audit(balance: ChargeBalance, member: int, path: Trajectory) -> Audit
 
     through = np.zeros((len(times), len(net.node_names)))
     size = np.abs(flows.surface_A_m2).sum(axis=-1) * net.area_m2
-    np.add.at(through, (slice(None), net.surface_node), size)
+    for surface, node in enumerate(net.surface_node):
+        through[:, node] += size[:, surface]
     film = np.abs(flows.film_A_m2) * net.area_m2[net.film_surface]
-    np.add.at(through, (slice(None), net.film_node), film)
+    for i, node in enumerate(net.film_node):
+        through[:, node] += film[:, i]
     total = (through.reshape(steps, POINTS, -1) * share).sum(axis=(0, 1))
     relative = float(np.max(np.abs(residual) / np.where(total > 0.0, total, 1.0)))
     return Audit(path.start_s + path.step_s, residual, relative)

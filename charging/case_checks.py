@@ -27,6 +27,7 @@ if TYPE_CHECKING:
 
 STRUCTURE = "structure"
 MOST_OUTPUT_TIMES = 200_000
+MOST_PROBLEMS = 50  # a search for the nearest name belongs to each
 
 
 # one table ---------------------------------------------------------------------------------------
@@ -165,19 +166,18 @@ def _list_problems(key: KeyPath, names: Sequence[str]) -> Iterator[Problem]:
 def check_case(case: Case) -> None:
     """Refuse what one table says against another: names, times, kinds of orbit."""
     if not case.surface:
-        raise ProblemsFound([_missing("surface", "is missing", "at least one [[surface]]")])
-    _raise(
-        [
-            *_time_problems(case),
-            *_sun_problems(case),
-            *_event_problems(case),
-            *_name_problems(case),
-            *_attachment_problems(case),
-            *_mode_problems(case),
-            *_list_problems(("review", "ages"), case.review.ages),
-            *_list_problems(("review", "plasmas"), case.review.plasmas),
-        ]
+        raise ProblemsFound([_missing("surface", allowed="at least one [[surface]]")])
+    found = itertools.chain(
+        _time_problems(case),
+        _sun_problems(case),
+        _event_problems(case),
+        _name_problems(case),
+        _attachment_problems(case),
+        _mode_problems(case),
+        _list_problems(("review", "ages"), case.review.ages),
+        _list_problems(("review", "plasmas"), case.review.plasmas),
     )
+    _raise(itertools.islice(found, MOST_PROBLEMS))
 
 
 def _time_problems(case: Case) -> Iterator[Problem]:

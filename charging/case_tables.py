@@ -35,6 +35,7 @@ from charging.case_values import NAME_PATTERN, direction, free_text, reference, 
 
 EARTH_EQUATORIAL_RADIUS_KM = 6378.137  # WGS-84 defining constant
 LONGEST_RUN_H = 24.0 * 366.0
+MOST_ENTRIES = 1000  # of one array; far beyond use
 
 Name: TypeAlias = Annotated[str, StringConstraints(pattern=NAME_PATTERN)]
 """Name of a surface, mode, material or plasma; never used as a path."""
@@ -155,7 +156,7 @@ class PlasmaTable(Table):
     accept_assumed: FreeText | None = Field(
         default=None, description="reason why a plasma of assumed figures may carry a verdict"
     )
-    event: tuple[PlasmaEvent, ...] = ()
+    event: tuple[PlasmaEvent, ...] = Field(default=(), max_length=MOST_ENTRIES)
 
 
 class Body(Table):
@@ -206,7 +207,7 @@ class Surface(Table):
     capacitance_F: float | None = Field(
         default=None, gt=0.0, description="of an isolated conductor to what it is attached to"
     )
-    neighbours: tuple[Name, ...] = ()
+    neighbours: tuple[Name, ...] = Field(default=(), max_length=MOST_ENTRIES)
     temperature_K: SurfaceTemperature | None = None
 
     @model_validator(mode="after")
@@ -257,7 +258,9 @@ class Limit(Table):
     kind: Literal["normal", "inverted", "field"] = Field(
         description="surface below structure, surface above structure, field in a dielectric"
     )
-    surfaces: tuple[Name, ...] | None = Field(default=None, description="default: all")
+    surfaces: tuple[Name, ...] | None = Field(
+        default=None, max_length=MOST_ENTRIES, description="default: all"
+    )
     allowed_V: Positive | None = None
     allowed_V_m: Positive | None = Field(default=None, description="for kind = field")
     requirement_id: FreeText | None = None
@@ -275,8 +278,8 @@ class Limit(Table):
 class Review(Table):
     """What a design review evaluates besides the case's own plasma."""
 
-    plasmas: tuple[Reference, ...] = ()
-    ages: tuple[Literal["begin", "end"], ...] = ("begin", "end")
+    plasmas: tuple[Reference, ...] = Field(default=(), max_length=MOST_ENTRIES)
+    ages: tuple[Literal["begin", "end"], ...] = Field(default=("begin", "end"), max_length=2)
 
 
 class Case(Table):
@@ -290,10 +293,10 @@ class Case(Table):
     plasma: PlasmaTable
     body: Body
     emission: Emission = Field(default_factory=Emission)
-    surface: tuple[Surface, ...]
-    link: tuple[Link, ...] = ()
-    mode: tuple[Mode, ...] = ()
-    limit: tuple[Limit, ...] = ()
+    surface: tuple[Surface, ...] = Field(max_length=MOST_ENTRIES)
+    link: tuple[Link, ...] = Field(default=(), max_length=MOST_ENTRIES)
+    mode: tuple[Mode, ...] = Field(default=(), max_length=MOST_ENTRIES)
+    limit: tuple[Limit, ...] = Field(default=(), max_length=MOST_ENTRIES)
     review: Review = Field(default_factory=Review)
 
     STRUCTURE: ClassVar[str] = "structure"

@@ -4,7 +4,10 @@ One table, `VARIABLES`, says what every variable is; writer, checks and
 documentation read it.
 """
 
+import hashlib
+import json
 from collections.abc import Mapping
+from pathlib import Path
 from typing import NamedTuple
 
 import numpy as np
@@ -15,7 +18,9 @@ from charging import __version__
 from charging.audit import charge_audit
 from charging.case import LoadedCase
 from charging.currents.surface import MECHANISMS, electron_sheath
+from charging.errors import InputError
 from charging.orbit_run import TOLERANCE, CaseRun, ModeRun
+from charging.review.limits import requirements
 from charging.surroundings import epoch64, event_strength, seconds64
 
 Array = NDArray[np.float64]
@@ -109,7 +114,7 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
     shares = np.concatenate([setting.strength[:, g.plasma] for g in groups], axis=1).T
     density = np.concatenate([g.density_m3 for g in groups])
     thermal = np.concatenate([g.thermal_current_A_m2 for g in groups])
-    values: dict[str, Array] = {
+    values: dict[str, Array | NDArray[np.int8]] = {
         "potential": surface,
         "structure_potential": node_potential[:, 0],
         "differential_potential": surface - node_potential[:, 0],
@@ -212,14 +217,22 @@ def attributes(
         "march_steps": len(mode.trajectories[member].step_s),
         "march_attempts": mode.trajectories[member].attempts,
         "charge_audit_relative": audit_relative,
+        "limits": json.dumps(
+            [
+                {
+                    "kind": r.kind,
+                    "limit": r.limit,
+                    "surfaces": r.surfaces,
+                    "requirement_id": r.requirement_id,
+                }
+                for r in requirements(loaded.case)
+            ]
+        ),
         "warnings": "\n".join(warnings_of(loaded, mode)) or "none",
     }
 
 
 def _texts(kind: str, texts: Mapping[str, str]) -> dict[str, object]:
-    import hashlib
-    import json
-
     return {
         f"{kind}_texts": json.dumps(dict(texts), ensure_ascii=False, sort_keys=True),
         f"{kind}_sha256": json.dumps(
@@ -245,11 +258,11 @@ def population_labels(mode: ModeRun) -> list[str]:
 
 def warnings_of(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
     """What a reader of the result must know about this run."""
-    found = []
-    for plasma in dict.fromkeys(mode.plasmas):
-        if plasma.basis == "assumed":
-            found.append(f'plasma "{plasma.name}" rests on assumed figures')
-    return tuple(found)
+    return tuple(
+        f'plasma "{plasma.name}" rests on assumed figures'
+        for plasma in dict.fromkeys(mode.plasmas)
+        if plasma.basis == "assumed"
+    )
 
 
 def _region(mode: ModeRun, light: Array) -> NDArray[np.int8]:
@@ -260,3 +273,28 @@ def _region(mode: ModeRun, light: Array) -> NDArray[np.int8]:
         # below 1 % of its strength an event is over
         flags[event_strength(mode.times_s, event) > 0.01] |= REGION_MASKS["plasma_event"]
     return flags
+
+
+def read_result(path: Path) -> xr.Dataset:
+    """Read a result file into memory.
+
+    Raises
+    ------
+    InputError
+        No such file, a folder without result.nc, or not a result of this program.
+    """
+    if path.is_dir() and (path / "result.nc").is_file():
+        path = path / "result.nc"
+    if not path.is_file():
+        reason = "is a folder without result.nc" if path.is_dir() else "does not exist"
+        raise InputError(reason, file=str(path), allowed="a result folder or its result.nc")
+    try:
+        with xr.open_dataset(path, engine="netcdf4") as dataset:
+            dataset.load()
+    except (OSError, ValueError) as error:
+        raise InputError(f"cannot be read as NetCDF ({error})", file=str(path)) from error
+    lacking = [name for name in VARIABLES if name not in dataset]
+    if lacking or "case_text" not in dataset.attrs:
+        what = f"variable {lacking[0]}" if lacking else "attribute case_text"
+        raise InputError(f"has no {what}, so it is no result of halflit", file=str(path))
+    return dataset

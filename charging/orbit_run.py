@@ -11,7 +11,7 @@ from charging.currents.emission import SECONDARY_LAWS
 from charging.currents.lookup import net_currents
 from charging.currents.surface import Setting, surface_model
 from charging.errors import NoSolutionError
-from charging.network.charge_balance import ChargeBalance
+from charging.network.charge_balance import Around, ChargeBalance
 from charging.network.march import Tolerance, Trajectory, march
 from charging.network.nodes import Network
 from charging.spacecraft import spacecraft_network, surface_materials
@@ -193,7 +193,7 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
 class _Frozen:
     """Surroundings that stay as they are at the start."""
 
-    around: Surroundings
+    around: Around
 
     def at(self, time_s: Array) -> tuple[Setting, Array]:
         return self.around.at(np.zeros_like(time_s))

@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from charging.case_tables import Case, Mode, OrbitFixed, OrbitKepler, SunlitEclipse, Surface
 from charging.currents.surface import Setting
-from environments.attitude import incidence_cosine, nadir_axes, to_body, tracking_cosine
+from environments.attitude import nadir_axes, to_body, tracking_cosine
 from environments.eclipse import Eclipse, find_eclipses
 from environments.orbit import EARTH_RADIUS_M, KeplerOrbit, period_s, position_velocity
 from environments.sun import distance_au, illumination, sun_path, sun_position_m

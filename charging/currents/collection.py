@@ -48,7 +48,7 @@ def cylinder_factor(u: Array) -> Array:
     Mott-Smith & Langmuir (1926), Phys. Rev. 28, 727 (equation from memory).
     """
     root = np.sqrt(u)
-    return 2.0 / np.sqrt(np.pi) * root + erfcx(root)
+    return np.asarray(2.0 / np.sqrt(np.pi) * root + erfcx(root), dtype=np.float64)
 
 
 def _plane_slope(u: Array) -> Array:
@@ -61,7 +61,7 @@ def _sphere_slope(u: Array) -> Array:
 
 def _cylinder_slope(u: Array) -> Array:
     # d/du [2 sqrt(u/pi) + erfcx(sqrt u)] = erfcx(sqrt u), exactly
-    return erfcx(np.sqrt(u))
+    return np.asarray(erfcx(np.sqrt(u)), dtype=np.float64)
 
 
 class Geometry(NamedTuple):

@@ -8,18 +8,18 @@ from collections.abc import Hashable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from materials.backscatter import isotropic_backscatter
+from numpy.typing import NDArray
+
+from charging.currents.collection import PLANE, Geometry
+from charging.currents.tables import Yield, YieldTable, average_yields, knot_scale, knots
 from environments.spectrum import SolarSpectrum
+from materials.backscatter import isotropic_backscatter
 from materials.ion_impact import whipple_1981
 from materials.photoemission import escape_fraction
 from materials.photoyield import emission_spectrum, photo_current_density
 from materials.record import Material
 from materials.secondary import YieldLaw, isotropic_yield, true_secondary_peak
 from materials.secondary_escape import secondary_escape_fraction
-from numpy.typing import NDArray
-
-from charging.currents.collection import PLANE, Geometry
-from charging.currents.tables import Yield, YieldTable, average_yields, knot_scale, knots
 
 Array = NDArray[np.float64]
 
@@ -168,9 +168,7 @@ def escape_tables(surfaces: Sequence[Material], spectrum: SolarSpectrum) -> Yiel
     height = knots(ESCAPE_SCALE_V, ESCAPE_SPACING)
     unique = {material.name: material for material in surfaces}
     columns = {
-        name: np.stack(
-            [_photo_escape(height, m, spectrum), _secondary_escape(height, m)], axis=-1
-        )
+        name: np.stack([_photo_escape(height, m, spectrum), _secondary_escape(height, m)], axis=-1)
         for name, m in unique.items()
     }
     values = np.stack([columns[material.name] for material in surfaces])

@@ -54,9 +54,7 @@ class NetCurrents:
     radius_m: float
     collection: str
 
-    def __call__(
-        self, which: Index, potential_V: Array, setting: Setting
-    ) -> tuple[Array, Array]:
+    def __call__(self, which: Index, potential_V: Array, setting: Setting) -> tuple[Array, Array]:
         """Net current density [A m-2] and its slope, each [m, S].
 
         Parameters
@@ -122,7 +120,8 @@ def net_currents(models: Sequence[SurfaceModel]) -> NetCurrents:
                     strength = np.broadcast_to(np.eye(plasmas)[p], (len(grid), plasmas))
                     dark = Setting(strength, np.zeros_like(phi))
                     columns.append(surface_currents(fixed, phi, dark).by_mechanism.sum(axis=-1))
-            lit = Setting(strength, np.ones_like(phi))
+            first_only = np.broadcast_to(np.eye(plasmas)[0], (len(grid), plasmas))
+            lit = Setting(first_only, np.ones_like(phi))
             columns.append(surface_currents(model, phi, lit).by_mechanism[..., PHOTO])
             values = np.stack(columns, axis=-1)  # [K, S, 2P+1]
             sides.append(np.moveaxis(CubicSpline(grid, values, axis=0).c, (2, 1), (0, 1)))

@@ -69,7 +69,7 @@ def populations(plasmas: Sequence[Plasma], *, electrons: bool) -> Populations:
         for p in plasma.populations
         if (p.species.charge_number < 0) == electrons
     ]
-    temperature, density, mass, charge, owner = (
+    temperature, density, _, charge, owner = (
         np.array([row[i] for row in rows], dtype=np.float64) for i in range(5)
     )
     thermal = np.array(
@@ -285,9 +285,7 @@ def _arrivals(
     )
     particles = (thermal / group.charge_number)[..., None]  # yields are per particle
     released = particles * boltzmann[..., None] * mean
-    d_released = particles * (
-        d_boltzmann[..., None] * mean + boltzmann[..., None] * d_mean
-    )
+    d_released = particles * (d_boltzmann[..., None] * mean + boltzmann[..., None] * d_mean)
     sign = attracting_sign
     return (
         current.sum(axis=-1),

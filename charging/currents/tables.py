@@ -37,7 +37,8 @@ def knot_scale(lowest_temperature_eV: float) -> float:
 def knots(scale_V: float, spacing: float = SPACING) -> Array:
     """Return the potentials φ_k [V] from 0 to at least `REACH_V`."""
     last = np.arcsinh(np.sqrt(REACH_V / scale_V))
-    return scale_V * np.sinh(spacing * np.arange(int(np.ceil(last / spacing)) + 1)) ** 2
+    grid = scale_V * np.sinh(spacing * np.arange(int(np.ceil(last / spacing)) + 1)) ** 2
+    return np.asarray(grid, dtype=np.float64)
 
 
 def flux_nodes() -> tuple[Array, Array]:

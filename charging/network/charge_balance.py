@@ -96,11 +96,10 @@ class ChargeBalance:
         return -sigma * factor * field, -sigma * (factor + d_factor * field) / net.film_thickness_m
 
     def _links(self, y: Array) -> Array:
-        return (self.net.link_rows * y[:, None, :]).sum(axis=-1) * self.net.link_conductance_S
+        across: Array = (self.net.link_rows * y[:, None, :]).sum(axis=-1)
+        return across * self.net.link_conductance_S
 
-    def flows(
-        self, member: int, time_s: Array, y: Array, light: Array | None = None
-    ) -> Flows:
+    def flows(self, member: int, time_s: Array, y: Array, light: Array | None = None) -> Flows:
         """Evaluate all currents of one member by the direct path, not by the march's tables.
 
         `light` [m, S] replaces the interpolated one where the exact one is known.
@@ -117,10 +116,12 @@ class ChargeBalance:
         net = self.net
         into = np.zeros((len(flows.film_A_m2), len(net.node_names)))
         arriving = flows.surface_A_m2.sum(axis=-1) * net.area_m2
-        np.add.at(into, (slice(None), net.surface_node), arriving)
+        for surface, node in enumerate(net.surface_node):
+            into[:, node] += arriving[:, surface]
         film = flows.film_A_m2 * net.area_m2[net.film_surface]
-        np.add.at(into, (slice(None), net.film_node), film)
-        np.add.at(into, (slice(None), net.film_parent), -film)
+        for i, (face, below) in enumerate(zip(net.film_node, net.film_parent, strict=True)):
+            into[:, face] += film[:, i]
+            into[:, below] -= film[:, i]
         for row, ends in enumerate(net.link_nodes):
             into[:, ends[0]] -= flows.link_A[:, row]
             into[:, ends[1]] += flows.link_A[:, row]
@@ -134,4 +135,4 @@ class ChargeBalance:
         """Potentials inside the tables and fields inside the conduction law."""
         inside = (np.abs(self.controlled(y)) < 0.5 * REACH_V).all(axis=-1)
         field = np.abs(y[:, self.net.film_node]) / self.net.film_thickness_m
-        return inside & (field < LARGEST_FIELD_V_m).all(axis=-1)
+        return np.asarray(inside & (field < LARGEST_FIELD_V_m).all(axis=-1))

@@ -59,7 +59,10 @@ TIME_DIFFERENCE = 1e-4  # df/dt is a forward difference over this share of the s
 class System(Protocol):
     """A stiff initial-value problem for a block of members."""
 
-    mass: Array  # [n, n]
+    @property
+    def mass(self) -> Array:
+        """Mass matrix [n, n]."""
+        ...
 
     def rhs(self, member: Index, time_s: Array, y: Array) -> Array:
         """Return f [m, n] for members `member` [m] at `time_s` [m], `y` [m, n]."""
@@ -224,7 +227,7 @@ def _rodas_step(
             for c, stage in zip(C[i], stages, strict=True):
                 mix += c * stage
             right = right + (mass_h * mix[:, None, :]).sum(axis=-1)
-        stages.append(np.linalg.solve(matrix, right[..., None])[..., 0])
+        stages.append(np.asarray(np.linalg.solve(matrix, right[..., None])[..., 0], np.float64))
     y1 = state + stages[5]
     inside &= system.admissible(y1)
     scale = tolerance.absolute + tolerance.relative * np.maximum(
@@ -240,6 +243,15 @@ def _rodas_step(
 def _collect(
     log: list[tuple[Index, Array, Array, Array, Array, Array, Array]], member: int, attempts: int
 ) -> Trajectory:
-    picked = [[column[entry[0] == member] for column in entry[1:]] for entry in log]
-    columns = [np.concatenate(column) for column in zip(*picked, strict=True)]
-    return Trajectory(*columns, attempts=attempts)
+    def column(number: int) -> Array:
+        return np.concatenate([entry[number][entry[0] == member] for entry in log])
+
+    return Trajectory(
+        start_s=column(1),
+        step_s=column(2),
+        y_start=column(3),
+        y_end=column(4),
+        c2=column(5),
+        c3=column(6),
+        attempts=attempts,
+    )

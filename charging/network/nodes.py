@@ -102,7 +102,8 @@ class Network:
 
     def potentials(self, y: Array) -> Array:
         """Absolute node potentials [..., n] of states [..., n]."""
-        return (self.ancestry * y[..., None, :]).sum(axis=-1)
+        v: Array = (self.ancestry * y[..., None, :]).sum(axis=-1)
+        return v
 
 
 def network(

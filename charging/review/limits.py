@@ -1,7 +1,6 @@
 """Design limits as data, and how a predicted value stands against them."""
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import log10
 from typing import Literal
 
@@ -57,8 +56,8 @@ class Requirement:
         return self.surfaces is None or surface in self.surfaces
 
 
-DEFAULTS: tuple[Requirement, ...] = tuple(
-    Requirement(
+def _ecss(kind: Kind, allowed: float, clause: str) -> Requirement:
+    return Requirement(
         kind=kind,
         allowed=allowed,
         surfaces=None,
@@ -68,11 +67,12 @@ DEFAULTS: tuple[Requirement, ...] = tuple(
         clause=clause,
         basis="standard",
     )
-    for kind, allowed, clause in (
-        ("normal", 1000.0, "6.2.1 a.1"),
-        ("field", 1e7, "6.2.1 a.2"),
-        ("inverted", 100.0, "6.2.1 a.3"),
-    )
+
+
+DEFAULTS = (
+    _ecss("normal", 1000.0, "6.2.1 a.1"),
+    _ecss("field", 1e7, "6.2.1 a.2"),
+    _ecss("inverted", 100.0, "6.2.1 a.3"),
 )
 """ECSS-E-ST-20-06C (31 July 2008), clause 6.2.1 a: the limits without a case's own."""
 
@@ -94,14 +94,8 @@ def requirements(case: Case) -> tuple[Requirement, ...]:
         if not taken:
             found.append(default)
         elif rest:
-            found.append(_for_surfaces(default, rest))
+            found.append(replace(default, surfaces=rest))
     return (*found, *own)
-
-
-def _for_surfaces(default: Requirement, surfaces: Sequence[str]) -> Requirement:
-    from dataclasses import replace
-
-    return replace(default, surfaces=tuple(surfaces))
 
 
 def _own(limit: Limit, number: int) -> Requirement:

@@ -110,7 +110,7 @@ def toml_text(draw: st.DrawFn) -> str:
     return text
 
 
-@settings(max_examples=1500, suppress_health_check=[HealthCheck.filter_too_much])
+@settings(max_examples=500, suppress_health_check=[HealthCheck.filter_too_much])
 @given(toml_text())
 def test_lines_know_the_keys_of_the_standard_reader(text: str) -> None:
     try:
@@ -128,7 +128,8 @@ def test_lines_know_the_keys_of_the_standard_reader(text: str) -> None:
 @given(st.data())
 def test_lines_are_those_where_a_key_was_written(data: st.DataObject) -> None:
     expected: dict[tuple[str | int, ...], int] = {}
-    text, table, count = "", (), 0
+    table: tuple[str | int, ...] = ()
+    text, count = "", 0
     for number in range(data.draw(st.integers(1, 8))):
         text += data.draw(st.sampled_from(["", "\n", "# x\n", "\r\n"]))
         line = text.count("\n") + 1

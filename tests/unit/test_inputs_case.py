@@ -124,9 +124,8 @@ def test_output_times_hold_both_ends(step: str, times: int) -> None:
 def test_objects_are_frozen() -> None:
     case = load_case_text(CASE_TEMPLATE).case
     with pytest.raises(ValidationError):
-        case.title = "other"  # type: ignore[misc]
-    with pytest.raises(TypeError):
-        case.surface[0] = case.surface[1]  # type: ignore[index]
+        case.title = "other"
+    assert isinstance(case.surface, tuple)
 
 
 def test_the_example_of_the_style() -> None:
@@ -162,7 +161,7 @@ FAULTS = [
     ("inclination_deg = 0.05", 'inclination_deg = "0.05"', "is a text", "without quotes"),
     ("inclination_deg = 0.05", "inclination_deg = [0]", "is no number", "a number"),
     ("inclination_deg = 0.05", "inclination_deg = " + "9" * 400, "near 1e400", "finite number"),
-    ("inclination_deg = 0.05", "inclination_deg = 0x" + "f" * 9000, "near 1e10837", "finite number"),
+    ("inclination_deg = 0.05", "inclination_deg = 0x" + "f" * 999, "near 1e1203", "finite number"),
     ("inclination_deg = 0.05", "inclination_deg = 1979-01-01", "is no number", "a number"),
     ("duration_h = 24.0", "duration_h = 0.0", "out of range", "above 0"),
     ("duration_h = 24.0", "duration_h = 8785", "out of range", "at most 8784"),
@@ -354,6 +353,19 @@ def test_toml_faults_carry_their_line(text: str, line: int) -> None:
 )  # fmt: skip
 def test_shapes_that_break_readers(text: str) -> None:
     refused(text)
+
+
+@pytest.mark.parametrize(
+    "extra",
+    ["".join(f"k{number} = 1\n" for number in range(60_000)),
+     "".join(f'[[surface]]\nname = "{number}"\n' for number in range(20_000)),
+     f"[review.x]\nplasmas = {[str(number) for number in range(90_000)]}\n",
+     f"[[limit]]\nkind = 'normal'\nallowed_V = 1\nsurfaces = {['x'] * 100_000}\n",
+     "".join('[[link]]\nbetween = ["a", "b"]\nresistance_ohm = 1\n' for _ in range(999))],
+    ids=["keys", "surfaces", "plasmas", "names", "links"],
+)  # fmt: skip
+def test_large_faulty_files_end_in_an_error(extra: str) -> None:
+    assert refused(CASE_TEMPLATE + extra).more >= 0
 
 
 def test_schema_is_json_with_every_key_of_the_template() -> None:

@@ -1,0 +1,265 @@
+"""Commands that run a case: run, review, plot."""
+
+from __future__ import annotations
+
+import sys
+import time
+from collections.abc import Callable
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+
+from charging.cli.output import print_json, print_table, volts
+
+if TYPE_CHECKING:
+    from charging.orbit_run import CaseRun
+
+CaseFile = Annotated[
+    Path,
+    typer.Argument(
+        metavar="CASE",
+        show_default=False,
+        help="Case file (TOML); start one with 'halflit case new'.",
+    ),
+]
+CaseOrResult = Annotated[
+    Path,
+    typer.Argument(
+        metavar="CASE|RESULT", show_default=False, help="Case file, result folder or result.nc."
+    ),
+]
+OutDir = Annotated[
+    Path | None,
+    typer.Option("--out", show_default=False, help="Result folder [default: ./<case file stem>/]."),
+]
+AllowOutside = Annotated[
+    bool, typer.Option("--allow-outside", help="Let the case name files outside its own folder.")
+]
+Json = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
+
+SLOW_S = 2.0
+"""A run that lasts longer says so, on a terminal only."""
+
+
+def register(app: typer.Typer) -> None:
+    """Add the commands to the application."""
+    app.command(epilog="Example: halflit run cases/geo_substorm_day.toml --out day1")(run)
+    app.command(epilog="Example: halflit review cases/geo_static_worst_case.toml --json")(review)
+    app.command(epilog="Example: halflit plot day1 --out pictures")(plot)
+
+
+def run(
+    case: CaseFile,
+    out: OutDir = None,
+    allow_outside: AllowOutside = False,
+    json: Json = False,
+) -> None:
+    """Run a case along its orbit; write potentials, plots and a verdict.
+
+    Exit 0 computed (the verdict is printed), 2 bad input, 3 no solution.
+    """
+    from charging.case import load_case
+    from charging.orbit_run import CaseRun, solve_mode
+    from charging.results import write_results
+
+    loaded = load_case(case, allow_outside=allow_outside)
+    target = Path(case.stem) if out is None else out
+    began = time.monotonic()
+    modes = []
+    for mode in (None, *loaded.case.mode):
+        modes.append(solve_mode(loaded, mode))
+        if time.monotonic() - began > SLOW_S and sys.stderr.isatty():
+            print(f"solved mode {modes[-1].name!r}", file=sys.stderr)
+    result = CaseRun(loaded, tuple(modes))
+    document = write_results(result, target)
+    if json:
+        print_json(document)
+        return
+    _print_run(result, document)
+    print(f"\nWritten to {target}{'/' if not str(target).endswith('/') else ''}")
+
+
+def review(
+    case: CaseOrResult,
+    allow_outside: AllowOutside = False,
+    json: Json = False,
+) -> None:
+    """Check every surface against its limits in every mode and plasma of a case.
+
+    Exit 0 all within, 1 a limit exceeded, 4 not assessable, 2 bad input, 3 no solution.
+    """
+    from charging.review.check import load_case_or_result, review_case
+
+    found = review_case(load_case_or_result(case, allow_outside=allow_outside))
+    if json:
+        print_json({"verdict": found.verdict, "limits": list(found.rows)})
+    else:
+        print(found.title)
+        print_table(
+            [
+                (
+                    row["surface"],
+                    row["kind"],
+                    row["mode"],
+                    row["plasma"],
+                    _value(row["value"], row["unit"]),
+                    _value(row["allowed"], row["unit"], sign=False),
+                    _value(row["margin"], row["unit"]),
+                    "-" if row["margin_dB"] is None else f"{row['margin_dB']:+.1f}",
+                    row["time"],
+                    row["requirement_id"],
+                    row["verdict"],
+                )
+                for row in found.rows
+            ],
+            (
+                "surface",
+                "kind",
+                "mode",
+                "plasma",
+                "value",
+                "allowed",
+                "margin",
+                "margin\ndB",
+                "time (UTC)",
+                "requirement",
+                "verdict",
+            ),
+            "llllrrrrlll",
+        )
+        for text in found.sentences:
+            print(f"\n- {text}")
+        print(f"\nVerdict: {found.verdict}")
+        _print_caution()
+    raise typer.Exit({"within": 0, "exceeded": 1, "not assessable": 4}[found.verdict])
+
+
+def plot(
+    result: Annotated[
+        Path,
+        typer.Argument(metavar="RESULT", show_default=False, help="Result folder or result.nc."),
+    ],
+    out: Annotated[
+        Path | None,
+        typer.Option("--out", show_default=False, help="Folder for the PNGs [default: beside]."),
+    ] = None,
+) -> None:
+    """Redraw the plots of a result from its file alone."""
+    import os
+
+    from charging.dataset import read_result
+    from charging.errors import InputError
+    from charging.plots import plot_all
+
+    dataset = read_result(result)
+    folder = out if out is not None else (result if result.is_dir() else result.parent)
+    try:
+        for picture in plot_all(dataset, folder):
+            print(picture)
+    except OSError as error:
+        reason = os.strerror(error.errno) if error.errno else str(error)
+        raise InputError(f"--out {folder}: cannot be written ({reason})") from error
+
+
+def _value(value: float, unit: str, *, sign: bool = True) -> str:
+    if unit != "V":
+        return f"{value:{'+' if sign else ''}.2e} V/m"
+    return f"{volts(value) if sign else f'{value:g}'} V"
+
+
+def _print_run(result: CaseRun, document: dict[str, Any]) -> None:
+    print(document["title"])
+    for mode in document["modes"]:
+        if len(document["modes"]) > 1:
+            print(f"\nMode: {mode['mode']}")
+        _print_mode(mode, _clock(result))
+    for warning in document["warnings"]:
+        print(f"warning: {warning}")
+    print(f"\nVerdict: {document['verdict']}")
+    _print_caution()
+
+
+def _clock(result: CaseRun) -> Callable[[str], str]:
+    """How the table writes a time: hh:mm:ss of one day, elapsed without an orbit, else a date."""
+    from datetime import datetime
+
+    case = result.loaded.case
+    if case.orbit.kind == "fixed":
+        return lambda text: str(datetime.fromisoformat(text) - case.epoch).replace(" days, ", "d ")
+    if case.duration_s > 86400.0:
+        return lambda text: text[5:19].replace("T", " ")
+    return lambda text: text[11:19]
+
+
+def _print_mode(mode: dict[str, Any], clock: Callable[[str], str]) -> None:
+    def when(row: dict[str, Any], side: str) -> str:
+        return clock(row[f"worst_{side}_time"]) if row[f"worst_{side}_V"] else "-"
+
+    def size(row: dict[str, Any], side: str) -> str:
+        return volts(row[f"worst_{side}_V"]) if row[f"worst_{side}_V"] else "-"
+
+    rows = []
+    for row in mode["surfaces"]:
+        tight = min(row["limits"], key=lambda limit: limit["margin"] / limit["allowed"])
+        rows.append(
+            (
+                row["surface"],
+                row["material"],
+                volts(row["lowest_V"]),
+                volts(row["highest_V"]),
+                size(row, "normal"),
+                when(row, "normal"),
+                size(row, "inverted"),
+                when(row, "inverted"),
+                {"normal": "-", "inverted": "+", "field": ""}[tight["kind"]]
+                + _value(tight["allowed"], tight["unit"], sign=False),
+                _value(tight["margin"], tight["unit"]),
+                row["verdict"],
+            )
+        )
+    print_table(
+        rows,
+        (
+            "surface",
+            "material",
+            "lowest\nV",
+            "highest\nV",
+            "below\nstructure V",
+            "\nat",
+            "above\nstructure V",
+            "\nat",
+            "tightest\nlimit",
+            "margin",
+            "verdict",
+        ),
+        "llrrrrrrrrl",
+    )
+    structure = mode["structure"]
+    print(
+        f"structure: {volts(structure['lowest_V'])} V at {clock(structure['lowest_time'])} to "
+        f"{volts(structure['highest_V'])} V at {clock(structure['highest_time'])}"
+    )
+    for eclipse in mode["eclipses"]:
+        if eclipse["umbra_start"] and eclipse["umbra_end"]:
+            print(
+                f"umbra {clock(eclipse['umbra_start'])} to {clock(eclipse['umbra_end'])} UTC "
+                f"({eclipse['umbra_s'] / 60.0:.1f} min)"
+            )
+    if not mode["eclipses"]:
+        steady = mode["steady_after_s"]
+        print(
+            "not steady at the end of the run"
+            if steady is None
+            else f"steady (1 V or 1 %) after {steady:.0f} s"
+        )
+    for text in mode["sentences"]:
+        print(f"- {text}")
+
+
+def _print_caution() -> None:
+    print(
+        "An estimate: program requirements, applicable standards and qualified specialists "
+        "decide.\nNot modelled: internal charging, discharge transients, plumes, electron "
+        "exchange between surfaces,\nsurface conduction, potential barriers raised by neighbours."
+    )

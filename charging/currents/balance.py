@@ -1,0 +1,143 @@
+"""Every floating potential of one surface in one plasma.
+
+The current balance of a surface has one root or several; which one is reached
+depends on where the surface comes from. Roots are searched on a scan uniform in
+asinh of the potential out to ±200 kV.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.optimize import brentq, minimize_scalar
+
+from charging.currents.surface import (
+    MECHANISMS,
+    Setting,
+    SurfaceModel,
+    surface_currents,
+)
+from charging.errors import NoSolutionError
+
+Array = NDArray[np.float64]
+
+SEARCH_V = 2e5
+SCAN_POINTS = 20_001
+
+
+@dataclass(frozen=True, slots=True)
+class Root:
+    """A floating potential [V]; stable when the current falls through zero there."""
+
+    potential_V: float
+    stable: bool
+
+
+@dataclass(frozen=True, slots=True)
+class FloatingPotentials:
+    """All roots, ascending, and the one that an uncharged surface reaches."""
+
+    roots: tuple[Root, ...]
+    reached_V: float
+
+
+def net_current(model: SurfaceModel, potential_V: Array, light: float) -> tuple[Array, Array]:
+    """Net current density [A m-2] and slope at potentials [N] of the only surface of a model."""
+    count = len(potential_V)
+    setting = Setting(np.ones((count, 1)), np.full((count, 1), light))
+    currents = surface_currents(model, potential_V[:, None], setting)
+    return currents.by_mechanism.sum(axis=-1)[:, 0], currents.slope[:, 0]
+
+
+def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials:
+    """Find every floating potential of one surface.
+
+    Parameters
+    ----------
+    model : SurfaceModel
+        Of one surface in one plasma.
+    light : float
+        Illumination times incidence cosine, 0…1.
+
+    Returns
+    -------
+    FloatingPotentials
+        Roots to 1 µV or 1e-12; a touching (double) root counts once and as unstable.
+
+    Raises
+    ------
+    NoSolutionError
+        The current does not change sign within ±200 kV.
+
+    Notes
+    -----
+    Two roots closer than a scan interval (0.12 % of the potential) are found when the
+    current has an extremum between them: it is searched for by minimisation.
+    """
+
+    def current(v: float) -> float:
+        return float(net_current(model, np.array([v]), light)[0][0])
+
+    grid = np.sinh(np.linspace(-1.0, 1.0, SCAN_POINTS) * np.arcsinh(SEARCH_V))
+    values, _ = net_current(model, grid, light)
+    found = [float(v) for v in grid[values == 0.0]]
+    for k in np.flatnonzero(values[:-1] * values[1:] < 0.0):
+        found.append(_root(current, grid[k], grid[k + 1]))
+    size = np.abs(values)
+    dips = 1 + np.flatnonzero(
+        (size[1:-1] <= size[:-2])
+        & (size[1:-1] <= size[2:])
+        & (values[:-2] * values[1:-1] > 0.0)
+        & (values[1:-1] * values[2:] > 0.0)
+    )
+    for k in dips:
+        found += _close_pair(current, grid[k - 1], grid[k + 1], np.sign(values[k]))
+    if not found:
+        raise NoSolutionError(
+            f"no floating potential within ±{SEARCH_V / 1e3:.0f} kV: the net current keeps the "
+            f"sign of {values[SCAN_POINTS // 2]:+.3g} A m-2"
+        )
+    roots = []
+    for v in sorted(found):
+        step = 1e-6 * max(1.0, abs(v))
+        roots.append(Root(v, current(v - step) > 0.0 > current(v + step)))
+    return FloatingPotentials(tuple(roots), _reached(roots, current(0.0)))
+
+
+def _root(current, low: float, high: float) -> float:  # type: ignore[no-untyped-def]
+    return float(brentq(current, low, high, xtol=1e-9, rtol=1e-12))
+
+
+def _close_pair(current, low: float, high: float, sign: float) -> list[float]:  # type: ignore[no-untyped-def]
+    """Roots around an extremum of the current that comes near zero without a sign change."""
+    best = minimize_scalar(
+        lambda v: sign * current(v), bounds=(low, high), method="bounded", options={"xatol": 1e-9}
+    )
+    value = sign * current(best.x)
+    if value < 0.0:
+        return [_root(current, low, best.x), _root(current, best.x, high)]
+    edge = max(abs(current(low)), abs(current(high)))
+    return [float(best.x)] if value <= 1e-9 * edge else []
+
+
+def _reached(roots: list[Root], at_zero: float) -> float:
+    """Root that an uncharged surface runs into: the next in the direction of the current."""
+    below = [r.potential_V for r in roots if r.potential_V <= 0.0]
+    above = [r.potential_V for r in roots if r.potential_V >= 0.0]
+    if at_zero < 0.0 and below:
+        return max(below)
+    if at_zero > 0.0 and above:
+        return min(above)
+    if at_zero == 0.0:
+        return 0.0
+    raise NoSolutionError(
+        "an uncharged surface is driven away from every floating potential within "
+        f"±{SEARCH_V / 1e3:.0f} kV"
+    )
+
+
+def breakdown(model: SurfaceModel, potential_V: float, light: float) -> dict[str, float]:
+    """Current density [A m-2] by mechanism of the only surface of a model."""
+    setting = Setting(np.ones((1, 1)), np.full((1, 1), light))
+    row = surface_currents(model, np.array([[potential_V]]), setting).by_mechanism[0, 0]
+    return dict(zip(MECHANISMS, (float(j) for j in row), strict=True))

@@ -1,0 +1,69 @@
+"""A result folder that appears as a whole or not at all."""
+
+from __future__ import annotations
+
+import os
+import shutil
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+from charging.errors import InputError
+
+MARK = "summary.json"
+"""Every result folder holds this file; a folder without it is not ours to replace."""
+
+
+@contextmanager
+def result_folder(target: Path) -> Iterator[Path]:
+    """Give a scratch folder that replaces `target` when the block ends well.
+
+    The scratch folder stands beside the target as ``.NAME.partial``; the former result
+    waits as ``.NAME.previous`` for the moment of the exchange. Leftovers of an
+    interrupted run are cleared away, a result caught between the two renames is put back.
+
+    Raises
+    ------
+    InputError
+        The target exists and is no result folder, or the place cannot be written.
+    """
+    target = target.absolute()
+    partial = target.with_name(f".{target.name}.partial")
+    previous = target.with_name(f".{target.name}.previous")
+    try:
+        if previous.is_dir() and not target.exists():
+            previous.rename(target)
+        if target.exists():
+            _refuse_foreign(target)
+        for leftover in (partial, previous):
+            if leftover.exists():
+                shutil.rmtree(leftover)
+        partial.mkdir(parents=True)
+    except OSError as error:
+        raise _unwritable(target, error) from error
+    try:
+        yield partial
+        if target.exists():
+            target.rename(previous)
+        partial.rename(target)
+    except OSError as error:
+        raise _unwritable(target, error) from error
+    finally:
+        shutil.rmtree(partial, ignore_errors=True)
+        if target.exists():
+            shutil.rmtree(previous, ignore_errors=True)
+
+
+def _refuse_foreign(target: Path) -> None:
+    if not target.is_dir():
+        raise InputError(f"--out {target}: is a file", allowed="a folder that may be (re)placed")
+    if any(target.iterdir()) and not (target / MARK).is_file():
+        raise InputError(
+            f"--out {target}: exists and holds no {MARK}, so it is not a result folder",
+            allowed="a new name, an empty folder or an earlier result",
+        )
+
+
+def _unwritable(target: Path, error: OSError) -> InputError:
+    reason = os.strerror(error.errno) if error.errno else str(error)
+    return InputError(f"--out {target}: cannot be written ({reason})", allowed="a writable place")

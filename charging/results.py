@@ -1,0 +1,206 @@
+"""Results as documents and files: summary.json, surfaces.csv, result.nc, plots."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import os
+from collections.abc import Iterable, Sequence
+from pathlib import Path
+from typing import Any
+
+from charging.case import LoadedCase
+from charging.clock import iso_time
+from charging.dataset import mode_dataset, warnings_of
+from charging.orbit_run import CaseRun, ModeRun
+from charging.result_folder import result_folder
+from charging.review.limits import UNITS
+from charging.review.sentences import sentence, unmet
+from charging.summary import Judgement, ModeSummary, Peak, case_summaries, worst
+
+CSV_COLUMNS = (
+    "mode",
+    "surface",
+    "material",
+    "lowest_V",
+    "highest_V",
+    "worst_normal_V",
+    "worst_normal_time",
+    "worst_inverted_V",
+    "worst_inverted_time",
+    "largest_field_V_m",
+    "verdict",
+)
+
+
+def result_name(number: int) -> str:
+    """File of a mode: the base is result.nc, alternatives are numbered from 1."""
+    return "result.nc" if number == 0 else f"result_{number:02d}.nc"
+
+
+def limit_row(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> dict[str, Any]:
+    """One judgement as the JSON of ``halflit review``."""
+    stand = judgement.standing
+    requirement = stand.requirement
+    return {
+        "surface": judgement.surface,
+        "against": "structure" if requirement.kind != "field" else "conductor behind",
+        "kind": requirement.kind,
+        "requirement_id": requirement.requirement_id,
+        "mode": judgement.mode,
+        "plasma": mode.plasmas[0].name,
+        "age": "begin",
+        "value": stand.value,
+        "allowed": requirement.limit,
+        "unit": UNITS[requirement.kind],
+        "margin": stand.margin,
+        "margin_dB": stand.margin_dB,
+        "time": _moment(loaded, judgement.peak),
+        "clause": requirement.clause or None,
+        "law": judgement.peak.law,
+        "verdict": judgement.verdict,
+        "reason": judgement.reason,
+    }
+
+
+def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> dict[str, Any]:
+    """Extremes, limits and verdict of one mode."""
+    rows = []
+    for peaks in summary.surfaces:
+        judged = [j for j in summary.judgements if j.surface == peaks.surface]
+        rows.append(
+            {
+                "surface": peaks.surface,
+                "material": peaks.material,
+                "lowest_V": peaks.lowest.value,
+                "highest_V": peaks.highest.value,
+                "worst_normal_V": peaks.normal.value,
+                "worst_normal_time": _moment(loaded, peaks.normal),
+                "worst_inverted_V": peaks.inverted.value,
+                "worst_inverted_time": _moment(loaded, peaks.inverted),
+                "largest_field_V_m": peaks.field.value,
+                "verdict": worst([j.verdict for j in judged]),
+                "limits": [limit_row(loaded, mode, j) for j in judged],
+            }
+        )
+    return {
+        "surfaces": rows,
+        "structure": {
+            "lowest_V": summary.structure_lowest.value,
+            "lowest_time": _moment(loaded, summary.structure_lowest),
+            "highest_V": summary.structure_highest.value,
+            "highest_time": _moment(loaded, summary.structure_highest),
+        },
+        "eclipses": eclipse_rows(loaded, mode),
+        "steady_after_s": summary.steady_s,
+        "verdict": summary.verdict,
+        "sentences": sentences(loaded, mode, summary),
+    }
+
+
+def sentences(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> list[str]:
+    """One sentence per limit that is not met, the worst first."""
+    return [sentence(loaded, mode, j) for j in unmet(summary.judgements)]
+
+
+def eclipse_rows(loaded: LoadedCase, mode: ModeRun) -> list[dict[str, Any]]:
+    """Eclipses with UTC times, null for a contact that does not exist."""
+    epoch = loaded.case.epoch
+
+    def when(seconds: float | None) -> str | None:
+        return None if seconds is None else iso_time(epoch, seconds)
+
+    return [
+        {
+            "body": e.body,
+            "penumbra_start": when(e.penumbra_start),
+            "umbra_start": when(e.umbra_start),
+            "umbra_end": when(e.umbra_end),
+            "penumbra_end": when(e.penumbra_end),
+            "umbra_s": e.umbra_s,
+        }
+        for e in mode.around.eclipses
+    ]
+
+
+def summary_document(
+    run: CaseRun, summaries: Sequence[ModeSummary], audits: Sequence[float]
+) -> dict[str, Any]:
+    """``summary.json``: the base mode on the top level, alternatives under ``modes``."""
+    documents = [
+        mode_document(run.loaded, mode, summary)
+        for mode, summary in zip(run.modes, summaries, strict=True)
+    ]
+    warnings = list(dict.fromkeys(w for mode in run.modes for w in warnings_of(run.loaded, mode)))
+    return {
+        "title": run.loaded.case.title,
+        "case_sha256": run.loaded.sha256,
+        "verdict": worst([s.verdict for s in summaries]),
+        "laws": list(run.modes[0].laws),
+        **{k: v for k, v in documents[0].items() if k != "verdict"},
+        "charge_audit_relative": max(audits),
+        "warnings": warnings,
+        "modes": [
+            {
+                "mode": mode.name,
+                "result": result_name(i),
+                "charge_audit_relative": audit,
+                **document,
+            }
+            for i, (mode, document, audit) in enumerate(
+                zip(run.modes, documents, audits, strict=True)
+            )
+        ],
+        "note": "An estimate: program requirements, applicable standards and qualified "
+        "specialists decide.",
+    }
+
+
+def surfaces_csv(document: dict[str, Any]) -> str:
+    """``surfaces.csv``: one line per mode and surface."""
+    text = io.StringIO()
+    table = csv.DictWriter(text, CSV_COLUMNS, extrasaction="ignore", lineterminator="\n")
+    table.writeheader()
+    for mode in document["modes"]:
+        table.writerows({"mode": mode["mode"], **row} for row in mode["surfaces"])
+    return text.getvalue()
+
+
+def write_results(run: CaseRun, target: Path, *, plots: bool = True) -> dict[str, Any]:
+    """Write the result folder of a run as a whole and return its summary.
+
+    Raises
+    ------
+    InputError
+        The folder cannot be written or is not a result folder.
+    """
+    from charging.plots import plot_all
+
+    summaries = case_summaries(run)
+    with result_folder(target) as folder:
+        audits = []
+        for i, mode in enumerate(run.modes):
+            dataset = mode_dataset(run, mode)
+            audits.append(float(dataset.attrs["charge_audit_relative"]))
+            dataset.to_netcdf(folder / result_name(i), engine="netcdf4", format="NETCDF4")
+            if plots:
+                plot_all(dataset, folder if i == 0 else folder / Path(result_name(i)).stem)
+        document = summary_document(run, summaries, audits)
+        (folder / "surfaces.csv").write_text(surfaces_csv(document), encoding="utf-8")
+        text = json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+        (folder / "summary.json").write_text(text, encoding="utf-8")
+        _flush(folder.rglob("*"))
+    return document
+
+
+def _flush(files: Iterable[Path]) -> None:
+    """Bring files to the disk before the folder takes its name."""
+    for file in files:
+        if file.is_file():
+            with file.open("rb") as handle:
+                os.fsync(handle.fileno())
+
+
+def _moment(loaded: LoadedCase, peak: Peak) -> str:
+    return iso_time(loaded.case.epoch, peak.time_s)

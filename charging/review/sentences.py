@@ -1,0 +1,106 @@
+"""One sentence per limit that is not met: what, where, when, why, what to try."""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from charging.case import LoadedCase, Surface
+from charging.clock import iso_time, span
+from charging.currents.surface import MECHANISMS
+from charging.orbit_run import ModeRun
+from charging.review.limits import UNITS
+from charging.summary import Judgement
+
+WORDS = {
+    "electron_collection": "collected electrons",
+    "ion_collection": "collected ions",
+    "secondary_electron": "secondary electrons",
+    "ion_induced_secondary": "electrons released by ions",
+    "backscatter": "backscattered electrons",
+    "photoemission": "photoemission",
+}
+
+
+def sentence(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
+    """Say what stands where, when, driven by what, and what to try first.
+
+    The fix is a suggestion: nothing was run with it.
+    """
+    stand, peak = judgement.standing, judgement.peak
+    requirement = stand.requirement
+    unit = UNITS[requirement.kind]
+    size = f"{abs(stand.value):.3g} V/m" if unit != "V" else f"{abs(stand.value):.0f} V"
+    limit = f"{requirement.limit:.3g} V/m" if unit != "V" else f"{requirement.limit:.0f} V"
+    what = {
+        "normal": f"stands {size} below structure",
+        "inverted": f"stands {size} above structure",
+        "field": f"holds {size} across its film",
+    }[requirement.kind]
+    if judgement.verdict == "not assessable":
+        return (
+            f"{judgement.surface}: {requirement.requirement_id} is not assessable: "
+            f"{judgement.reason}."
+        )
+    surface = next(s for s in loaded.case.surface if s.name == judgement.surface)
+    return (
+        f"{judgement.surface} {what} at {_when(loaded, mode, peak.time_s)}; allowed {limit} "
+        f"({requirement.requirement_id}); law {peak.law}. "
+        f"{_driver(loaded, mode, judgement)} "
+        f"First fix to try: {_first_fix(surface, judgement, loaded)}."
+    )
+
+
+def _when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
+    text = iso_time(loaded.case.epoch, time_s)
+    for eclipse in mode.around.eclipses:
+        start, end = eclipse.umbra_start, eclipse.umbra_end
+        if start is not None and end is not None and start <= time_s <= end:
+            text += f", {(time_s - start) / 60.0:.0f} min into eclipse"
+        elif end is not None and end < time_s < end + 3600.0:
+            text += f", {span(time_s - end)} after the end of umbra"
+    begun = [e for e in mode.around.episodes if e.onset_s <= time_s]
+    if begun:
+        last = max(begun, key=lambda e: e.onset_s)
+        name = mode.plasmas[last.plasma].name
+        text += f", {span(time_s - last.onset_s)} after the onset of '{name}'"
+    if not mode.around.episodes and not mode.around.eclipses:
+        text = f"{span(time_s)} after the start in mode '{mode.name}'"
+    return text
+
+
+def _driver(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
+    """Name the largest currents on the surface and on what holds structure."""
+    member = mode.laws.index(judgement.peak.law)
+    time = np.array([judgement.peak.time_s])
+    state = mode.trajectories[member](time)
+    flows = mode.balance.flows(member, time, state).surface_A_m2[0]
+    names = loaded.case.names
+    own = flows[names.index(judgement.surface)]
+    up, down = int(np.argmax(own)), int(np.argmin(own))
+    text = (
+        f"Currents there: {WORDS[MECHANISMS[up]]} {1e6 * own[up]:+.2g}, "
+        f"{WORDS[MECHANISMS[down]]} {1e6 * own[down]:+.2g} µA/m2"
+    )
+    on_structure = [i for i, node in enumerate(mode.net.surface_node) if node == 0]
+    if on_structure:
+        net = flows[on_structure].sum(axis=-1) * mode.net.area_m2[on_structure]
+        pulls = on_structure[int(np.argmin(net))]
+        if net.min() < 0.0:
+            text += f"; structure is drawn down by '{names[pulls]}' ({1e6 * net.min():+.2g} µA)"
+    return text + "."
+
+
+def _first_fix(surface: Surface, judgement: Judgement, loaded: LoadedCase) -> str:
+    if surface.floating:
+        return "a bleed resistor from it to structure ([[link]])"
+    if judgement.standing.requirement.kind == "inverted" and "cover glass" in surface.material:
+        return (
+            'material = "cover glass, ITO-coated" without thickness_m: a face bonded to structure'
+        )
+    return "a conductive outer layer bonded to structure (a conductor without thickness_m)"
+
+
+def unmet(judgements: Sequence[Judgement]) -> list[Judgement]:
+    """Judgements that are not within, the worst first."""
+    bad = [j for j in judgements if j.verdict != "within"]
+    return sorted(bad, key=lambda j: j.standing.margin / j.standing.requirement.limit)

@@ -1,0 +1,181 @@
+"""Worst potentials of a run, from the march's own steps, against the limits."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from charging.case import LoadedCase
+from charging.orbit_run import CaseRun, ModeRun
+from charging.review.limits import Requirement, Standing, Verdict, requirements, standing
+
+Array = NDArray[np.float64]
+
+INSIDE_STEP = np.arange(11) / 10.0
+"""Points of every step of the march at which peaks are looked for, both ends included."""
+
+
+@dataclass(frozen=True, slots=True)
+class Peak:
+    """An extreme value, its time [s after the start], and the law that gave it."""
+
+    value: float
+    time_s: float
+    law: str
+
+
+@dataclass(frozen=True, slots=True)
+class SurfacePeaks:
+    """Extremes of one surface over the laws of a mode.
+
+    lowest, highest : absolute potential [V]; normal, inverted : lowest and highest of
+    surface minus structure [V]; field : largest |field| in the dielectric, signed [V/m].
+    """
+
+    surface: str
+    material: str
+    lowest: Peak
+    highest: Peak
+    normal: Peak
+    inverted: Peak
+    field: Peak
+
+
+@dataclass(frozen=True, slots=True)
+class Judgement:
+    """One requirement against one surface in one mode."""
+
+    surface: str
+    mode: str
+    standing: Standing
+    peak: Peak
+    verdict: Verdict
+    reason: str
+
+
+@dataclass(frozen=True, slots=True)
+class ModeSummary:
+    """Extremes and judgements of one mode.
+
+    `steady_s` is the time after which every potential stays within 1 V or 1 % of its
+    last value, None when it never does so for the last tenth of the run.
+    """
+
+    mode: str
+    surfaces: tuple[SurfacePeaks, ...]
+    structure_lowest: Peak
+    structure_highest: Peak
+    judgements: tuple[Judgement, ...]
+    verdict: Verdict
+    steady_s: float | None
+
+
+def case_summaries(run: CaseRun) -> tuple[ModeSummary, ...]:
+    """Summaries of every mode, in the order of the run."""
+    return tuple(mode_summary(run.loaded, mode) for mode in run.modes)
+
+
+def worst(verdicts: Sequence[Verdict]) -> Verdict:
+    """Overall verdict: exceeded beats not assessable beats within."""
+    for verdict in ("exceeded", "not assessable"):
+        if verdict in verdicts:
+            return verdict
+    return "within"
+
+
+def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
+    """Find extremes over the steps of every law of a mode and judge them."""
+    net = mode.net
+    # extremes [law][quantity] as (value, time)
+    times, states = zip(*(_samples(mode, i) for i in range(len(mode.laws))), strict=True)
+    thickness = np.full(len(net.surface_node), np.inf)
+    thickness[net.film_surface] = net.film_thickness_m
+    across_node = net.surface_node
+
+    def peak(rows: Sequence[Array], largest: bool) -> Peak:
+        pick = np.argmax if largest else np.argmin
+        found = [(float(row[k := int(pick(row))]), float(t[k]), law)
+                 for row, t, law in zip(rows, times, mode.laws, strict=True)]  # fmt: skip
+        value, time, law = max(found, key=lambda f: f[0] if largest else -f[0])
+        return Peak(value, time, law)
+
+    surfaces = []
+    absolute = [net.potentials(y) for y in states]
+    for i, surface in enumerate(loaded.case.surface):
+        node = net.surface_node[i]
+        own = [v[:, node] for v in absolute]
+        difference = [v[:, node] - v[:, 0] for v in absolute]
+        field = [
+            y[:, across_node[i]] / thickness[i] if np.isfinite(thickness[i]) else np.zeros(len(y))
+            for y in states
+        ]
+        high, low = peak(field, True), peak(field, False)
+        surfaces.append(
+            SurfacePeaks(
+                surface=surface.name,
+                material=loaded.materials[surface.material].name,
+                lowest=peak(own, False),
+                highest=peak(own, True),
+                normal=peak(difference, False),
+                inverted=peak(difference, True),
+                field=high if abs(high.value) >= abs(low.value) else low,
+            )
+        )
+    structure = [v[:, 0] for v in absolute]
+    judgements = tuple(
+        _judge(loaded, mode, requirement, found)
+        for found, surface in zip(surfaces, loaded.case.surface, strict=True)
+        for requirement in requirements(loaded.case)
+        if requirement.covers(found.surface)
+        and (requirement.kind != "field" or surface.thickness_m is not None)
+    )
+    return ModeSummary(
+        mode=mode.name,
+        surfaces=tuple(surfaces),
+        structure_lowest=peak(structure, False),
+        structure_highest=peak(structure, True),
+        judgements=judgements,
+        verdict=worst([j.verdict for j in judgements]),
+        steady_s=_steady(times, absolute, loaded.case.duration_s),
+    )
+
+
+def _samples(mode: ModeRun, member: int) -> tuple[Array, Array]:
+    """Times [s] and states at tenths of every step of one law."""
+    path = mode.trajectories[member]
+    k = np.repeat(np.arange(len(path.step_s)), len(INSIDE_STEP))
+    theta = np.tile(INSIDE_STEP, len(path.step_s))
+    return path.start_s[k] + theta * path.step_s[k], path.inside(k, theta)
+
+
+def _judge(loaded: LoadedCase, mode: ModeRun, requirement: Requirement,
+           found: SurfacePeaks) -> Judgement:  # fmt: skip
+    peak = {"normal": found.normal, "inverted": found.inverted, "field": found.field}[
+        requirement.kind
+    ]
+    stand = standing(requirement, peak.value)
+    assumed = [p.name for p in dict.fromkeys(mode.plasmas) if p.basis == "assumed"]
+    if stand.exceeded:
+        verdict: Verdict = "exceeded"
+        reason = f"beyond {requirement.requirement_id}"
+    elif assumed and loaded.case.plasma.accept_assumed is None:
+        verdict = "not assessable"
+        reason = (
+            f'plasma "{assumed[0]}" rests on assumed figures; accept it with '
+            '[plasma] accept_assumed = "reason"'
+        )
+    else:
+        verdict, reason = "within", "below the limit"
+    return Judgement(found.surface, mode.name, stand, peak, verdict, reason)
+
+
+def _steady(times: Sequence[Array], absolute: Sequence[Array], end_s: float) -> float | None:
+    latest = 0.0
+    for t, v in zip(times, absolute, strict=True):
+        last = v[-1]
+        away = np.abs(v - last) > np.maximum(1.0, 0.01 * np.abs(last))
+        moving = np.flatnonzero(away.any(axis=1))
+        if moving.size:
+            latest = max(latest, float(t[moving[-1]]))
+    return latest if latest < 0.9 * end_s else None
