@@ -99,13 +99,13 @@ def as_number(
     >>> as_number("radius_m", 2, above=0.0, high=1000.0)
     2.0
     """
-    low, words = (at_least, "at least") if above is None else (above, "above")
-    allowed = f"{words} {low:g}, at most {high:g}"
+    low = above if above is not None else at_least if at_least is not None else -math.inf
+    allowed = f"{'at least' if above is None else 'above'} {low:g}, at most {high:g}"
     if isinstance(value, bool) or not isinstance(value, int | float):
         problem = "is no number"
     elif not math.isfinite(value):
         problem = "is not finite"
-    elif value > high or (value <= low if above is not None else value < (low or 0.0)):
+    elif value > high or value < low or value == above:
         problem = "is out of range"
     else:
         return float(value)

@@ -258,8 +258,10 @@ def population_labels(mode: ModeRun) -> list[str]:
 
 def warnings_of(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
     """What a reader of the result must know about this run."""
+    reason = loaded.case.plasma.accept_assumed
+    accepted = "" if reason is None else f" (accepted: {reason})"
     return tuple(
-        f'plasma "{plasma.name}" rests on assumed figures'
+        f'plasma "{plasma.name}" rests on assumed figures{accepted}'
         for plasma in dict.fromkeys(mode.plasmas)
         if plasma.basis == "assumed"
     )

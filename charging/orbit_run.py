@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from charging.case import LoadedCase, Mode
 from charging.currents.emission import SECONDARY_LAWS
 from charging.currents.lookup import net_currents
-from charging.currents.surface import Setting, surface_model
+from charging.currents.surface import Setting, surface_models
 from charging.errors import NoSolutionError
 from charging.network.charge_balance import Around, ChargeBalance
 from charging.network.march import Tolerance, Trajectory, march
@@ -30,7 +30,7 @@ from materials.secondary import YieldLaw
 
 Array = NDArray[np.float64]
 
-TOLERANCE = Tolerance(absolute=0.02, relative=2e-4)
+TOLERANCE = Tolerance(absolute=0.01, relative=1e-4)
 """Local error per step [V] and relative; what it gives along a day is a recorded figure."""
 
 FIRST_STEP_S = 1e-6
@@ -149,16 +149,13 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
     net = spacecraft_network(case, loaded.materials)
     laws = laws_of(loaded)
     materials = surface_materials(case, loaded.materials)
-    models = tuple(
-        surface_model(
-            materials,
-            plasmas,
-            spectrum,
-            law=law,
-            radius_m=case.body.radius_m,
-            collection=case.body.collection,
-        )
-        for law in laws
+    models = surface_models(
+        materials,
+        plasmas,
+        spectrum,
+        laws=laws,
+        radius_m=case.body.radius_m,
+        collection=case.body.collection,
     )
     balance = ChargeBalance(models, net_currents(models), net, around, net.mass)
     name = "base" if mode is None else mode.name

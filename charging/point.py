@@ -208,7 +208,10 @@ def floating_point(
         radius_m=radius,
         roots=found.roots,
         reached_V=found.reached_V,
-        current_density_A_m2=MappingProxyType(breakdown(mine, found.reached_V, light)),
+        current_density_A_m2=MappingProxyType(
+            # adding 0 turns -0 into 0
+            {name: j + 0.0 for name, j in breakdown(mine, found.reached_V, light).items()}
+        ),
         electron_debye_length_m=float(debye),
         sheath=Sheath(float(sheath.length_m), float(sheath.weight), collection),
         other_laws_reached_V=MappingProxyType(others),

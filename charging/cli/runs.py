@@ -174,8 +174,14 @@ def _print_run(result: CaseRun, document: dict[str, Any]) -> None:
         if len(document["modes"]) > 1:
             print(f"\nMode: {mode['mode']}")
         _print_mode(mode, _clock(result))
+    laws = document["laws"]
+    if len(laws) > 1:
+        print(
+            f"\nThe table takes the worse of the secondary-emission laws {' and '.join(laws)}; "
+            f"files and plots show {laws[0]}."
+        )
     for warning in document["warnings"]:
-        print(f"warning: {warning}")
+        print(f"Note: {warning}.")
     print(f"\nVerdict: {document['verdict']}")
     _print_caution()
 

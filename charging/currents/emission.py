@@ -26,15 +26,6 @@ Array = NDArray[np.float64]
 SECONDARY_LAWS: tuple[YieldLaw, YieldLaw] = ("sanders_inouye_1979", "lin_joy_2005")
 """The exponential and the E^-0.67 law that a verdict compares; the first is the default."""
 
-GRAZING_ION_FACTOR = 2.0
-"""Isotropic over normal ion-induced yield for growth as 1/cos (Whipple 1981, from memory).
-
-In the thick-sheath limit attracted ions arrive isotropically (Liouville) and have it;
-in a planar sheath they arrive near normal and have 1, which understates the yield by at
-most this factor where the potential is below the ion temperature.
-"""
-
-
 @dataclass(frozen=True, slots=True)
 class Emitter:
     """Yields of one surface as functions of impact energy [eV], electrons per particle.
@@ -109,36 +100,35 @@ def electron_tables(
         geometry, backscatter in plane and thick geometry.
     """
     return _tables(
-        [(m.key, (m.secondary, m.backscatter), (1.0, 1.0)) for m in emitters],
-        temperatures_eV,
-        thick,
+        [(m.key, (m.secondary, m.backscatter)) for m in emitters], temperatures_eV, thick
     )
 
 
 def ion_tables(emitters: Sequence[Emitter], temperatures_eV: Array, thick: Geometry) -> YieldTable:
-    """Ion-induced emission per ion; columns: plane (normal) and thick (isotropic)."""
-    return _tables(
-        [(m.key, (m.ion,), (1.0, GRAZING_ION_FACTOR)) for m in emitters], temperatures_eV, thick
-    )
+    """Ion-induced emission per ion at normal incidence; columns: plane and thick geometry.
+
+    In a planar sheath attracted ions arrive near normal. In a thick sheath they arrive
+    isotropically, and growth as 1/cos would double the yield (Whipple 1981, from memory);
+    rough flight surfaces show less. The lower value makes a dark surface more negative: in
+    the ECSS worst case by a factor 1.5, which lies inside the spread of the peak yield.
+    """
+    return _tables([(m.key, (m.ion,)) for m in emitters], temperatures_eV, thick)
 
 
 def _tables(
-    rows: Sequence[tuple[Hashable, tuple[Yield, ...], tuple[float, float]]],
-    temperatures_eV: Array,
-    thick: Geometry,
+    rows: Sequence[tuple[Hashable, tuple[Yield, ...]]], temperatures_eV: Array, thick: Geometry
 ) -> YieldTable:
     scale = knot_scale(float(np.min(temperatures_eV, initial=np.inf)))
     grid = knots(scale)
-    unique = {key: (yields, factors) for key, yields, factors in rows}
-    flat = [y for yields, _ in unique.values() for y in yields]
+    unique = dict(rows)
+    flat = [y for yields in unique.values() for y in yields]
     width = len(flat) // len(unique)
     known: dict[Hashable, list[Array]] = {key: [] for key in unique}
     for temperature in temperatures_eV:
         averages = average_yields(flat, float(temperature), grid, (PLANE, thick))
-        for i, (key, (_, factors)) in enumerate(unique.items()):
-            part = averages[i * width : (i + 1) * width] * np.array(factors)[:, None]
-            known[key].append(part.reshape(2 * width, -1).T)
-    values = np.stack([table for key, _, _ in rows for table in known[key]])
+        for i, key in enumerate(unique):
+            known[key].append(averages[i * width : (i + 1) * width].reshape(2 * width, -1).T)
+    values = np.stack([table for key, _ in rows for table in known[key]])
     return YieldTable.fit(scale, values)
 
 

@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline
 
-from charging.currents.collection import sheath_weight
+from charging.currents.collection import SheathWeight, sheath_weight
 from charging.currents.surface import (
     MECHANISMS,
     Populations,
@@ -54,8 +54,15 @@ class NetCurrents:
     radius_m: float
     collection: str
 
-    def __call__(self, which: Index, potential_V: Array, setting: Setting) -> tuple[Array, Array]:
-        """Net current density [A m-2] and its slope, each [m, S].
+    def current(self, which: Index, potential_V: Array, setting: Setting) -> Array:
+        """Net current density [A m-2] alone, [m, S]; arguments as in `current_and_slope`."""
+        c, x, _ = self._cells(which, potential_V)
+        return self._mixed(_values(c, x), self._sheath(potential_V, setting).weight, setting)
+
+    def current_and_slope(
+        self, which: Index, potential_V: Array, setting: Setting
+    ) -> tuple[Array, Array]:
+        """Net current density [A m-2] and its derivative by potential, each [m, S].
 
         Parameters
         ----------
@@ -65,6 +72,23 @@ class NetCurrents:
         setting : Setting
             Strength [m, P], light [m, S].
         """
+        c, x, positive = self._cells(which, potential_V)
+        sheath = self._sheath(potential_V, setting)
+        value = _values(c, x)
+        slope = (3.0 * c[..., 0, :] * x + 2.0 * c[..., 1, :]) * x + c[..., 2, :]
+        slope = np.where(positive[..., None], slope, -slope)
+        share = setting.strength[:, None, :]
+        plasmas = share.shape[-1]
+        gain = ((value[..., plasmas:-1] - value[..., :plasmas]) * share).sum(axis=-1)
+        return (
+            self._mixed(value, sheath.weight, setting),
+            self._mixed(slope, sheath.weight, setting) + sheath.slope * gain,
+        )
+
+    def _cells(
+        self, which: Index, potential_V: Array
+    ) -> tuple[Array, Array, NDArray[np.bool_]]:
+        """Coefficients [m, S, 4, C] of the cells, distance from their knots [m, S, 1], side."""
         cells = len(self.knots_V) - 1
         size = np.abs(potential_V)
         k = np.minimum((np.arcsinh(np.sqrt(size / SCALE_V)) / SPACING).astype(np.intp), cells - 1)
@@ -72,34 +96,30 @@ class NetCurrents:
         positive = potential_V >= 0.0
         column = np.arange(potential_V.shape[1])
         c = self.coefficients[which[:, None], column, k + cells * positive]
-        x = x[..., None]
-        value = ((c[..., 0, :] * x + c[..., 1, :]) * x + c[..., 2, :]) * x + c[..., 3, :]
-        slope = (3.0 * c[..., 0, :] * x + 2.0 * c[..., 1, :]) * x + c[..., 2, :]
-        slope = np.where(positive[..., None], slope, -slope)
+        return c, x[..., None], positive
 
+    def _sheath(self, potential_V: Array, setting: Setting) -> SheathWeight:
         debye, temperature = electron_sheath(self.electrons, setting.strength)
-        sheath = sheath_weight(
+        return sheath_weight(
             potential_V,
             debye_length_m=debye[:, None],
             temperature_eV=temperature[:, None],
             radius_m=self.radius_m,
             collection=self.collection,
         )
+
+    def _mixed(self, columns: Array, w: Array, setting: Setting) -> Array:
+        """Sum over plasmas, geometries and light of columns [m, S, 2P+1]."""
         share = setting.strength[:, None, :]
         plasmas = share.shape[-1]
-        w, light = sheath.weight, setting.light
+        plane: Array = (columns[..., :plasmas] * share).sum(axis=-1)
+        thick: Array = (columns[..., plasmas:-1] * share).sum(axis=-1)
+        return plane + w * (thick - plane) + setting.light * columns[..., -1]
 
-        def mixed(columns: Array) -> tuple[Array, Array]:
-            plane = (columns[..., :plasmas] * share).sum(axis=-1)
-            thick = (columns[..., plasmas:-1] * share).sum(axis=-1)
-            return plane + w * (thick - plane), thick - plane
 
-        current, gain = mixed(value)
-        d_current, _ = mixed(slope)
-        return (
-            current + light * value[..., -1],
-            d_current + sheath.slope * gain + light * slope[..., -1],
-        )
+def _values(c: Array, x: Array) -> Array:
+    value: Array = ((c[..., 0, :] * x + c[..., 1, :]) * x + c[..., 2, :]) * x + c[..., 3, :]
+    return value
 
 
 def net_currents(models: Sequence[SurfaceModel]) -> NetCurrents:

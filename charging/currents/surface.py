@@ -114,7 +114,25 @@ def surface_model(
     radius_m: float,
     collection: str = "auto",
 ) -> SurfaceModel:
-    """Tabulate the answers of S surfaces to P plasmas and the Sun.
+    """Tabulate the answers of S surfaces to P plasmas and the Sun for one emission law.
+
+    Arguments as in `surface_models`.
+    """
+    return surface_models(
+        materials, plasmas, spectrum, laws=[law], radius_m=radius_m, collection=collection
+    )[0]
+
+
+def surface_models(
+    materials: Sequence[Material],
+    plasmas: Sequence[Plasma],
+    spectrum: SolarSpectrum,
+    *,
+    laws: Sequence[YieldLaw],
+    radius_m: float,
+    collection: str = "auto",
+) -> tuple[SurfaceModel, ...]:
+    """Tabulate the answers of S surfaces to P plasmas and the Sun, one model per law.
 
     Parameters
     ----------
@@ -122,8 +140,8 @@ def surface_model(
     plasmas : sequence of Plasma, length P
     spectrum : SolarSpectrum
         At the spacecraft's distance and solar activity.
-    law : YieldLaw
-        Secondary-emission law, one of `emission.SECONDARY_LAWS`.
+    laws : sequence of YieldLaw
+        Secondary-emission laws, each one of `emission.SECONDARY_LAWS`.
     radius_m : float
         Radius of the body, for the sheath [m].
     collection : {"auto", "sphere", "cylinder", "plane"}
@@ -131,16 +149,22 @@ def surface_model(
     thick = thick_geometry(collection)
     electrons = populations(plasmas, electrons=True)
     ions = populations(plasmas, electrons=False)
-    emitters = [emitter(material, law) for material in materials]
-    return SurfaceModel(
-        radius_m=radius_m,
-        collection=collection,
-        electrons=electrons,
-        ions=ions,
-        electron_table=electron_tables(emitters, electrons.temperature_eV, thick),
-        ion_table=ion_tables(emitters, ions.temperature_eV, thick),
-        escape_table=escape_tables(materials, spectrum),
-        photo_saturation_A_m2=np.array([photo_saturation_A_m2(m, spectrum) for m in materials]),
+    emitters = [[emitter(material, law) for material in materials] for law in laws]
+    ion_table = ion_tables(emitters[0], ions.temperature_eV, thick)
+    escape_table = escape_tables(materials, spectrum)
+    saturation = np.array([photo_saturation_A_m2(m, spectrum) for m in materials])
+    return tuple(
+        SurfaceModel(
+            radius_m=radius_m,
+            collection=collection,
+            electrons=electrons,
+            ions=ions,
+            electron_table=electron_tables(of_law, electrons.temperature_eV, thick),
+            ion_table=ion_table,
+            escape_table=escape_table,
+            photo_saturation_A_m2=saturation,
+        )
+        for of_law in emitters
     )
 
 

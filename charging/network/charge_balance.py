@@ -60,31 +60,32 @@ class ChargeBalance:
 
     def rhs(self, member: Index, time_s: Array, y: Array) -> Array:
         """Charge rates [A] of the state variables [m, n]."""
-        return self._rates(member, time_s, y)[0]
+        setting, temperature = self.around.at(time_s)
+        potential = self.net.potentials(y)[:, self.net.surface_node]
+        current = self.table.current(member, potential, setting)
+        return self._rates(current, self._films(temperature, y)[0], y)
 
     def rhs_and_jacobian(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array]:
         """Charge rates [A] of the state variables [m, n] and derivatives [A/V, m, n, n]."""
         net = self.net
-        rate, slope, film_slope = self._rates(member, time_s, y)
-        moves = net.moves
-        jacobian = ((moves * (net.area_m2 * slope)[:, None, :])[:, :, None, :] * moves).sum(axis=-1)
-        jacobian[:, net.film_node, net.film_node] += film_slope
-        jacobian -= net.link_stiffness_S
-        return rate, jacobian
-
-    def _rates(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array, Array]:
-        """Charge rates [m, n], slopes of the surfaces [A m-2 V-1, m, S] and films [A/V, m, F]."""
-        net = self.net
         setting, temperature = self.around.at(time_s)
         potential = net.potentials(y)[:, net.surface_node]
-        current, slope = self.table(member, potential, setting)
-        rate = (net.moves * (net.area_m2 * current)[:, None, :]).sum(axis=-1)
+        current, slope = self.table.current_and_slope(member, potential, setting)
         film, film_slope = self._films(temperature, y)
-        area = net.area_m2[net.film_surface]
-        rate[:, net.film_node] += film * area
+        moves = net.moves
+        jacobian = ((moves * (net.area_m2 * slope)[:, None, :])[:, :, None, :] * moves).sum(axis=-1)
+        jacobian[:, net.film_node, net.film_node] += film_slope * net.area_m2[net.film_surface]
+        jacobian -= net.link_stiffness_S
+        return self._rates(current, film, y), jacobian
+
+    def _rates(self, current: Array, film: Array, y: Array) -> Array:
+        """Charge rates [m, n] from current densities of surfaces [m, S] and films [m, F]."""
+        net = self.net
+        rate: Array = (net.moves * (net.area_m2 * current)[:, None, :]).sum(axis=-1)
+        rate[:, net.film_node] += film * net.area_m2[net.film_surface]
         if net.link_nodes:
             rate -= (net.link_rows * self._links(y)[..., None]).sum(axis=-2)
-        return rate, slope, film_slope * area
+        return rate
 
     def _films(self, temperature_K: Array, y: Array) -> tuple[Array, Array]:
         """Conduction through films [A m-2], positive to the outer face, and slope by y."""

@@ -167,6 +167,8 @@ def march(
     h = np.full(members, float(first_step_s))
     goal = np.zeros(members, dtype=np.intp)
     tried = np.zeros(members, dtype=np.intp)
+    last_step, last_error = np.zeros(members), np.full(members, 1e-2)
+    refused = np.zeros(members, dtype=np.bool_)
     log: list[tuple[Index, Array, Array, Array, Array, Array, Array]] = []
     active = np.arange(members)
     while active.size:
@@ -176,10 +178,18 @@ def march(
         step = np.where(lands, room, np.where(h[active] > 0.5 * room, 0.5 * room, h[active]))
         y1, error, c2, c3 = _rodas_step(system, active, t[active], y[active], step, tolerance)
         tried[active] += 1
-        factor = SAFETY * np.maximum(error, 1e-8) ** -0.25
-        factor = np.clip(factor, SMALLEST_FACTOR, LARGEST_FACTOR)
         good = error <= 1.0
+        factor = SAFETY * np.maximum(error, 1e-8) ** -0.25
+        # predictive control (Gustafsson 1991, ACM Trans. Math. Softw. 17, 533): errors that
+        # grow from step to step shorten the next one before it is refused
+        trend = SAFETY * step / np.where(last_step[active] > 0.0, last_step[active], step)
+        trend = trend * (last_error[active] / np.maximum(error, 1e-8) ** 2) ** 0.25
+        factor = np.where(good & (last_step[active] > 0.0), np.minimum(factor, trend), factor)
+        factor = np.clip(factor, SMALLEST_FACTOR, LARGEST_FACTOR)
+        factor = np.where(good & refused[active], np.minimum(factor, 1.0), factor)
+        refused[active] = ~good
         done = active[good]
+        last_step[done], last_error[done] = step[good], np.maximum(error[good], 1e-2)
         log.append((done, t[done], step[good], y[done], y1[good], c2[good], c3[good]))
         t[done] = np.where(lands[good], stops[goal[done]], t[done] + step[good])
         y[done] = y1[good]
@@ -206,7 +216,7 @@ def _rodas_step(
     delta = TIME_DIFFERENCE * h
     f_t = (system.rhs(member, t + delta, y) - f0) / delta[:, None]
     mass_h = system.mass / h[:, None, None]
-    matrix = mass_h / GAMMA - jacobian
+    inverse = np.linalg.inv(mass_h / GAMMA - jacobian)  # small and used six times
     stages: list[Array] = []
     f = f0
     inside = np.ones(len(h), dtype=np.bool_)
@@ -227,7 +237,7 @@ def _rodas_step(
             for c, stage in zip(C[i], stages, strict=True):
                 mix += c * stage
             right = right + (mass_h * mix[:, None, :]).sum(axis=-1)
-        stages.append(np.asarray(np.linalg.solve(matrix, right[..., None])[..., 0], np.float64))
+        stages.append((inverse * right[:, None, :]).sum(axis=-1))
     y1 = state + stages[5]
     inside &= system.admissible(y1)
     scale = tolerance.absolute + tolerance.relative * np.maximum(
