@@ -75,6 +75,10 @@ class ModeRun:
         """Nodes and capacitances."""
         return self.balance.net
 
+    def plasma_at(self, time_s: float) -> Plasma:
+        """Plasma with the largest share at a time after the start."""
+        return self.plasmas[int(np.argmax(self.around.strength(np.array(time_s))))]
+
 
 @dataclass(frozen=True, slots=True)
 class CaseRun:
@@ -156,6 +160,7 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
         laws=laws,
         radius_m=case.body.radius_m,
         collection=case.body.collection,
+        photo_geometry=case.emission.photo_escape,
     )
     balance = ChargeBalance(models, net_currents(models), net, around, net.mass)
     name = "base" if mode is None else mode.name

@@ -14,6 +14,25 @@ MARK = "summary.json"
 """Every result folder holds this file; a folder without it is not ours to replace."""
 
 
+def check_target(target: Path) -> None:
+    """Refuse a target that `result_folder` would refuse, before any work is done.
+
+    Raises
+    ------
+    InputError
+        As `result_folder`.
+    """
+    target = target.absolute()
+    if target.exists():
+        _refuse_foreign(target)
+    standing = next(p for p in target.parents if p.exists())
+    if not standing.is_dir() or not os.access(standing, os.W_OK):
+        raise InputError(
+            f"--out {target}: {standing} is no folder that can be written",
+            allowed="a writable place",
+        )
+
+
 @contextmanager
 def result_folder(target: Path) -> Iterator[Path]:
     """Give a scratch folder that replaces `target` when the block ends well.

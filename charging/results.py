@@ -49,7 +49,7 @@ def limit_row(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> dict[s
         "kind": requirement.kind,
         "requirement_id": requirement.requirement_id,
         "mode": judgement.mode,
-        "plasma": mode.plasmas[0].name,
+        "plasma": mode.plasma_at(judgement.peak.time_s).name,
         "age": "begin",
         "value": stand.value,
         "allowed": requirement.limit,

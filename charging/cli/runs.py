@@ -61,10 +61,12 @@ def run(
     """
     from charging.case import load_case
     from charging.orbit_run import CaseRun, solve_mode
+    from charging.result_folder import check_target
     from charging.results import write_results
 
     loaded = load_case(case, allow_outside=allow_outside)
     target = Path(case.stem) if out is None else out
+    check_target(target)
     began = time.monotonic()
     modes = []
     for mode in (None, *loaded.case.mode):
