@@ -25,6 +25,7 @@ LARGEST_TURN_RAD = np.radians(0.25)  # between knots: cosines err by 0.25²/8 (r
 LONGEST_KNOT_S = 60.0
 PENUMBRA_KNOTS = 240  # illumination errs by 1e-5
 FINE_STEP_S, FINE_MARGIN_S, FINE_LONGEST_S = 1.0, 60.0, 900.0
+FIRST_OUTPUT_S = 1e-3
 
 
 class Snapshot(NamedTuple):
@@ -251,9 +252,16 @@ def surroundings(case: Case, mode: Mode | None, episodes: Sequence[Episode]) -> 
 
 
 def output_times(case: Case, around: Surroundings) -> Array:
-    """Output grid [s]: start + k·step and the end, 1 s steps around eclipse contacts."""
+    """Output grid [s]: start + k·step and the end, 1 s steps around eclipse contacts.
+
+    Without an orbit the first step is refined from a millisecond on, twenty times a
+    decade: it holds the charging of structure.
+    """
     end, step = case.duration_s, case.time.output_step_s
     grid = np.append(np.arange(case.output_times - 1) * step, end)
+    if isinstance(case.orbit, OrbitFixed) and step > FIRST_OUTPUT_S:
+        decades = np.log10(step / FIRST_OUTPUT_S)
+        grid = np.union1d(grid, np.geomspace(FIRST_OUTPUT_S, step, round(20 * decades) + 1))
     fine = [
         np.arange(np.ceil(first - FINE_MARGIN_S), last + FINE_MARGIN_S, FINE_STEP_S)
         for first, last in _penumbrae(around.eclipses)
