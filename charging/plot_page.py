@@ -150,7 +150,13 @@ class Page:
     def save(self, target: Path, software: str) -> Path:
         """Write the PNG as a whole, without a date, and return its path."""
         with written_file(target, option="--out") as scratch:
-            self.figure.savefig(scratch, format="png", dpi=DPI, metadata={"Software": software})
+            self.figure.savefig(
+                scratch,
+                format="png",
+                dpi=DPI,
+                metadata={"Software": software},
+                pil_kwargs={"compress_level": 1},  # four times as fast, a quarter larger
+            )
         return target
 
 

@@ -176,13 +176,35 @@ def enhancement_kernel(
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Factor and slope of `adamec_calderwood_1981_factor` for inner loops: no checks."""
     size = np.abs(field_V_m)
-    b = np.sqrt(e**3 / (np.pi * epsilon_0 * relative_permittivity)) / (2.0 * k * temperature_K)
-    c = e * jump_distance_m / (2.0 * k * temperature_K)
+    b, c = _scales(temperature_K, relative_permittivity, jump_distance_m)
     x, y = b * np.sqrt(size), c * size
     release, jumps = (2.0 + np.cosh(x)) / 3.0, _sinh_ratio(y)
     # d cosh(b F^1/2)/dF = (b^2/2) sinh(x)/x
     slope = b**2 / 6.0 * _sinh_ratio(x) * jumps + release * c * _sinh_ratio_slope(y)
     return release * jumps, np.where(field_V_m < 0.0, -slope, slope)
+
+
+def enhancement_factor_kernel(
+    field_V_m: NDArray[np.float64],
+    temperature_K: NDArray[np.float64],
+    relative_permittivity: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """Factor of `enhancement_kernel` alone."""
+    size = np.abs(field_V_m)
+    b, c = _scales(temperature_K, relative_permittivity, _JUMP_DISTANCE_M)
+    return np.asarray((2.0 + np.cosh(b * np.sqrt(size))) / 3.0 * _sinh_ratio(c * size))
+
+
+def _scales(
+    temperature_K: NDArray[np.float64],
+    relative_permittivity: NDArray[np.float64],
+    jump_distance_m: NDArray[np.float64] | float,
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return beta_F/2kT [(m/V)^1/2] and ed/2kT [m/V]."""
+    beta = np.sqrt(e**3 / (np.pi * epsilon_0 * relative_permittivity))
+    return np.asarray(beta / (2.0 * k * temperature_K)), np.asarray(
+        e * jump_distance_m / (2.0 * k * temperature_K)
+    )
 
 
 def arrhenius_kernel(

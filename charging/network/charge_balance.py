@@ -10,7 +10,12 @@ from charging.currents.lookup import NetCurrents
 from charging.currents.surface import Setting, SurfaceModel, surface_currents
 from charging.currents.tables import REACH_V
 from charging.network.nodes import Network
-from materials.conduction import LARGEST_FIELD_V_m, arrhenius_kernel, enhancement_kernel
+from materials.conduction import (
+    LARGEST_FIELD_V_m,
+    arrhenius_kernel,
+    enhancement_factor_kernel,
+    enhancement_kernel,
+)
 
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
@@ -63,7 +68,7 @@ class ChargeBalance:
         setting, temperature = self.around.at(time_s)
         potential = self.net.potentials(y)[:, self.net.surface_node]
         current = self.table.current(member, potential, setting)
-        return self._rates(current, self._films(temperature, y)[0], y)
+        return self._rates(current, self._film_current(temperature, y), y)
 
     def rhs_and_jacobian(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array]:
         """Charge rates [A] of the state variables [m, n] and derivatives [A/V, m, n, n]."""
@@ -86,6 +91,14 @@ class ChargeBalance:
         if net.link_nodes:
             rate -= (net.link_rows * self._links(y)[..., None]).sum(axis=-2)
         return rate
+
+    def _film_current(self, temperature_K: Array, y: Array) -> Array:
+        """Conduction through films [A m-2, m, F], positive to the outer face."""
+        net = self.net
+        field = y[:, net.film_node] / net.film_thickness_m
+        temperature = temperature_K[:, net.film_surface]
+        sigma = arrhenius_kernel(temperature, net.film_activation_eV) / net.film_resistivity_ohm_m
+        return -sigma * field * enhancement_factor_kernel(field, temperature, net.film_permittivity)
 
     def _films(self, temperature_K: Array, y: Array) -> tuple[Array, Array]:
         """Conduction through films [A m-2], positive to the outer face, and slope by y."""
@@ -110,7 +123,7 @@ class ChargeBalance:
         if light is not None:
             setting = setting._replace(light=light)
         by_mechanism = surface_currents(self.models[member], potential, setting).by_mechanism
-        return Flows(by_mechanism, self._films(temperature, y)[0], self._links(y))
+        return Flows(by_mechanism, self._film_current(temperature, y), self._links(y))
 
     def node_currents(self, flows: Flows) -> Array:
         """Net current into every node [A, m, n], conduction and links included."""
