@@ -6,7 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.case import LoadedCase, Mode
+from charging.case import Case, LoadedCase, Mode, OrbitFixed
 from charging.currents.emission import SECONDARY_LAWS
 from charging.currents.lookup import net_currents
 from charging.currents.surface import Setting, surface_models
@@ -19,21 +19,26 @@ from charging.surroundings import (
     Episode,
     Path,
     Surroundings,
+    kepler,
     output_times,
     path,
     sun_distance_au,
     surroundings,
 )
+from environments.orbit import period_s
 from environments.plasma import Plasma
 from environments.spectrum import SolarSpectrum, solar_spectrum
 from materials.secondary import YieldLaw
 
 Array = NDArray[np.float64]
 
-TOLERANCE = Tolerance(absolute=0.01, relative=1e-4)
+TOLERANCE = Tolerance(absolute=0.005, relative=5e-5)
 """Local error per step [V] and relative; what it gives along a day is a recorded figure."""
 
 FIRST_STEP_S = 1e-6
+LARGEST_TURN = 1.0 / 48.0
+"""Longest step as a share of the orbit's period: 7.5 degrees of Sun angle."""
+
 SETTLING_S = 1e12
 """Length of the march with frozen surroundings that finds an equilibrium start."""
 
@@ -175,6 +180,7 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
             breaks_s=around.breaks_s,
             tolerance=TOLERANCE,
             first_step_s=FIRST_STEP_S,
+            largest_step_s=_largest_step_s(case),
         )
     except NoSolutionError as error:
         raise NoSolutionError(f"mode {name!r}: {error}") from error
@@ -189,6 +195,12 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
         times_s=output_times(case, around),
         trajectories=tuple(trajectories),
     )
+
+
+def _largest_step_s(case: Case) -> float:
+    if isinstance(case.orbit, OrbitFixed):
+        return np.inf
+    return LARGEST_TURN * period_s(kepler(case.orbit))
 
 
 @dataclass(frozen=True, slots=True)

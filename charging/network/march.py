@@ -131,6 +131,7 @@ def march(
     breaks_s: Sequence[float] = (),
     tolerance: Tolerance,
     first_step_s: float = 1e-6,
+    largest_step_s: float = np.inf,
     attempts: int = 200_000,
 ) -> list[Trajectory]:
     """March a block of members from `span_s[0]` to `span_s[1]`.
@@ -146,7 +147,10 @@ def march(
         Times at which f has a kink or a jump; every member steps onto them.
     tolerance : Tolerance
     first_step_s : float
-        First step and first step after a break.
+        First step.
+    largest_step_s : float
+        No step is longer. A state that follows slow surroundings has no error at its step
+        ends, however long the step: only this keeps the dense output right between them.
     attempts : int
         Largest number of tries per member.
 
@@ -194,6 +198,7 @@ def march(
         t[done] = np.where(lands[good], stops[goal[done]], t[done] + step[good])
         y[done] = y1[good]
         h[active] = step * np.where(good, factor, np.minimum(factor, 0.9))
+        h[active] = np.minimum(h[active], largest_step_s)
         goal[done] += lands[good]
         still = active[goal[active] < len(stops)]
         stuck = still[(h[still] < 1e-13 * np.maximum(np.abs(t[still]), 1.0))
