@@ -8,14 +8,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from environments.orbit import EARTH_GM_M3_S2, EARTH_RADIUS_M
-from environments.sun import SOLAR_RADIUS_M, Path
+from environments.sun import Path, polar_stretch, stretched_solar_radius_m
 from environments.vectors import length
 
 # Search for eclipses: first step, and the width at which an interval is left alone [s].
 _FIRST_STEP_S: Final = 300.0
 _LAST_STEP_S: Final = 0.01
 _MOST_INTERVALS: Final = 2_000_000
-# Turning of the Sun's direction: 2.06e-7 rad/s at perihelion [rad s-1], rounded up.
+# Turning of the Sun's direction: 2.06e-7 rad/s at perihelion [rad s-1], rounded up; the
+# Earth's flattening adds 0.7 % at most, the motion of the Moon as a body 4 %.
 _SUN_RATE_RAD_S: Final = 2.2e-7
 
 # Distances [m] at times [s], or speeds [m s-1] at radii [m]; shape (N,) to (N,).
@@ -53,10 +54,11 @@ def find_eclipses(
     *,
     body: str = "earth",
     body_radius_m: float = EARTH_RADIUS_M,
+    polar_radius_m: float | None = None,
     gm_m3_s2: float = EARTH_GM_M3_S2,
     speed_limit_m_s: float | None = None,
 ) -> tuple[Eclipse, ...]:
-    """All passages through the shadow of a spherical body between two times.
+    """All passages through the shadow of a body between two times.
 
     Parameters
     ----------
@@ -68,6 +70,9 @@ def find_eclipses(
         Name for the result.
     body_radius_m : float, optional
         Radius that stops light [m]; add the height of an absorbing atmosphere if wanted.
+    polar_radius_m : float, optional
+        Radius that stops light along z [m]; without it the body is a sphere. Both for the
+        Earth: `environments.sun.earth_shadow_radii_m`.
     gm_m3_s2 : float, optional
         Gravity of the body; a bound orbit stays below its escape speed.
     speed_limit_m_s : float, optional
@@ -90,7 +95,7 @@ def find_eclipses(
     spacecraft moves. An interval is therefore free of contacts for certain when its two
     distances together exceed what can be travelled; all others are halved down to 0.01 s,
     and contacts found there are bisected to below a microsecond. What can be missed
-    is a graze shorter than 0.01 s, less than a millimetre deep. Cones and sphere as in
+    is a graze shorter than 0.01 s, less than a millimetre deep. Cones and flattening as in
     `illumination`, light time left out (below 0.2 s at the Moon, 1 ms in low orbit).
 
     References
@@ -115,13 +120,23 @@ def find_eclipses(
             return np.full(radius.shape, speed_limit_m_s)
         return np.sqrt(2.0 * gm_m3_s2 / np.maximum(radius, body_radius_m))
 
+    # a flattened body becomes a sphere when all is stretched along its axis
+    stretch = polar_stretch(body_radius_m, polar_radius_m)
+    longest = float(stretch[2, 0])
+
+    def stretched_speed(radius: NDArray[np.float64]) -> NDArray[np.float64]:
+        return longest * speed(radius / longest)
+
+    def place(t: NDArray[np.float64]) -> NDArray[np.float64]:
+        return position(t) * stretch
+
     passages = []
     for sign in (1.0, -1.0):  # penumbra, umbra
 
         def depth(t: NDArray[np.float64], sign: float = sign) -> NDArray[np.float64]:
-            return _outside_cone(position(t), sun(t), body_radius_m, sign)
+            return _outside_cone(place(t), sun(t) * stretch, body_radius_m, sign, longest)
 
-        contacts = _contacts(depth, position, speed, start_s, end_s, body_radius_m)
+        contacts = _contacts(depth, place, stretched_speed, start_s, end_s, body_radius_m)
         inside = bool(depth(np.array([start_s]))[0] < 0.0)
         edges: list[float | None] = [None, *contacts] if inside else [*contacts]
         if len(edges) % 2:
@@ -146,14 +161,20 @@ def find_eclipses(
 
 
 def _outside_cone(
-    position: NDArray[np.float64], sun: NDArray[np.float64], body_radius_m: float, sign: float
+    position: NDArray[np.float64],
+    sun: NDArray[np.float64],
+    body_radius_m: float,
+    sign: float,
+    stretch: float,
 ) -> NDArray[np.float64]:
     """Distance outside a shadow cone [m], negative inside; sign +1 penumbra, -1 umbra."""
     distance = length(sun)
     axis = -sun / distance
     along = np.sum(position * axis, axis=0)
-    across = length(np.cross(position, axis, axis=0))
-    sine = (SOLAR_RADIUS_M + sign * body_radius_m) / distance
+    off = position - along * axis
+    across = length(off)
+    limb = off[2] / np.maximum(across, 0.5 * body_radius_m)
+    sine = (stretched_solar_radius_m(limb, stretch) + sign * body_radius_m) / distance
     mantle = across * np.sqrt(1.0 - sine * sine) - sign * along * sine - body_radius_m
     # the shadow begins at the circle where the cone touches the body
     return np.asarray(np.maximum(mantle, -sign * body_radius_m * sine - along), dtype=np.float64)
@@ -181,10 +202,11 @@ def _contacts(
         # no point of the interval is further than half of it from one of its ends
         travel = 0.5 * width * speed(np.full(width.shape, body_radius_m))
         fastest = speed(np.minimum(r_left, r_right) - travel)
-        # 1.001: drift by oblateness and the cone's change with the Sun's distance, below 1e-3
-        if bool((length(p_right - p_left) > 1.001 * fastest * width + 1.0).any()):
+        # 1.003: drift by oblateness, the cone's change with the Sun's distance, both below 1e-3,
+        # and with the direction of the limb of a flattened body, below 1e-3 to the Moon's distance
+        if bool((length(p_right - p_left) > 1.003 * fastest * width + 1.0).any()):
             raise ValueError("the path moves faster than the speed limit of the search")
-        reach = width * (1.001 * fastest + _SUN_RATE_RAD_S * (np.maximum(r_left, r_right) + travel))
+        reach = width * (1.003 * fastest + _SUN_RATE_RAD_S * (np.maximum(r_left, r_right) + travel))
         changed = (d_left < 0.0) != (d_right < 0.0)
         open_ = changed | (np.abs(d_left) + np.abs(d_right) <= reach)
         if not bool(open_.any()):

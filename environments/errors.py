@@ -19,16 +19,20 @@ class EnvironmentDataError(ValueError):
         What would be accepted.
     nearest : str, optional
         The nearest accepted name.
+    file, line : str and int, optional
+        Where it stands, when a reader of files knows; lines count from 1.
 
     Attributes
     ----------
-    key, value, problem, allowed, nearest
+    key, value, problem, allowed, nearest, file, line
         As given. ``str()`` is one line; a caller that knows file and line adds them.
 
     Examples
     --------
     >>> print(EnvironmentDataError("is unknown", key=("population", 0, "law"), value="kapa"))
     population[0].law = "kapa" is unknown
+    >>> print(EnvironmentDataError("ends early", file="a.oem", line=12))
+    a.oem:12: ends early
     """
 
     def __init__(
@@ -39,12 +43,16 @@ class EnvironmentDataError(ValueError):
         value: object = None,
         allowed: str | None = None,
         nearest: str | None = None,
+        file: str | None = None,
+        line: int | None = None,
     ) -> None:
         self.key = key
         self.value = value
         self.problem = problem
         self.allowed = allowed
         self.nearest = nearest
+        self.file = file
+        self.line = line
         super().__init__(self._line())
 
     def _line(self) -> str:
@@ -57,7 +65,12 @@ class EnvironmentDataError(ValueError):
             line += f"; allowed: {self.allowed}"
         if self.nearest is not None:
             line += f"; nearest: {_value_text(self.nearest)}"
-        return line
+        if self.file is None and self.line is None:
+            return line
+        place = f"line {self.line}" if self.file is None else self.file
+        if self.file is not None and self.line is not None:
+            place += f":{self.line}"
+        return f"{place}: {line}"
 
     def below(self, *prefix: str | int) -> "EnvironmentDataError":
         """Return the same error with its key placed below `prefix`."""
@@ -67,6 +80,8 @@ class EnvironmentDataError(ValueError):
             value=self.value,
             allowed=self.allowed,
             nearest=self.nearest,
+            file=self.file,
+            line=self.line,
         )
 
 

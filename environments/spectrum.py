@@ -10,7 +10,7 @@ from types import MappingProxyType
 from typing import Final
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 from scipy.constants import c, e, h
 
 from environments.errors import EnvironmentDataError, nearest_name
@@ -111,7 +111,8 @@ class SolarSpectrum:
         -------
         float
             Flux [m-2 s-1]. A bin that holds the threshold counts with the share of its
-            wavelengths below it, a line wholly or not at all. Below 3.1 eV (400 nm, the
+            photons below that wavelength, irradiance constant within the bin (as in
+            `environments.rebin`), a line wholly or not at all. Below 3.1 eV (400 nm, the
             end of the data) the flux stays at its total: the spectrum knows no more.
 
         Raises
@@ -128,12 +129,10 @@ class SolarSpectrum:
         if not (isfinite(threshold_eV) and threshold_eV > 0.0):
             raise ValueError("threshold_eV must be finite and positive")
         edge_nm = NM_EV / threshold_eV
-        width = self.wavelength_high_nm - self.wavelength_low_nm
-        is_line = width == 0.0
-        below = edge_nm - self.wavelength_low_nm
-        share = np.where(
-            is_line, below > 0.0, np.clip(below / np.where(is_line, 1.0, width), 0.0, 1.0)
-        )
+        low, high = self.wavelength_low_nm, self.wavelength_high_nm
+        is_line = high == low
+        below = (edge_nm**2 - low**2) / np.where(is_line, 1.0, high**2 - low**2)
+        share = np.where(is_line, edge_nm > low, np.clip(below, 0.0, 1.0))
         return float(np.sum(share * self.photon_flux_m2_s))
 
 
@@ -198,11 +197,7 @@ def solar_spectrum(
     _check("f107_81day", mean, F107_RANGE_SFU, "sfu")
     _check("distance_au", distance_au, DISTANCE_RANGE_AU, "AU")
     table = _table()
-    activity = 0.5 * (f107 + mean)
-    scale = np.maximum(
-        ACTIVITY_FLOOR, 1.0 + table.activity_per_sfu * (activity - ACTIVITY_REFERENCE_SFU)
-    )
-    flux = table.photon_flux_m2_s * scale / distance_au**2
+    flux = photon_flux(0.5 * (f107 + mean)) / distance_au**2
     if band_factors:
         flux = flux * _factors(band_factors, table.band)
     flux.flags.writeable = False
@@ -216,6 +211,37 @@ def solar_spectrum(
         f107_81day=float(mean),
         distance_au=float(distance_au),
     )
+
+
+def photon_flux(activity_sfu: ArrayLike) -> NDArray[np.float64]:
+    """Photons by bin at 1 AU for many activities at once; bins as in `solar_spectrum`.
+
+    Parameters
+    ----------
+    activity_sfu : array_like, (...)
+        P, mean of F10.7 and its 81-day mean [sfu], 50 to 500.
+
+    Returns
+    -------
+    ndarray, (..., bin)
+        [m-2 s-1].
+
+    Raises
+    ------
+    EnvironmentDataError
+        An activity outside its range.
+
+    Examples
+    --------
+    >>> photon_flux([80.0, 150.0]).shape
+    (2, 163)
+    """
+    activity = np.asarray(activity_sfu, dtype=np.float64)
+    for extreme in (activity.min(), activity.max()):
+        _check("activity_sfu", float(extreme), F107_RANGE_SFU, "sfu")
+    table = _table()
+    change = table.activity_per_sfu * (activity[..., np.newaxis] - ACTIVITY_REFERENCE_SFU)
+    return table.photon_flux_m2_s * np.maximum(ACTIVITY_FLOOR, 1.0 + change)
 
 
 def band_table(spectrum: SolarSpectrum) -> tuple[BandRow, ...]:
