@@ -112,6 +112,34 @@ def as_number(
     raise InputError(f"{key} = {value!r} {problem}", key=(key,), value=value, allowed=allowed)
 
 
+def in_surface_state(material: Material, state: str) -> Material:
+    """Return a material in a state of its surface.
+
+    Raises
+    ------
+    InputError
+        Unknown state, or one that the material's record does not have.
+
+    Examples
+    --------
+    >>> in_surface_state(as_material("gold"), "aged").photoyield.basis
+    'assumed'
+    """
+    from materials.errors import MaterialError
+    from materials.surface_state import in_state
+
+    try:
+        return in_state(material, state)
+    except MaterialError as error:
+        raise InputError(
+            f'surface_state = "{printable(state)}" {error.problem}',
+            key=("surface_state",),
+            value=state,
+            allowed=error.allowed,
+            nearest=nearest_name(state, (error.allowed or "").split(", ")),
+        ) from None
+
+
 def as_choice(key: str, value: str, choices: Iterable[str]) -> str:
     """Return one of a few words.
 

@@ -39,6 +39,8 @@ from charging.case_tables import (
 from charging.errors import KeyPath, Problem, ProblemsFound
 from charging.toml_file import TomlFile, parse_toml, read_toml
 from charging.units import case_bare_keys, rewrite_quantities
+from materials.errors import MaterialError
+from materials.surface_state import in_state
 
 if TYPE_CHECKING:
     from environments.plasma import Plasma
@@ -168,7 +170,8 @@ def _loaded(toml: TomlFile, path: Path, sources: Sources) -> LoadedCase:
     materials = _found(_materials_named(case), find_material, sources, problems)
     plasmas = _found(_plasmas_named(case), find_plasma, sources, problems)
     if not problems:
-        problems += _layer_problems(case, {name: found[0] for name, found in materials.items()})
+        named = {name: found[0] for name, found in materials.items()}
+        problems += [*_layer_problems(case, named), *_state_problems(case, named)]
     if problems:
         raise input_error(problems, toml.document, file=toml.file, lines=toml.lines, origin=origin)
     return LoadedCase(
@@ -235,6 +238,20 @@ def _plasmas_named(case: Case) -> Iterator[tuple[KeyPath, str]]:
             yield ("mode", index, "plasma"), mode.plasma
     for index, name in enumerate(case.review.plasmas):
         yield ("review", "plasmas", index), name
+
+
+def _state_problems(case: Case, materials: Mapping[str, Material]) -> Iterator[Problem]:
+    """Yield surfaces whose material has no record of the state they ask for."""
+    for index, surface in enumerate(case.surface):
+        try:
+            in_state(materials[surface.material], surface.surface_state)
+        except MaterialError as error:
+            yield Problem(
+                ("surface", index, "surface_state"),
+                error.problem,
+                value=surface.surface_state,
+                allowed=error.allowed,
+            )
 
 
 def _layer_problems(case: Case, materials: Mapping[str, Material]) -> Iterator[Problem]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -82,9 +83,38 @@ def find_plasma(name: str, sources: Sources) -> tuple[Plasma, str]:
     if rewritten.problems:
         raise input_error(rewritten.problems, toml.document, file=toml.file, lines=toml.lines)
     try:
-        return read_plasma(rewritten.document), toml.text
+        plasma = read_plasma(rewritten.document, _folder(name, sources))
+        return plasma, _with_spectra(toml.text, plasma)
     except EnvironmentDataError as error:
         raise _in_file(error, toml, rewritten.origin) from None
+
+
+def _folder(name: str, sources: Sources) -> Path | None:
+    """Folder in which a plasma file may name spectra; None for a kept text."""
+    if name in sources.plasma_texts or sources.case_file is None:
+        return None
+    return (sources.case_file.parent / name).resolve().parent
+
+
+def _with_spectra(text: str, plasma: Plasma) -> str:
+    """Text of a plasma with its spectrum files written out, so that it stands alone."""
+    from environments.distributions import Tabulated
+
+    pattern = re.compile(r"^[ \t]*spectrum_file[ \t]*=.*$", re.MULTILINE)
+    inline = re.compile(r"^[ \t]*\[\[[ \t]*population[ \t]*\]\].*$", re.MULTILINE)
+    head, *parts = inline.split(text)
+    marks = inline.findall(text)
+    if len(parts) != len(plasma.populations):  # written some other way: leave it
+        return text
+    for i, (part, population) in enumerate(zip(parts, plasma.populations, strict=True)):
+        spectrum = population.distribution
+        if isinstance(spectrum, Tabulated) and pattern.search(part):
+            lists = (
+                f"energy_eV = {list(spectrum.energy_eV)}\n"
+                f"flux_m2_s_sr_eV = {list(spectrum.flux_m2_s_sr_eV)}"
+            )
+            parts[i] = pattern.sub(lists, part, count=1)
+    return head + "".join(mark + part for mark, part in zip(marks, parts, strict=True))
 
 
 def _toml(kind: str, name: str, sources: Sources, kept: Mapping[str, str]) -> TomlFile | None:

@@ -172,6 +172,10 @@ class Emission(Table):
     secondary_law: Literal["both", "sanders_inouye_1979", "lin_joy_2005"] = Field(
         default="both", description="both: the verdict takes the worse"
     )
+    photo_escape: Literal["auto", "planar", "point source"] = Field(
+        default="auto",
+        description="photoelectrons leave as from a plane or a point; auto: by their Debye length",
+    )
 
 
 class SunlitEclipse(Table):
@@ -197,6 +201,9 @@ class Surface(Table):
 
     name: Name
     material: Reference = Field(description="library name (halflit materials) or file")
+    surface_state: Literal["as recorded", "clean", "air-exposed", "aged"] = Field(
+        default="as recorded", description="state of the surface for photoemission"
+    )
     area_m2: Positive
     thickness_m: float | None = Field(default=None, gt=0.0, le=1.0, description="of a dielectric")
     normal: Direction | None = Field(default=None, description="outward, body axes")

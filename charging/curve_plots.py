@@ -4,15 +4,22 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Unpack
 
 import numpy as np
 
 from charging.arguments import as_material
 from charging.errors import InputError
-from charging.photo_table import retarding_curves
+from charging.photo_table import (
+    PhotoRow,
+    Sunlight,
+    SunlightOptions,
+    photoyield_table,
+    retarding_curves,
+)
 from charging.point import PointResult
 from charging.written_file import written_file
+from environments.spectrum import BANDS
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -118,16 +125,13 @@ def plot_point(result: PointResult, target: Path) -> None:
 def plot_photoyield(
     materials: Sequence[Material | str],
     target: Path,
-    *,
-    distance_au: float = 1.0,
-    f107: float = 150.0,
-    incidence_cosine: float = 1.0,
+    **sunlight: Unpack[SunlightOptions],
 ) -> None:
-    """Draw yield curves and retarding curves of materials.
+    """Draw yield curves, shares of the bands and retarding curves of materials.
 
     Parameters
     ----------
-    materials, distance_au, f107, incidence_cosine
+    materials, **sunlight
         As in `charging.photo_table.photoyield_table`.
     target : Path
         Picture to write; png, svg or pdf by its ending.
@@ -137,17 +141,13 @@ def plot_photoyield(
     InputError
         As `photoyield_table` and `plot_point`.
     """
-    figure, (left, right) = _figure(2, (10.5, 4.8))
+    figure, (left, middle, right) = _figure(3, (14.5, 4.8))
+    light = Sunlight(**sunlight)
     records = {record.name: record for record in map(as_material, materials)}
     potential = np.linspace(0.0, 30.0, 601)
-    curves = retarding_curves(
-        list(records.values()),
-        potential,
-        distance_au=distance_au,
-        f107=f107,
-        incidence_cosine=incidence_cosine,
-    )
-    emitting = [record for record in records.values() if record.photoyield is not None]
+    curves = retarding_curves(list(records.values()), potential, **sunlight)
+    rows = photoyield_table(list(records.values()), **sunlight)
+    emitting = [light.material(r) for r in records.values() if r.photoyield is not None]
     for i, record in enumerate(emitting):
         colour = COLOURS[i % len(COLOURS)]
         style = STYLES[i // len(COLOURS) % len(STYLES)]
@@ -172,13 +172,34 @@ def plot_photoyield(
     right.set_xlabel("potential of the surface [V]")
     right.set_ylabel("escaping current density [µA m$^{-2}$]")
     right.set_title(
-        f"escape, {distance_au:g} AU, F10.7 {f107:g}, cosine {incidence_cosine:g}",
+        f"{light.photo_escape} escape, {light.distance_au:g} AU, F10.7 {light.f107:g}, "
+        f"cosine {light.incidence_cosine:g}",
         loc="left",
         fontsize=11,
     )
+    _draw_bands(middle, [row for row in rows if row.bands])
     if emitting:
         right.legend(fontsize=8)
     _save(figure, target)
+
+
+def _draw_bands(axes: Axes, rows: Sequence[PhotoRow]) -> None:
+    """Bars: what each band of the spectrum gives, one bar per material."""
+    names = list(BANDS)
+    height = 0.8 / max(len(rows), 1)
+    for i, row in enumerate(rows):
+        place = np.arange(len(names)) + (i - 0.5 * (len(rows) - 1)) * height
+        axes.barh(
+            place,
+            [1e6 * share.current_A_m2 for share in row.bands],
+            height=0.9 * height,
+            color=COLOURS[i % len(COLOURS)],
+            hatch=("", "//", "..", "xx")[i // len(COLOURS) % 4],
+        )
+    axes.set_yticks(np.arange(len(names)), names, fontsize=8)
+    axes.invert_yaxis()
+    axes.set_xlabel("part of the current [µA m$^{-2}$]")
+    axes.set_title("bands of sunlight", loc="left", fontsize=11)
 
 
 def plot_spectrum(spectrum: SolarSpectrum, target: Path) -> None:

@@ -193,6 +193,8 @@ def attributes(
         "Conventions": "CF-1.11",
         "title": loaded.case.title,
         "source": f"halflit {__version__}: surface charging by current balance along an orbit",
+        # without a date: the same case gives the same file
+        "history": f"computed by halflit {__version__} from {loaded.path.name}",
         "comment": (
             "An estimate. Program requirements, applicable standards and qualified specialists "
             "decide; crewed use needs its own safety process. Not modelled: internal charging, "

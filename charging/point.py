@@ -9,10 +9,22 @@ from types import MappingProxyType
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.arguments import as_choice, as_material, as_number, as_plasma, from_environment
+from charging.arguments import (
+    as_choice,
+    as_material,
+    as_number,
+    as_plasma,
+    from_environment,
+    in_surface_state,
+)
 from charging.currents.balance import SEARCH_V, Root, breakdown, floating_potentials
 from charging.currents.collection import COLLECTIONS, sheath_weight
 from charging.currents.emission import SECONDARY_LAWS
+from charging.currents.photo_escape import (
+    PHOTO_GEOMETRIES,
+    photo_sheath,
+    point_source_weight,
+)
 from charging.currents.surface import (
     MECHANISMS,
     Setting,
@@ -21,10 +33,10 @@ from charging.currents.surface import (
     surface_currents,
     surface_model,
 )
-from charging.errors import InputError, NoSolutionError
+from charging.errors import NoSolutionError
 from environments.errors import EnvironmentDataError
 from environments.plasma import Plasma
-from environments.spectrum import solar_spectrum
+from environments.spectrum import SolarSpectrum, solar_spectrum
 from materials.record import EMISSION_NEEDED, EMISSION_OPTIONAL, Material
 from materials.secondary import YieldLaw
 
@@ -51,6 +63,27 @@ class Sheath:
     length_m: float
     weight: float
     collection: str
+
+
+@dataclass(frozen=True, slots=True)
+class PhotoelectronSheath:
+    """Photoelectrons of the lit surface and how they leave.
+
+    Attributes
+    ----------
+    debye_length_m, density_m3, mean_energy_eV : float
+        At normal incidence, all electrons returning [m], [m-3], [eV].
+    point_source_share : float
+        Share of point-source escape, 0…1; the rest is planar.
+    photo_escape : str
+        The keyword asked for: auto, planar, point source.
+    """
+
+    debye_length_m: float
+    density_m3: float
+    mean_energy_eV: float
+    point_source_share: float
+    photo_escape: str
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -89,6 +122,8 @@ class PointResult:
     electron_debye_length_m : float
         Of the electrons as printed.
     sheath : Sheath
+    photoelectrons : PhotoelectronSheath or None
+        None in the dark or where nothing is emitted.
     other_laws_reached_V : mapping of str to float or None
         What the other secondary-emission laws give; None: no floating potential.
     curve : CurrentCurve
@@ -106,6 +141,7 @@ class PointResult:
     current_density_A_m2: Mapping[str, float]
     electron_debye_length_m: float
     sheath: Sheath
+    photoelectrons: PhotoelectronSheath | None
     other_laws_reached_V: Mapping[str, float | None]
     curve: CurrentCurve
     notes: tuple[str, ...]
@@ -122,6 +158,8 @@ def floating_point(
     distance_au: float = 1.0,
     f107: float = 150.0,
     law: str = "sanders_inouye_1979",
+    surface_state: str = "as recorded",
+    photo_escape: str = "auto",
 ) -> PointResult:
     """Find every floating potential of a one-sided patch without conduction.
 
@@ -143,6 +181,10 @@ def floating_point(
         Solar radio flux at 10.7 cm and its 81-day mean [1e-22 W m-2 Hz-1], 50 to 500.
     law : str, optional
         Secondary-emission law, "sanders_inouye_1979" or "lin_joy_2005".
+    surface_state : {"as recorded", "clean", "air-exposed", "aged"}, optional
+        State of the surface for photoemission, see `materials.surface_state`.
+    photo_escape : {"auto", "planar", "point source"}, optional
+        How photoelectrons leave a positive surface; auto blends by their Debye length.
 
     Returns
     -------
@@ -158,7 +200,7 @@ def floating_point(
     Notes
     -----
     Not part of the model: conduction to what lies behind, barriers raised by neighbours,
-    electron exchange between surfaces. Photoelectrons escape as from a plane.
+    electron exchange between surfaces.
 
     Examples
     --------
@@ -166,7 +208,9 @@ def floating_point(
     >>> round(found.reached_V)
     -1177
     """
-    record, surrounding = as_material(material), as_plasma(plasma)
+    record = in_surface_state(as_material(material), surface_state)
+    surrounding = as_plasma(plasma)
+    as_choice("photo_escape", photo_escape, PHOTO_GEOMETRIES)
     chosen = _law(law)
     as_choice("collection", collection, COLLECTIONS)
     radius = as_number("radius_m", radius_m, above=0.0, high=LARGEST_RADIUS_M)
@@ -175,12 +219,17 @@ def floating_point(
         spectrum = solar_spectrum(f107=f107, distance_au=distance_au)
     except EnvironmentDataError as error:
         raise from_environment(error) from None
-    _refuse_one_sided(surrounding)
     light = cosine if sunlit else 0.0
 
     def model(of: YieldLaw) -> SurfaceModel:
         return surface_model(
-            [record], [surrounding], spectrum, law=of, radius_m=radius, collection=collection
+            [record],
+            [surrounding],
+            spectrum,
+            law=of,
+            radius_m=radius,
+            collection=collection,
+            photo_geometry=photo_escape,
         )
 
     mine = model(chosen)
@@ -214,32 +263,40 @@ def floating_point(
         ),
         electron_debye_length_m=float(debye),
         sheath=Sheath(float(sheath.length_m), float(sheath.weight), collection),
+        photoelectrons=_photoelectrons(record, spectrum, radius, photo_escape)
+        if light > 0.0
+        else None,
         other_laws_reached_V=MappingProxyType(others),
         curve=_curve(mine, found.roots, light),
         notes=_notes(record, surrounding, found.roots, light, collection),
     )
 
 
+def _photoelectrons(
+    material: Material,
+    spectrum: SolarSpectrum,
+    radius_m: float,
+    photo_escape: str,
+) -> PhotoelectronSheath | None:
+    sheath = photo_sheath(material, spectrum)
+    if sheath is None:
+        return None
+    share = {
+        "auto": point_source_weight(sheath, radius_m),
+        "point source": 1.0,
+    }
+    return PhotoelectronSheath(
+        sheath.debye_length_m,
+        sheath.density_m3,
+        sheath.mean_energy_eV,
+        share.get(photo_escape, 0.0),
+        photo_escape,
+    )
+
+
 def _law(law: str) -> YieldLaw:
     as_choice("law", law, SECONDARY_LAWS)
     return next(known for known in SECONDARY_LAWS if known == law)
-
-
-def _refuse_one_sided(plasma: Plasma) -> None:
-    """Refuse a plasma without electrons or without ions: it has no sheath or no balance."""
-    present = {
-        population.species.charge_number < 0
-        for population in plasma.populations
-        if population.density_m3 > 0.0
-    }
-    for negative, words in ((True, "electrons"), (False, "positive ions")):
-        if negative not in present:
-            raise InputError(
-                f'plasma = "{plasma.name}" holds no {words}',
-                key=("plasma",),
-                value=plasma.name,
-                allowed="a plasma with electrons and positive ions",
-            )
 
 
 def _curve(model: SurfaceModel, roots: tuple[Root, ...], light: float) -> CurrentCurve:

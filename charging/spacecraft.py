@@ -5,6 +5,7 @@ from collections.abc import Mapping, Sequence
 from charging.case_tables import Case, Surface
 from charging.network.nodes import Face, Network, network
 from materials.record import Material
+from materials.surface_state import in_state
 
 REFERENCE_TEMPERATURE_K = 298.15
 """Temperature to which resistivities of the library belong."""
@@ -40,5 +41,10 @@ def spacecraft_network(case: Case, materials: Mapping[str, Material]) -> Network
 
 
 def surface_materials(case: Case, materials: Mapping[str, Material]) -> Sequence[Material]:
-    """Materials in the order of the surfaces."""
-    return tuple(materials[s.material] for s in case.surface)
+    """Materials in the order of the surfaces, each in the state its surface asks for."""
+    states: dict[tuple[str, str], Material] = {}
+    for s in case.surface:
+        key = (s.material, s.surface_state)
+        if key not in states:
+            states[key] = in_state(materials[s.material], s.surface_state)
+    return tuple(states[s.material, s.surface_state] for s in case.surface)

@@ -202,6 +202,19 @@ def plasma_bare_keys() -> BareKeys:
         ("population",): {
             "density": (Bare("density_m3", "number density", "m-3"),),
             "temperature": (Bare("temperature_eV", "energy", "eV"),),
+            "maxwellian_density": (Bare("maxwellian_density_m3", "number density", "m-3"),),
+            **{
+                name: (Bare(f"{name}_eV", "energy", "eV"),)
+                for name in (
+                    "maxwellian_temperature",
+                    "maxwellian_energy",
+                    "gaussian_energy",
+                    "gaussian_width",
+                    "low_cutoff",
+                    "high_cutoff",
+                    "flat_up_to",
+                )
+            },
         }
     }
 

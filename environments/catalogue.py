@@ -5,13 +5,18 @@ import tomllib
 from collections.abc import Mapping
 from functools import cache
 from importlib.resources import files
+from pathlib import Path
 from types import MappingProxyType
 from typing import Final
 
 from scipy.constants import atomic_mass
 
+from environments.auroral import FlatAndMaxwellian, Fontheim
+from environments.distributions import DISTRIBUTIONS, Tabulated
 from environments.errors import EnvironmentDataError, nearest_name
-from environments.plasma import BASES, LAWS, SPECIES, Plasma, Population, Species
+from environments.isotropic import Distribution
+from environments.plasma import BASES, LAWS, SPECIES, Plasma, Population, Species, population_of
+from environments.spectrum_file import read_spectrum
 
 NAME_PATTERN: Final = re.compile(r"[A-Za-z0-9]([A-Za-z0-9 ,()._+-]{0,62}[A-Za-z0-9)+])?")
 """Names of library entries; never used as paths."""
@@ -19,20 +24,12 @@ NAME_PATTERN: Final = re.compile(r"[A-Za-z0-9]([A-Za-z0-9 ,()._+-]{0,62}[A-Za-z0
 PLASMA_KEYS: Final = ("name", "title", "source", "basis", "clause", "note", "population")
 """Keys of a plasma document."""
 
-POPULATION_KEYS: Final = (
-    "species",
-    "mass_u",
-    "charge_number",
-    "law",
-    "density_m3",
-    "temperature_eV",
-)
-"""Keys of one ``[[population]]``."""
+COMMON_KEYS: Final = ("species", "mass_u", "charge_number", "law")
+"""Keys of every ``[[population]]``; the others belong to its law."""
 
-# Ranges outside which a figure is refused as a slip of units; assumed, far beyond any
-# plasma that a spacecraft meets (lobe 1e4 m-3, ionosphere 1e12 m-3; 0.02 eV ... 100 keV).
-DENSITY_RANGE_M3: Final = (1.0, 1e16)
-TEMPERATURE_RANGE_EV: Final = (1e-3, 1e6)
+PITCH_ANGLE_LAWS: Final = (Fontheim.law, FlatAndMaxwellian.law)
+"""Laws of field-aligned beams, whose files must say ``pitch_angle = "isotropic"``."""
+
 MASS_RANGE_U: Final = (1e-4, 500.0)
 
 
@@ -108,7 +105,7 @@ def load_plasma(name: str) -> Plasma:
     return read_plasma(tomllib.loads(library_text(name)))
 
 
-def read_plasma(document: Mapping[str, object]) -> Plasma:
+def read_plasma(document: Mapping[str, object], folder: Path | None = None) -> Plasma:
     """Plasma from a parsed document.
 
     Parameters
@@ -118,7 +115,13 @@ def read_plasma(document: Mapping[str, object]) -> Plasma:
         (default: the title), ``basis`` (default "assumed": an author who says nothing has
         not said that it was measured), ``clause``, ``note``. A population holds ``species``
         ("electron", "H+", "He+", "O+") or ``mass_u`` [u] with ``charge_number``; ``law``
-        (default "maxwellian"); ``density_m3`` [m-3], > 0; ``temperature_eV`` [eV], > 0.
+        (default "maxwellian") and the figures of that law, which are the fields of its class
+        in `environments.distributions.DISTRIBUTIONS`: ``density_m3`` [m-3], > 0;
+        ``temperature_eV`` [eV], > 0; ``kappa``; ... A tabulated spectrum is given as
+        ``energy_eV`` with ``flux_m2_s_sr_eV``, or as ``spectrum_file`` (CSV or NetCDF).
+        Auroral laws say ``pitch_angle = "isotropic"``.
+    folder : Path, optional
+        Where a ``spectrum_file`` is looked for; without it such a file is refused.
 
     Returns
     -------
@@ -169,23 +172,60 @@ def read_plasma(document: Mapping[str, object]) -> Plasma:
     populations = []
     for number, row in enumerate(rows):
         try:
-            populations.append(_read_population(row))
+            populations.append(_read_population(row, folder))
         except EnvironmentDataError as error:
             raise error.below("population", number) from None
     return Plasma(name, title, source, basis, clause, note, tuple(populations))
 
 
-def _read_population(row: object) -> Population:
+def _read_population(row: object, folder: Path | None) -> Population:
     if not isinstance(row, Mapping):
         raise EnvironmentDataError("is not a table", value=row, allowed="a table of keys")
-    _refuse_unknown_keys(row, POPULATION_KEYS)
     law = _choice(row, "law", LAWS) if "law" in row else "maxwellian"
-    return Population(
-        species=_read_species(row),
-        law=law,
-        density_m3=_number(row, "density_m3", *DENSITY_RANGE_M3),
-        temperature_eV=_number(row, "temperature_eV", *TEMPERATURE_RANGE_EV),
-    )
+    kind = DISTRIBUTIONS[law]
+    own = (*kind.numbers, *kind.arrays)
+    if law in PITCH_ANGLE_LAWS:
+        own = (*own, "pitch_angle")
+    if law == Tabulated.law:
+        own = (*own, "spectrum_file")
+    _refuse_unknown_keys(row, (*COMMON_KEYS, *own))
+    species = _read_species(row)
+    if law in PITCH_ANGLE_LAWS:
+        _choice(row, "pitch_angle", ("isotropic",))
+    if "spectrum_file" in row:
+        return population_of(species, _spectrum_of_file(row, folder))
+    figures: dict[str, object] = {
+        key: _number(row, key, low, high) for key, (low, high) in kind.numbers.items()
+    }
+    for key, (low, high) in kind.arrays.items():
+        figures[key] = _numbers(row, key, low, high)
+    return population_of(species, _made(kind, figures))
+
+
+def _made(kind: type[Distribution], figures: Mapping[str, object]) -> Distribution:
+    return kind(**figures)
+
+
+def _spectrum_of_file(row: Mapping[str, object], folder: Path | None) -> Tabulated:
+    for key in Tabulated.arrays:
+        if key in row:
+            raise EnvironmentDataError(
+                "says again what spectrum_file already says", key=(key,), value=row[key]
+            )
+    name = _text(row, "spectrum_file")
+    if folder is None:
+        raise EnvironmentDataError(
+            "cannot be looked for: the plasma has no folder",
+            key=("spectrum_file",),
+            value=name,
+            allowed="energy_eV and flux_m2_s_sr_eV in the plasma itself",
+        )
+    try:
+        return read_spectrum(name, folder)
+    except EnvironmentDataError as error:
+        raise EnvironmentDataError(
+            f"cannot be used: {error}", key=("spectrum_file",), value=name
+        ) from None
 
 
 def _read_species(row: Mapping[str, object]) -> Species:
@@ -264,6 +304,19 @@ def _number(table: Mapping[str, object], key: str, low: float, high: float) -> f
     if not low <= value <= high:  # refuses nan and inf as well
         raise EnvironmentDataError("is out of range", key=(key,), value=value, allowed=allowed)
     return float(value)
+
+
+def _numbers(table: Mapping[str, object], key: str, low: float, high: float) -> tuple[float, ...]:
+    if key not in table:
+        raise EnvironmentDataError("is missing", key=(key,), allowed="a list of numbers")
+    values = table[key]
+    if not isinstance(values, list | tuple):
+        raise EnvironmentDataError(
+            "must be a list", key=(key,), value=values, allowed="a list of numbers"
+        )
+    for value in values:
+        _number({key: value}, key, low, high)
+    return tuple(float(value) for value in values)
 
 
 @cache

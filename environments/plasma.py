@@ -1,4 +1,4 @@
-"""Plasma as sums of Maxwellian populations, and the moments that charging needs."""
+"""Plasma as a sum of populations, and the moments that charging needs."""
 
 from collections.abc import Iterable
 from dataclasses import dataclass
@@ -6,70 +6,49 @@ from math import isfinite, sqrt
 from typing import Final
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
-from scipy.constants import atomic_mass, e, epsilon_0, physical_constants
-from scipy.constants import m_e as electron_mass
+from numpy.typing import NDArray
+from scipy.constants import e, epsilon_0
 
+from environments.distributions import DISTRIBUTIONS, Maxwellian, Tabulated
 from environments.errors import EnvironmentDataError, nearest_name
+from environments.isotropic import Distribution, Moments, distribution_moments
+from environments.species import (
+    ELECTRON,
+    HELIUM_ION,
+    HYDROGEN_ION,
+    OXYGEN_ION,
+    SPECIES,
+    Species,
+)
+from environments.thermal_flux import one_sided_maxwellian_current
+
+__all__ = [
+    "BASES",
+    "ELECTRON",
+    "HELIUM_ION",
+    "HYDROGEN_ION",
+    "LAWS",
+    "OXYGEN_ION",
+    "SPECIES",
+    "Plasma",
+    "Population",
+    "Species",
+    "electron_debye_length_m",
+    "electron_to_ion_current_ratio",
+    "extrapolated_share",
+    "moments",
+    "one_sided_maxwellian_current",
+    "population_current",
+    "population_moments",
+    "population_names",
+    "population_of",
+    "warnings_of",
+]
 
 # velocity distributions that a population may have
-LAWS: Final = ("maxwellian",)
+LAWS: Final = tuple(DISTRIBUTIONS)
 # how far a figure can be trusted, best first
 BASES: Final = ("measured", "handbook", "derived", "memory", "assumed")
-
-
-@dataclass(frozen=True, slots=True)
-class Species:
-    """A kind of charged particle.
-
-    Attributes
-    ----------
-    name : str
-        "electron", "H+", "He+", "O+", or a text made from mass and charge.
-    mass_kg : float
-        Mass of one particle [kg], > 0.
-    charge_number : int
-        Signed charge in units of e: -1 for electrons, +1 for H+; never 0.
-
-    Raises
-    ------
-    EnvironmentDataError
-        Mass not finite or not > 0; charge number 0.
-    """
-
-    name: str
-    mass_kg: float
-    charge_number: int
-
-    def __post_init__(self) -> None:
-        if not (isfinite(self.mass_kg) and self.mass_kg > 0.0):
-            raise EnvironmentDataError(
-                "cannot be a mass in kg", key=("mass_kg",), value=self.mass_kg, allowed="> 0"
-            )
-        if self.charge_number == 0:
-            raise EnvironmentDataError(
-                "carries no current", key=("charge_number",), value=0, allowed="any integer but 0"
-            )
-
-
-# Oxygen: mass of the nuclide 16O, atomic mass evaluation AME2020 (Wang et al. 2021, Chinese
-# Phys. C 45, 030003), digits from memory; less one electron, binding energy (14 eV) ignored.
-_OXYGEN_16_U = 15.994914620
-
-ELECTRON: Final = Species("electron", electron_mass, -1)
-"""Electron (CODATA)."""
-
-HYDROGEN_ION: Final = Species("H+", physical_constants["proton mass"][0], +1)
-"""Proton (CODATA)."""
-
-HELIUM_ION: Final = Species("He+", physical_constants["alpha particle mass"][0] + electron_mass, +1)
-"""Singly charged 4He: alpha particle and one electron (CODATA; binding 54 eV ignored)."""
-
-OXYGEN_ION: Final = Species("O+", _OXYGEN_16_U * atomic_mass - electron_mass, +1)
-"""Singly charged 16O, 15.994 u."""
-
-SPECIES: Final = {s.name: s for s in (ELECTRON, HYDROGEN_ION, HELIUM_ION, OXYGEN_ION)}
-"""Species by the name that plasma files use."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,11 +60,13 @@ class Population:
     species : Species
         What the particles are.
     law : str
-        Velocity distribution; "maxwellian" is the only one so far.
+        Energy distribution, one of `LAWS`.
     density_m3 : float
         Number density [m-3], >= 0.
     temperature_eV : float
-        kT [eV], > 0.
+        kT [eV], > 0; two thirds of the mean energy where the law is no Maxwellian.
+    distribution : Distribution, optional
+        Needed by every law but "maxwellian"; `population_of` fills the other fields from it.
 
     Raises
     ------
@@ -102,6 +83,7 @@ class Population:
     law: str
     density_m3: float
     temperature_eV: float
+    distribution: Distribution | None = None
 
     def __post_init__(self) -> None:
         if self.law not in LAWS:
@@ -111,6 +93,11 @@ class Population:
                 value=self.law,
                 allowed=", ".join(f'"{law}"' for law in LAWS),
                 nearest=nearest_name(self.law, LAWS),
+            )
+        given = "maxwellian" if self.distribution is None else self.distribution.law
+        if given != self.law:
+            raise EnvironmentDataError(
+                "needs its distribution; see population_of", key=("law",), value=self.law
             )
         if not (isfinite(self.density_m3) and self.density_m3 >= 0.0):
             raise EnvironmentDataError(
@@ -176,68 +163,43 @@ class Plasma:
             )
 
 
-def one_sided_maxwellian_current(
-    density_m3: ArrayLike,
-    temperature_eV: ArrayLike,
-    *,
-    mass_kg: float = electron_mass,
-    charge_number: int = -1,
-) -> NDArray[np.float64]:
-    r"""Current density a Maxwellian plasma sends onto one side of a plane.
-
-    :math:`J = q n \sqrt{e T / 2\pi m}`: random flux at plasma potential,
-    before a sheath attracts or repels the species.
-
-    Parameters
-    ----------
-    density_m3, temperature_eV : array_like
-        Number density [m-3], temperature [eV]; broadcast together.
-    mass_kg, charge_number : optional
-        Mass [kg]; signed charge in units of e. Default: electron.
-
-    Returns
-    -------
-    ndarray
-        Current density [A m-2]; positive = positive charge arriving,
-        so electrons give a negative value.
-
-    Raises
-    ------
-    ValueError
-        density < 0, temperature <= 0, mass <= 0, or not finite.
-
-    Notes
-    -----
-    Valid: isotropic, no drift, non-relativistic (electrons below ~50 keV).
-
-    References
-    ----------
-    Lieberman & Lichtenberg (2005), Principles of Plasma Discharges,
-    sec. 2.4 (section from memory).
+def population_of(species: Species, distribution: Distribution) -> Population:
+    """Population with density and temperature from the moments of its distribution.
 
     Examples
     --------
-    >>> round(float(one_sided_maxwellian_current(1e6, 1e3)) * 1e6, 3)  # uA m-2
-    -0.848
+    >>> from environments.distributions import Kappa
+    >>> hot = population_of(ELECTRON, Kappa(1e6, 500.0, 5.0))
+    >>> hot.law, round(hot.density_m3, 3), round(hot.temperature_eV, 6)
+    ('kappa', 1000000.0, 500.0)
     """
-    density = np.asarray(density_m3, dtype=np.float64)
-    temperature = np.asarray(temperature_eV, dtype=np.float64)
-    if not (np.isfinite(density).all() and (density >= 0.0).all()):
-        raise ValueError("density_m3 must be finite and not negative")
-    if not (np.isfinite(temperature).all() and (temperature > 0.0).all()):
-        raise ValueError("temperature_eV must be finite and positive")
-    if not (isfinite(mass_kg) and mass_kg > 0.0):
-        raise ValueError("mass_kg must be finite and positive")
-    flux = density * np.sqrt(e * temperature / (2.0 * np.pi * mass_kg))
-    return np.asarray(charge_number * e * flux, dtype=np.float64)
+    if isinstance(distribution, Maxwellian):
+        return Population(
+            species, distribution.law, distribution.density_m3, distribution.temperature_eV
+        )
+    found = distribution_moments(distribution, species.mass_kg)
+    return Population(
+        species, distribution.law, found.density_m3, found.mean_energy_eV / 1.5, distribution
+    )
+
+
+def population_moments(population: Population) -> Moments:
+    """Moments of one population; closed forms for a Maxwellian, else integrals.
+
+    Examples
+    --------
+    >>> population_moments(Population(ELECTRON, "maxwellian", 1e6, 1e3)).mean_energy_eV
+    1500.0
+    """
+    if population.distribution is not None:
+        return distribution_moments(population.distribution, population.species.mass_kg)
+    n, T = population.density_m3, population.temperature_eV
+    flux = n * sqrt(e * T / (2.0 * np.pi * population.species.mass_kg))
+    return Moments(n, flux, 1.5 * T, 2.0 * T * flux, T)
 
 
 def population_current(population: Population) -> float:
     """Random current density of one population onto one side of a plane.
-
-    Parameters
-    ----------
-    population : Population
 
     Returns
     -------
@@ -249,13 +211,42 @@ def population_current(population: Population) -> float:
     >>> round(population_current(Population(HYDROGEN_ION, "maxwellian", 1e6, 1e3)) * 1e9, 2)
     19.78
     """
-    return float(
-        one_sided_maxwellian_current(
-            population.density_m3,
-            population.temperature_eV,
-            mass_kg=population.species.mass_kg,
-            charge_number=population.species.charge_number,
-        )
+    flux = population_moments(population).number_flux_m2_s
+    return population.species.charge_number * e * flux
+
+
+def extrapolated_share(population: Population) -> float:
+    """Share of the one-sided current that lies below the first channel of a table, 0…1.
+
+    0 for every law but "tabulated".
+    """
+    spectrum = population.distribution
+    if not isinstance(spectrum, Tabulated):
+        return 0.0
+    # j = j1 E/E1 below the first channel
+    below = np.pi * spectrum.flux_m2_s_sr_eV[0] * spectrum.energy_eV[0] / 2.0
+    return float(below / population_moments(population).number_flux_m2_s)
+
+
+LARGEST_EXTRAPOLATED_SHARE: Final = 0.1
+
+
+def warnings_of(plasma: Plasma) -> tuple[str, ...]:
+    """What a report must say about the spectra of a plasma; empty when all is well.
+
+    Examples
+    --------
+    >>> from environments.distributions import Tabulated
+    >>> steep = population_of(ELECTRON, Tabulated((100.0, 200.0, 400.0), (1e9, 1e6, 1e3)))
+    >>> warnings_of(Plasma("a", "a", "x", "assumed", None, "", (steep,)))
+    ('electron: 82 % of the current lies below the first channel (extrapolated)',)
+    """
+    names = population_names(plasma.populations)
+    shares = [extrapolated_share(p) for p in plasma.populations]
+    return tuple(
+        f"{name}: {100.0 * share:.0f} % of the current lies below the first channel (extrapolated)"
+        for name, share in zip(names, shares, strict=True)
+        if share > LARGEST_EXTRAPOLATED_SHARE
     )
 
 
@@ -263,7 +254,9 @@ def electron_debye_length_m(plasma: Plasma) -> float:
     r"""Debye length of the electrons as printed, all populations together.
 
     :math:`\lambda_D = (\sum_k n_k e / \varepsilon_0 T_k)^{-1/2}` over the electron
-    populations, T in eV: the coldest dense population dominates.
+    populations, T in eV: the coldest dense population dominates. In place of T stands
+    :math:`1/\langle 1/2E\rangle`, the linear response of any isotropic distribution;
+    for kappa this is :math:`T (2\kappa - 3)/(2\kappa - 1)`.
 
     Parameters
     ----------
@@ -282,7 +275,7 @@ def electron_debye_length_m(plasma: Plasma) -> float:
 
     Notes
     -----
-    Valid: Maxwellian electrons, potentials small against T. Ions, which move little
+    Valid: potentials small against the electron energies. Ions, which move little
     within the sheath time of electrons, are left out.
 
     References
@@ -298,7 +291,7 @@ def electron_debye_length_m(plasma: Plasma) -> float:
     7.434
     """
     inverse_square = sum(
-        p.density_m3 * e / (epsilon_0 * p.temperature_eV)
+        p.density_m3 * e / (epsilon_0 * population_moments(p).debye_temperature_eV)
         for p in plasma.populations
         if p.species.name == ELECTRON.name
     )
@@ -314,17 +307,13 @@ def electron_debye_length_m(plasma: Plasma) -> float:
 def moments(plasma: Plasma) -> dict[str, NDArray[np.float64]]:
     """Moments of every population of a plasma.
 
-    Parameters
-    ----------
-    plasma : Plasma
-
     Returns
     -------
     dict of str to ndarray, each of shape (population,)
-        ``density_m3`` [m-3]; ``temperature_eV`` [eV]; ``current_density_A_m2`` one-sided
-        random current [A m-2], positive = positive charge arriving; ``number_flux_m2_s``
-        one-sided [m-2 s-1]; ``mean_energy_eV`` of the particles in a volume, 3T/2 [eV];
-        ``flux_mean_energy_eV`` of the particles that cross a plane, 2T [eV];
+        ``density_m3`` [m-3]; ``temperature_eV`` [eV], two thirds of the mean energy;
+        ``current_density_A_m2`` one-sided random current [A m-2], positive = positive charge
+        arriving; ``number_flux_m2_s`` one-sided [m-2 s-1]; ``mean_energy_eV`` of the particles
+        in a volume [eV]; ``flux_mean_energy_eV`` of the particles that cross a plane [eV];
         ``energy_density_eV_m3`` [eV m-3]; ``energy_flux_eV_m2_s`` one-sided [eV m-2 s-1].
         The order is that of ``plasma.populations``; see `population_names`.
 
@@ -335,21 +324,22 @@ def moments(plasma: Plasma) -> dict[str, NDArray[np.float64]]:
     >>> moments(plasma)["mean_energy_eV"].tolist()
     [1500.0]
     """
-    populations = plasma.populations
-    density = np.array([p.density_m3 for p in populations], dtype=np.float64)
-    temperature = np.array([p.temperature_eV for p in populations], dtype=np.float64)
-    current = np.array([population_current(p) for p in populations], dtype=np.float64)
-    charge = np.array([p.species.charge_number for p in populations], dtype=np.float64) * e
-    number_flux = current / charge
+    found = [population_moments(p) for p in plasma.populations]
+    charge = np.array([p.species.charge_number for p in plasma.populations], dtype=np.float64) * e
+    density, flux, energy, energy_flux = (
+        np.array([m[i] for m in found], dtype=np.float64) for i in range(4)
+    )
+    with_particles = np.where(flux > 0.0, flux, 1.0)
+    mean_crossing = np.where(flux > 0.0, energy_flux / with_particles, 4.0 / 3.0 * energy)
     return {
         "density_m3": density,
-        "temperature_eV": temperature,
-        "current_density_A_m2": current,
-        "number_flux_m2_s": number_flux,
-        "mean_energy_eV": 1.5 * temperature,
-        "flux_mean_energy_eV": 2.0 * temperature,
-        "energy_density_eV_m3": 1.5 * density * temperature,
-        "energy_flux_eV_m2_s": 2.0 * temperature * number_flux,
+        "temperature_eV": np.array([p.temperature_eV for p in plasma.populations]),
+        "current_density_A_m2": flux * charge,
+        "number_flux_m2_s": flux,
+        "mean_energy_eV": energy,
+        "flux_mean_energy_eV": mean_crossing,
+        "energy_density_eV_m3": density * energy,
+        "energy_flux_eV_m2_s": energy_flux,
     }
 
 

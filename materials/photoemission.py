@@ -2,74 +2,96 @@
 
 Each photon of energy hv frees electrons of 0 to W = hv - threshold. Summed
 over the spectrum this gives the retarding curve of the surface, so that no
-temperature of photoelectrons has to be assumed.
+temperature of photoelectrons has to be assumed. The energies of the electrons
+of one photon stand in `materials.photoelectron_energies`.
 """
 
 from __future__ import annotations
 
-from typing import Literal
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.optimize import brentq
 
 from materials.errors import finite_array
-from materials.photoyield import emission_spectrum, photo_current_density, yield_per_photon
+from materials.fitted_escape import (
+    GEOMETRIES,
+    EscapeGeometry,
+    is_planar,
+    maxwellian_escape,
+    two_exponential_escape,
+)
+from materials.photo_laws import incidence_factor
+from materials.photoelectron_energies import (
+    DIRECT_MEAN,
+    LowEnergyPeak,
+    collided_share,
+    direct_escape,
+    direct_escape_slope,
+    peak_escape,
+    peak_escape_slope,
+    peak_mean,
+)
+from materials.photoyield import (
+    emission_spectrum,
+    escaping_weights,
+    photo_current_density,
+    yield_per_photon,
+)
+from materials.record import Material
 
 __all__ = [
     "GEOMETRIES",
-    "LOW_ENERGY_TEMPERATURE_EV",
     "EscapeGeometry",
-    "default_low_energy_share",
+    "LowEnergyPeak",
+    "collided_share",
     "emission_spectrum",
     "escape_fraction",
     "escape_slope",
+    "escaping_weights",
+    "incidence_factor",
+    "low_energy_peak",
+    "maxwellian_escape",
     "mean_photoelectron_energy",
     "photo_current_density",
     "potential_at_escape",
+    "two_exponential_escape",
     "yield_per_photon",
 ]
 
-EscapeGeometry = Literal["planar", "point source"]
-GEOMETRIES: tuple[EscapeGeometry, ...] = ("planar", "point source")
 
-LOW_ENERGY_TEMPERATURE_EV = 1.0
-"""T of the low-energy peak E exp(-E/T)/T^2 under photons above 20 eV (assumed:
-"below 2-3 eV" is what is remembered of Feuerbacher & Fitton 1972)."""
+def low_energy_peak(material: Material) -> LowEnergyPeak:
+    """Energies of the photoelectrons of a material that collided before they left.
 
-
-def default_low_energy_share(photon_energy_eV: ArrayLike) -> NDArray[np.float64]:
-    """Share of photoelectrons in the low-energy peak.
-
-    0 up to 20 eV, rising linearly to 0.6 at 40 eV, 0.6 above.
+    They are secondaries, and take the law that the record gives for those: Chung &
+    Everhart (1974) with the work function for a conductor, a Maxwellian of
+    ``secondary_energy_eV`` for others. That secondaries made by photons and by electrons
+    have one shape: Henke, Smith & Attwood (1977), J. Appl. Phys. 48, 1852 (memory).
 
     Parameters
     ----------
-    photon_energy_eV : array_like
-        Photon energy [eV].
+    material : Material
+        One that emits.
 
     Returns
     -------
-    ndarray
-        0 to 0.6, same shape.
+    LowEnergyPeak
 
     Raises
     ------
-    ValueError
-        Energy negative or not finite.
-
-    Notes
-    -----
-    That a peak of secondaries appears above about 20 eV is remembered from
-    Feuerbacher & Fitton (1972), J. Appl. Phys. 43, 1563; the share is assumed.
+    MaterialError
+        The material holds no such record.
 
     Examples
     --------
-    >>> default_low_energy_share([10.2, 30.0, 90.0]).round(3).tolist()
-    [0.0, 0.3, 0.6]
+    >>> from materials import load_material
+    >>> low_energy_peak(load_material("gold"))
+    LowEnergyPeak(law='chung_everhart_1974', scale_eV=5.1)
     """
-    energy = finite_array("photon_energy_eV", photon_energy_eV, at_least=0.0)
-    return np.asarray(0.6 * np.clip((energy - 20.0) / 20.0, 0.0, 1.0))
+    if material.kind == "conductor":
+        return LowEnergyPeak("chung_everhart_1974", material.value("work_function_eV"))
+    return LowEnergyPeak("maxwellian", material.value("secondary_energy_eV"))
 
 
 def escape_fraction(
@@ -79,20 +101,17 @@ def escape_fraction(
     threshold_eV: float,
     *,
     geometry: EscapeGeometry = "planar",
-    low_energy_share: ArrayLike | None = None,
-    low_energy_temperature_eV: float = LOW_ENERGY_TEMPERATURE_EV,
+    peak: LowEnergyPeak | None = None,
 ) -> NDArray[np.float64]:
     r"""Share of photoelectrons that leave a surface at potential V.
 
-    A photon gives energies :math:`p(E) = 12\,E\,(W-E)^2/W^4` between 0 and
-    W = hv - threshold. Emission follows the cosine law. With v = V/W:
+    A photon gives energies between 0 and W = hv - threshold: those of electrons
+    that come out as excited, :math:`p(E) \propto E (W-E)^n` with the maximum at 0.3 W,
+    and the low-energy peak of those that collided, with the share of
+    `collided_share`. Emission follows the cosine law. For the first part, v = V/W:
 
-    - planar, the normal energy must exceed V: :math:`(1-v)^4`;
-    - point source, the whole energy must: :math:`(1-v)^3(1+3v)`.
-
-    A share of the electrons of photons above 20 eV sits in a peak
-    :math:`(E/T^2)\,e^{-E/T}`, which gives :math:`e^{-V/T}` and
-    :math:`(1+V/T)\,e^{-V/T}`.
+    - planar, the normal energy must exceed V: :math:`(1-v)^{n+2}`;
+    - point source, the whole energy must: :math:`(1-v)^{n+1}[1+(n+1)v]`.
 
     Parameters
     ----------
@@ -100,22 +119,21 @@ def escape_fraction(
         Surface above the highest point on the way out [V].
     photon_energy_eV, emitted_weight : array_like, (bin,)
         Photon energies [eV] and electrons emitted by each bin (any unit,
-        >= 0), see `emission_spectrum`. Bins up to the threshold need weight 0.
+        >= 0), see `escaping_weights`. Bins up to the threshold need weight 0.
     threshold_eV : float
         Photoelectric threshold [eV].
     geometry : {"planar", "point source"}, optional
         Planar when the surface is larger than the Debye length of its
         photoelectrons, point source when it is much smaller.
-    low_energy_share : array_like, (bin,), optional
-        Share in the low-energy peak; `default_low_energy_share` by default.
-    low_energy_temperature_eV : float, optional
-        T of that peak [eV], > 0.
+    peak : LowEnergyPeak, optional
+        Energies of the electrons that collided, see `low_energy_peak`; by default
+        Chung & Everhart (1974) with the threshold for the work function.
 
     Returns
     -------
     ndarray
-        0 to 1, the shape of `potential_V`; 1 for V <= 0. Where all weights
-        are 0 the fraction is undefined and refused.
+        0 to 1, the shape of `potential_V`; 1 for V <= 0, 0 from the largest W on. Where
+        all weights are 0 the fraction is undefined and refused.
 
     Raises
     ------
@@ -125,33 +143,29 @@ def escape_fraction(
 
     References
     ----------
-    Shape (maximum at W/3, between 0.2 and 0.4 W): Feuerbacher & Fitton (1972),
-    J. Appl. Phys. 43, 1563; Grard (1973), J. Geophys. Res. 78, 2885 (memory).
-    Retarding curves of the two geometries for a Maxwellian: Grard (1973).
+    Maximum at 0.2 to 0.4 W below 15 eV, second maximum below 2 to 3 eV from about 20 eV:
+    Feuerbacher & Fitton (1972), J. Appl. Phys. 43, 1563; Grard (1973), J. Geophys. Res.
+    78, 2885 (memory). Retarding curves of the two geometries: Grard (1973).
 
     Examples
     --------
-    >>> escape_fraction([-1.0, 0.0, 2.0], [9.0], [1.0], 5.0).tolist()
-    [1.0, 1.0, 0.0625]
-    >>> float(escape_fraction(2.0, [9.0], [1.0], 5.0, geometry="point source"))
-    0.3125
+    >>> escape_fraction([-1.0, 0.0, 2.0, 4.0], [9.0], [1.0], 5.0).round(4).tolist()
+    [1.0, 1.0, 0.0605, 0.0]
     """
-    v, energy, weight, share, t = _escape_arguments(
-        potential_V,
-        photon_energy_eV,
-        emitted_weight,
-        threshold_eV,
-        low_energy_share,
-        low_energy_temperature_eV,
+    bins = _checked(potential_V, photon_energy_eV, emitted_weight, threshold_eV, peak)
+    planar = is_planar(geometry)
+    # beyond W a bin gives nothing: most of the work on a wide grid of potentials is left out
+    active = bins.held < bins.excess
+    held = bins.held[active]
+    excess, weight, share = (
+        np.broadcast_to(row, active.shape)[active]
+        for row in (bins.excess, bins.weight, bins.collided)
     )
-    held = np.maximum(v, 0.0)[..., np.newaxis]
-    rest = np.clip(1.0 - held / energy, 0.0, None)
-    if _is_planar(geometry):
-        primary, peak = rest**4, np.exp(-held / t)
-    else:
-        primary = rest**3 * (1.0 + 3.0 * (1.0 - rest))
-        peak = (1.0 + held / t) * np.exp(-held / t)
-    return np.asarray((weight * (primary + share * (peak - primary))).sum(-1))
+    direct = direct_escape(held / excess, planar)
+    collided = peak_escape(held, excess, bins.peak, planar)
+    escaping = np.zeros(active.shape)
+    escaping[active] = weight * (direct + share * (collided - direct))
+    return np.asarray(np.where(bins.potential_V > 0.0, escaping.sum(-1), 1.0))
 
 
 def escape_slope(
@@ -161,16 +175,13 @@ def escape_slope(
     threshold_eV: float,
     *,
     geometry: EscapeGeometry = "planar",
-    low_energy_share: ArrayLike | None = None,
-    low_energy_temperature_eV: float = LOW_ENERGY_TEMPERATURE_EV,
+    peak: LowEnergyPeak | None = None,
 ) -> NDArray[np.float64]:
     """Derivative of `escape_fraction` with respect to the potential.
 
     Parameters
     ----------
-    potential_V, photon_energy_eV, emitted_weight, threshold_eV
-        As in `escape_fraction`.
-    geometry, low_energy_share, low_energy_temperature_eV
+    potential_V, photon_energy_eV, emitted_weight, threshold_eV, geometry, peak
         As in `escape_fraction`.
 
     Returns
@@ -186,27 +197,17 @@ def escape_slope(
 
     Examples
     --------
-    >>> float(escape_slope(2.0, [9.0], [1.0], 5.0))  # -4 (1 - v)^3/W
-    -0.125
+    >>> bool(escape_slope(2.0, [9.0], [1.0], 5.0) < 0.0)
+    True
     """
-    v, energy, weight, share, t = _escape_arguments(
-        potential_V,
-        photon_energy_eV,
-        emitted_weight,
-        threshold_eV,
-        low_energy_share,
-        low_energy_temperature_eV,
-    )
-    held = np.maximum(v, 0.0)[..., np.newaxis]
-    rest = np.clip(1.0 - held / energy, 0.0, None)
-    if _is_planar(geometry):
-        primary, peak = -4.0 * rest**3 / energy, -np.exp(-held / t) / t
-    else:
-        # d/dv (1-v)^3 (1+3v) = -12 v (1-v)^2
-        primary = -12.0 * (1.0 - rest) * rest**2 / energy
-        peak = -(held / t**2) * np.exp(-held / t)
-    slope = (weight * (primary + share * (peak - primary))).sum(-1)
-    return np.asarray(np.where(v > 0.0, slope, 0.0))
+    bins = _checked(potential_V, photon_energy_eV, emitted_weight, threshold_eV, peak)
+    planar = is_planar(geometry)
+    direct = direct_escape_slope(bins.held / bins.excess, planar) / bins.excess
+    collided = peak_escape_slope(bins.held, bins.excess, bins.peak, planar)
+    slope = bins.weight * (direct + bins.collided * (collided - direct))
+    # a bin whose W lies below V has stopped
+    total = np.where(bins.held < bins.excess, slope, 0.0).sum(-1)
+    return np.asarray(np.where(bins.potential_V > 0.0, total, 0.0))
 
 
 def mean_photoelectron_energy(
@@ -214,24 +215,20 @@ def mean_photoelectron_energy(
     emitted_weight: ArrayLike,
     threshold_eV: float,
     *,
-    low_energy_share: ArrayLike | None = None,
-    low_energy_temperature_eV: float = LOW_ENERGY_TEMPERATURE_EV,
+    peak: LowEnergyPeak | None = None,
 ) -> float:
     """Mean kinetic energy of the emitted photoelectrons.
 
-    A photon gives 0.4 W on average, the low-energy peak 2 T.
-
     Parameters
     ----------
-    photon_energy_eV, emitted_weight, threshold_eV
-        As in `escape_fraction`.
-    low_energy_share, low_energy_temperature_eV
+    photon_energy_eV, emitted_weight, threshold_eV, peak
         As in `escape_fraction`.
 
     Returns
     -------
     float
-        Mean energy [eV].
+        Mean energy [eV]: the area under the point-source curve, half of it under the
+        planar one.
 
     Raises
     ------
@@ -240,26 +237,21 @@ def mean_photoelectron_energy(
 
     Notes
     -----
-    Under the whole solar spectrum the shape used here gives 2.4 to 4 eV for
-    metals and carbons. Published means are lower: 1.0 to 2.5 eV (Feuerbacher
-    & Fitton 1972; Grard 1973; Whipple 1981; memory) and 2.1 +- 0.5 eV in orbit
-    (Nakagawa et al. 2000, Earth Planets Space 52, 283, abstract). The excess
-    comes from photons above 12 eV; positive potentials may come out high.
+    Published "mean energies" of 1.0 to 2.5 eV (Feuerbacher & Fitton 1972; Grard 1973;
+    Whipple 1981; memory) and 2.1 +- 0.5 eV in orbit (Nakagawa et al. 2000, Earth Planets
+    Space 52, 283, abstract) are lower than ours by up to two. Where they stand for the V_0
+    of a retarding curve :math:`e^{-V/V_0}` they agree: seen as planar escape, that curve has
+    the mean energy 2 V_0.
 
     Examples
     --------
-    >>> round(mean_photoelectron_energy([10.2], [1.0], 5.2), 6)
-    2.0
+    >>> round(mean_photoelectron_energy([10.2], [1.0], 5.2), 2)
+    1.96
     """
-    _, energy, weight, share, t = _escape_arguments(
-        0.0,
-        photon_energy_eV,
-        emitted_weight,
-        threshold_eV,
-        low_energy_share,
-        low_energy_temperature_eV,
-    )
-    return float((weight * ((1.0 - share) * 0.4 * energy + share * 2.0 * t)).sum(-1))
+    bins = _checked(0.0, photon_energy_eV, emitted_weight, threshold_eV, peak)
+    collided = peak_mean(bins.excess, bins.peak)
+    direct = DIRECT_MEAN * bins.excess
+    return float((bins.weight * (direct + bins.collided * (collided - direct))).sum(-1))
 
 
 def potential_at_escape(
@@ -269,8 +261,7 @@ def potential_at_escape(
     threshold_eV: float,
     *,
     geometry: EscapeGeometry = "planar",
-    low_energy_share: ArrayLike | None = None,
-    low_energy_temperature_eV: float = LOW_ENERGY_TEMPERATURE_EV,
+    peak: LowEnergyPeak | None = None,
 ) -> float:
     """Potential at which a given share of the photoelectrons still escapes.
 
@@ -278,9 +269,7 @@ def potential_at_escape(
     ----------
     fraction : float
         Share, above 0 and below 1, for instance 0.01.
-    photon_energy_eV, emitted_weight, threshold_eV
-        As in `escape_fraction`.
-    geometry, low_energy_share, low_energy_temperature_eV
+    photon_energy_eV, emitted_weight, threshold_eV, geometry, peak
         As in `escape_fraction`.
 
     Returns
@@ -295,59 +284,54 @@ def potential_at_escape(
 
     Examples
     --------
-    >>> round(potential_at_escape(0.0625, [9.0], [1.0], 5.0), 6)
-    2.0
+    >>> v = potential_at_escape(0.1, [9.0], [1.0], 5.0)
+    >>> round(float(escape_fraction(v, [9.0], [1.0], 5.0)), 6)
+    0.1
     """
     if not 0.0 < fraction < 1.0:
         raise ValueError("fraction must be above 0 and below 1")
 
     def excess(v: float) -> float:
         share = escape_fraction(
-            v,
-            photon_energy_eV,
-            emitted_weight,
-            threshold_eV,
-            geometry=geometry,
-            low_energy_share=low_energy_share,
-            low_energy_temperature_eV=low_energy_temperature_eV,
+            v, photon_energy_eV, emitted_weight, threshold_eV, geometry=geometry, peak=peak
         )
         return float(share) - fraction
 
     high = 1.0
-    while excess(high) > 0.0:  # ends: the curve falls to 0
+    while excess(high) > 0.0:  # ends: nothing escapes above the largest W
         high *= 2.0
     return float(brentq(excess, 0.0, high, xtol=1e-9, rtol=1e-13))
 
 
-def _is_planar(geometry: str) -> bool:
-    if geometry not in GEOMETRIES:
-        raise ValueError(f"geometry {geometry!r} is unknown; allowed: {', '.join(GEOMETRIES)}")
-    return geometry == "planar"
+class _Checked(NamedTuple):
+    """Checked arguments of an escape: the bins that emit, weights summing to 1.
+
+    `held` is the potential [..., bin] kept within 0 and the excess of the bin.
+    """
+
+    potential_V: NDArray[np.float64]
+    held: NDArray[np.float64]
+    excess: NDArray[np.float64]
+    weight: NDArray[np.float64]
+    collided: NDArray[np.float64]
+    peak: LowEnergyPeak
 
 
-def _escape_arguments(
+def _checked(
     potential_V: ArrayLike,
     photon_energy_eV: ArrayLike,
     emitted_weight: ArrayLike,
     threshold_eV: float,
-    low_energy_share: ArrayLike | None,
-    low_energy_temperature_eV: float,
-) -> tuple[
-    NDArray[np.float64], NDArray[np.float64], NDArray[np.float64], NDArray[np.float64], float
-]:
-    """Check the arguments; keep the bins that emit, weights summing to 1."""
+    peak: LowEnergyPeak | None,
+) -> _Checked:
     v = finite_array("potential_V", potential_V)
     photon = finite_array("photon_energy_eV", photon_energy_eV, at_least=0.0)
     weight = finite_array("emitted_weight", emitted_weight, at_least=0.0)
-    share = (
-        default_low_energy_share(photon)
-        if low_energy_share is None
-        else np.asarray(low_energy_share, np.float64)
-    )
-    share = finite_array("low_energy_share", share, at_least=0.0, at_most=1.0)
-    photon, weight, share = np.broadcast_arrays(photon, weight, share)
-    threshold = finite_array("threshold_eV", threshold_eV, at_least=0.0)
-    t = finite_array("low_energy_temperature_eV", low_energy_temperature_eV, above=0.0)
+    photon, weight = np.broadcast_arrays(photon, weight)
+    threshold = float(finite_array("threshold_eV", threshold_eV, above=0.0))
+    if peak is None:
+        peak = LowEnergyPeak("chung_everhart_1974", threshold)
+    finite_array("peak.scale_eV", peak.scale_eV, above=0.0)
     if photon.ndim != 1:
         raise ValueError("photon_energy_eV and emitted_weight must have one axis, the bins")
     used = weight > 0.0
@@ -356,5 +340,6 @@ def _escape_arguments(
     excess = photon[used] - threshold
     if np.any(excess <= 0.0):
         raise ValueError("emitted_weight must be 0 up to the threshold")
-    total = weight[used].sum()
-    return v, excess, np.asarray(weight[used] / total), share[used], float(t)
+    share = collided_share(photon[used], threshold)
+    held = np.minimum(np.maximum(v, 0.0)[..., np.newaxis], excess)
+    return _Checked(v, held, excess, weight[used] / weight[used].sum(), share, peak)

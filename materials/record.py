@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, field, fields
 from types import MappingProxyType
 from typing import NamedTuple
 
@@ -27,7 +27,13 @@ PHOTOYIELD_LEVELS = (
     "set from the published saturation current",
     "estimated, not normalised",
     "carried over by analogy",
+    "largest of laboratory curves",
+    "normalised to a measured current",
 )
+PHOTOYIELD_LAWS = ("table", "fowler_dubridge", "power")
+ABOVE_LAST_POINT = ("hold", "x-ray absorption")
+YIELD_COUNTS = ("incident photons", "absorbed photons")
+SURFACE_STATES = ("clean", "air_exposed", "aged")
 NAME_PATTERN = re.compile(r"[A-Za-z0-9]([A-Za-z0-9 ,()._+-]{0,62}[A-Za-z0-9)+])?")
 
 
@@ -69,6 +75,12 @@ PROPERTIES: Mapping[str, Property] = MappingProxyType(
         "backscatter_drop_energy_eV": Property(
             "eV", 100.0, 50000.0, "electron energy scale of that drop"
         ),
+        "coating_thickness_m": Property(
+            "m", 1e-9, 1e-4, "thickness of a thin coating; backscatter comes from below it too"
+        ),
+        "substrate_atomic_number": Property(
+            "1", 4.0, 100.0, "mean atomic number of what lies under a thin coating"
+        ),
         "ion_yield_peak": Property(
             "1", 0.0, 20.0, "largest proton-induced yield, normal incidence"
         ),
@@ -100,7 +112,22 @@ EMISSION_OPTIONAL = (
     "secondary_energy_eV",
     "backscatter_low_energy_drop",
     "backscatter_drop_energy_eV",
+    "coating_thickness_m",
+    "substrate_atomic_number",
 )
+
+EMISSION_LAWS = MappingProxyType(
+    {
+        "secondary_law": (
+            "sanders_inouye_1979",
+            "lin_joy_2005",
+            "sternglass_1954",
+            "draine_salpeter_1979",
+        ),
+        "backscatter_law": ("prokopenko_laframboise_1980", "hunger_kuchler_1979"),
+    }
+)
+"""Laws that a record may choose, by key; without a choice the first of each holds."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -133,9 +160,23 @@ class Value:
     note: str = ""
 
 
+@dataclass(frozen=True, slots=True)
+class Samples:
+    """A tabulated quantity against photon energy, with its source.
+
+    `values` are mass absorption coefficients [m2 kg-1] or reflectances [1], as the place
+    that holds them says; log-log or linear between points accordingly, held outside.
+    """
+
+    photon_energy_eV: tuple[float, ...]
+    values: tuple[float, ...]
+    source: str
+    basis: str
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class PhotoYield:
-    """Electrons per incident photon against photon energy.
+    """Electrons per photon against photon energy.
 
     The first point is the threshold, where the yield is 0. `level` says how
     the absolute scale was found: a curve whose level was "set from the
@@ -143,6 +184,15 @@ class PhotoYield:
     The yield is uncertain by `spread_factor` either way, by
     `near_threshold_factor` below `near_threshold_to_eV` and by
     `high_energy_factor` above `high_energy_from_eV`.
+
+    `law` is "table" (log-log between the points), "fowler_dubridge" or "power"; with
+    the last two the points are samples of the law, for pictures, and the law itself is
+    evaluated: `electrons_per_photon_at_1_eV` is the yield 1 eV above the threshold at
+    0 K, `exponent` that of the power law, `temperature_K` that of the metal.
+    `above_last_point` says what holds beyond the last point: its value ("hold") or
+    energy times `x_ray` absorption. Yields that count absorbed photons are multiplied
+    by 1 - `reflectance`. `largest_angle_growth` caps the growth of the yield at
+    oblique incidence, 1: none.
     """
 
     photon_energy_eV: NDArray[np.float64]
@@ -156,6 +206,15 @@ class PhotoYield:
     high_energy_factor: float
     high_energy_from_eV: float
     note: str = ""
+    law: str = "table"
+    electrons_per_photon_at_1_eV: float = 0.0
+    exponent: float = 2.0
+    temperature_K: float = 0.0
+    above_last_point: str = "hold"
+    x_ray: Samples | None = None
+    counts: str = "incident photons"
+    reflectance: Samples | None = None
+    largest_angle_growth: float = 1.0
 
     def __post_init__(self) -> None:
         for name in ("photon_energy_eV", "electrons_per_photon"):
@@ -164,7 +223,7 @@ class PhotoYield:
             object.__setattr__(self, name, array)
 
     def __reduce__(self) -> tuple[type[PhotoYield], tuple[object, ...]]:
-        return PhotoYield, tuple(getattr(self, field.name) for field in fields(self))
+        return PhotoYield, tuple(getattr(self, entry.name) for entry in fields(self))
 
     @property
     def threshold_eV(self) -> float:
@@ -182,12 +241,30 @@ class PhotoYield:
         )
 
 
+@dataclass(frozen=True, slots=True)
+class SurfaceState:
+    """A state of a surface other than the recorded one.
+
+    Either the curve of another material (`curve_of`, a library name) or the own curve
+    with its threshold moved by `barrier_shift_eV`, negative when an oxide or an adsorbed
+    layer lowers the barrier.
+    """
+
+    source: str
+    basis: str
+    curve_of: str | None = None
+    barrier_shift_eV: float | None = None
+    note: str = ""
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Material:
     """What a surface is made of.
 
     `emits` is False for a body that takes up every particle and gives
     nothing back; it then has no emission records and no `photoyield`.
+    `surface_states` holds other states by name, see `materials.surface_state`; `laws` the
+    chosen emission laws, by the keys of `EMISSION_LAWS`.
     """
 
     name: str
@@ -196,13 +273,17 @@ class Material:
     emits: bool
     values: Mapping[str, Value]
     photoyield: PhotoYield | None
+    surface_states: Mapping[str, SurfaceState] = field(default_factory=dict)
+    laws: Mapping[str, str] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        object.__setattr__(self, "values", MappingProxyType(dict(self.values)))
+        for name in ("values", "surface_states", "laws"):
+            object.__setattr__(self, name, MappingProxyType(dict(getattr(self, name))))
 
     def __reduce__(self) -> tuple[type[Material], tuple[object, ...]]:
         state = (self.name, self.kind, self.description, self.emits)
-        return Material, (*state, dict(self.values), self.photoyield)
+        states, laws = dict(self.surface_states), dict(self.laws)
+        return Material, (*state, dict(self.values), self.photoyield, states, laws)
 
     def value(self, key: str) -> float:
         """Return one property in the unit of its key.

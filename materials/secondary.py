@@ -8,51 +8,43 @@ uncertainty of a charging threshold: run one exponential and one power law.
 
 from __future__ import annotations
 
-from functools import cache
-from typing import Literal
+from collections.abc import Callable
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.optimize import brentq
 
 from materials.angle import exponential_angle_factor, secondary_angle_coefficient
 from materials.backscatter import prokopenko_laframboise_1980
 from materials.errors import finite_array
+from materials.maxwellian_yield import maxwellian_isotropic_yield, maxwellian_yield
 from materials.record import Material
 from materials.secondary_escape import secondary_escape_fraction, secondary_escape_slope
+from materials.yield_laws import (
+    LAW_FACTS,
+    NORMAL_SHAPES,
+    YIELD_LAWS,
+    YieldLaw,
+    fitted_range_eV,
+    lin_joy_isotropic_shape,
+)
 
 __all__ = [
+    "LAW_FACTS",
     "YIELD_LAWS",
     "YieldLaw",
+    "draine_salpeter_1979",
+    "fitted_range_eV",
     "isotropic_yield",
     "lin_joy_2005",
     "maxwellian_isotropic_yield",
     "maxwellian_yield",
+    "normal_yield",
     "sanders_inouye_1979",
     "secondary_escape_fraction",
     "secondary_escape_slope",
+    "sternglass_1954",
     "true_secondary_peak",
 ]
-
-YieldLaw = Literal["sanders_inouye_1979", "lin_joy_2005"]
-YIELD_LAWS: tuple[YieldLaw, ...] = ("sanders_inouye_1979", "lin_joy_2005")
-
-# Sanders & Inouye 1979 in x = E/E_max: slow and fast decay lengths.
-_SLOW, _FAST = 4.3, 0.367
-_RANGE_EXPONENT = 1.67  # Lin & Joy 2005
-
-
-@cache
-def _sanders_inouye_peak() -> tuple[float, float]:
-    """Place (in E_max) and height of the maximum of the printed form."""
-    x = float(np.log(_SLOW / _FAST) / (1.0 / _FAST - 1.0 / _SLOW))
-    return x, float(np.exp(-x / _SLOW) - np.exp(-x / _FAST))
-
-
-@cache
-def _constant_loss_r(n: float) -> float:
-    """Root r > 0 of (1 - 1/n)(e^r - 1) = r: the maximum lies at x = 1."""
-    return float(brentq(lambda r: (1.0 - 1.0 / n) * np.expm1(r) - r, 1e-3, 20.0, xtol=1e-15))
 
 
 def sanders_inouye_1979(
@@ -96,14 +88,7 @@ def sanders_inouye_1979(
     [2.5, 0.346]
     """
     x, peak = _checked(energy_eV, peak_yield, peak_energy_eV)
-    return np.asarray(peak * _sanders_inouye(x))
-
-
-def _sanders_inouye(x: NDArray[np.float64]) -> NDArray[np.float64]:
-    place, height = _sanders_inouye_peak()
-    y = x * place
-    # exp(-y/a) - exp(-y/b) without cancellation at small y
-    return np.asarray(-np.exp(-y / _SLOW) * np.expm1(-y * (1.0 / _FAST - 1.0 / _SLOW)) / height)
+    return np.asarray(peak * NORMAL_SHAPES["sanders_inouye_1979"](x))
 
 
 def lin_joy_2005(
@@ -148,14 +133,75 @@ def lin_joy_2005(
     [2.5, 0.667]
     """
     x, peak = _checked(energy_eV, peak_yield, peak_energy_eV)
-    return np.asarray(peak * _lin_joy(x))
+    return np.asarray(peak * NORMAL_SHAPES["lin_joy_2005"](x))
 
 
-def _lin_joy(x: NDArray[np.float64]) -> NDArray[np.float64]:
-    r = _constant_loss_r(_RANGE_EXPONENT)
-    safe = np.where(x > 0.0, x, 1.0)
-    shape = -np.expm1(-r * safe**_RANGE_EXPONENT) * safe ** (1.0 - _RANGE_EXPONENT)
-    return np.asarray(np.where(x > 0.0, shape, 0.0) / -np.expm1(-r))
+def sternglass_1954(
+    energy_eV: ArrayLike, *, peak_yield: ArrayLike, peak_energy_eV: ArrayLike
+) -> NDArray[np.float64]:
+    r"""Secondary yield at normal incidence, :math:`\delta_m\,x\,e^{2 - 2\sqrt x}`.
+
+    Arguments, result and errors as `sanders_inouye_1979`. (As printed, with 7.4 for
+    :math:`e^2`, the maximum is 1.0015 times the stated one.)
+
+    References
+    ----------
+    Sternglass (1954), Westinghouse Research Laboratories, Scientific Paper 1772 (memory).
+
+    Examples
+    --------
+    >>> sternglass_1954([300.0, 3000.0], peak_yield=2.5, peak_energy_eV=300.0).round(3).tolist()
+    [2.5, 0.331]
+    """
+    return normal_yield(
+        energy_eV, law="sternglass_1954", peak_yield=peak_yield, peak_energy_eV=peak_energy_eV
+    )
+
+
+def draine_salpeter_1979(
+    energy_eV: ArrayLike, *, peak_yield: ArrayLike, peak_energy_eV: ArrayLike
+) -> NDArray[np.float64]:
+    r"""Secondary yield at normal incidence, tail E^-2.
+
+    :math:`\tfrac{27}{4}\delta_m\,y/(1+y)^3`, y = E/2E_max, so that the maximum is
+    `peak_yield` at `peak_energy_eV`. (As printed, 8x/(1+x)^3, it peaks at E_max/2 with
+    1.185 times the stated maximum.) Arguments, result and errors as `sanders_inouye_1979`.
+
+    References
+    ----------
+    Draine & Salpeter (1979), Astrophys. J. 231, 77 (memory).
+
+    Examples
+    --------
+    >>> found = draine_salpeter_1979([300.0, 3000.0], peak_yield=2.5, peak_energy_eV=300.0)
+    >>> found.round(3).tolist()
+    [2.5, 0.391]
+    """
+    return normal_yield(
+        energy_eV, law="draine_salpeter_1979", peak_yield=peak_yield, peak_energy_eV=peak_energy_eV
+    )
+
+
+def normal_yield(
+    energy_eV: ArrayLike, *, law: YieldLaw, peak_yield: ArrayLike, peak_energy_eV: ArrayLike
+) -> NDArray[np.float64]:
+    """Secondary yield at normal incidence by any law of `YIELD_LAWS`.
+
+    Arguments, result and errors as `sanders_inouye_1979`.
+
+    Examples
+    --------
+    >>> float(normal_yield(300.0, law="lin_joy_2005", peak_yield=2.5, peak_energy_eV=300.0))
+    2.5
+    """
+    x, peak = _checked(energy_eV, peak_yield, peak_energy_eV)
+    return np.asarray(peak * _shape(law)(x))
+
+
+def _shape(law: YieldLaw) -> Callable[[NDArray[np.float64]], NDArray[np.float64]]:
+    if law not in NORMAL_SHAPES:
+        raise ValueError(f"law {law!r} is unknown; allowed: {', '.join(YIELD_LAWS)}")
+    return NORMAL_SHAPES[law]
 
 
 def isotropic_yield(
@@ -176,12 +222,12 @@ def isotropic_yield(
     ----------
     energy_eV : array_like
         Electron energy at the surface [eV], >= 0.
-    law : {"sanders_inouye_1979", "lin_joy_2005"}, optional
-        The normal-incidence law and its angle form.
+    law : str, optional
+        One of `YIELD_LAWS`: the normal-incidence law and its angle form.
     peak_yield, peak_energy_eV : array_like
         Maximum yield of true secondaries at normal incidence; its energy [eV].
     mean_atomic_number : array_like
-        Mean Z, 4 to 100; used by "sanders_inouye_1979".
+        Mean Z, 4 to 100; used by every law but "lin_joy_2005".
 
     Returns
     -------
@@ -195,7 +241,8 @@ def isotropic_yield(
 
     Notes
     -----
-    "sanders_inouye_1979": :math:`\delta(E,\theta) = \delta(E,0)\,\{1 +
+    Three of the laws come without an angle form and share one here:
+    :math:`\delta(E,\theta) = \delta(E,0)\,\{1 +
     (e^{b(1-\mu)} - 1)\,g\}`, b from `secondary_angle_coefficient`. g = (1 - exp(-E/E_max))^2
     is our onset of the angle effect (assumed): Bruining (1954, memory) found
     none below about E_max/2. "lin_joy_2005": the constant-loss model with the
@@ -207,121 +254,16 @@ def isotropic_yield(
     --------
     >>> material = {"peak_yield": 2.5, "peak_energy_eV": 300.0, "mean_atomic_number": 10.6}
     >>> [round(float(isotropic_yield(3e3, law=law, **material)), 3) for law in YIELD_LAWS]
-    [0.487, 1.317]
+    [0.487, 1.317, 0.466, 0.55]
     """
     x, peak = _checked(energy_eV, peak_yield, peak_energy_eV)
     z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
-    if law == "sanders_inouye_1979":
-        growth = exponential_angle_factor(secondary_angle_coefficient(z)) - 1.0
-        onset = np.expm1(-x) ** 2
-        return np.asarray(peak * _sanders_inouye(x) * (1.0 + growth * onset))
+    shape = _shape(law)
     if law == "lin_joy_2005":
-        return np.asarray(peak * _lin_joy_isotropic(x) + 0.0 * z)
-    raise ValueError(f"law {law!r} is unknown; allowed: {', '.join(YIELD_LAWS)}")
-
-
-def _lin_joy_isotropic(x: NDArray[np.float64]) -> NDArray[np.float64]:
-    r = _constant_loss_r(_RANGE_EXPONENT)
-    safe = np.where(x > 0.0, x, 1.0)
-    z = r * safe**_RANGE_EXPONENT
-    small = z < 0.1
-    large_z = np.where(small, 1.0, z)
-    closed = 1.0 + np.expm1(-large_z) / large_z
-    # 1 - (1 - e^-z)/z = sum_k (-1)^(k+1) z^k/(k+1)!, exact to rounding below 0.1
-    series = np.zeros_like(z)
-    for k in range(9, 0, -1):
-        series = (1.0 - series) * z / (k + 1.0)
-    shape = 2.0 * safe ** (1.0 - _RANGE_EXPONENT) * np.where(small, series, closed)
-    return np.asarray(np.where(x > 0.0, shape, 0.0) / -np.expm1(-r))
-
-
-def maxwellian_yield(
-    temperature_eV: ArrayLike, *, peak_yield: ArrayLike, peak_energy_eV: ArrayLike
-) -> NDArray[np.float64]:
-    r"""`sanders_inouye_1979` averaged over a Maxwellian flux, normal incidence.
-
-    Weight :math:`E\,e^{-E/T}/T^2`, and :math:`\langle e^{-E/a}\rangle =
-    (1 + T/a)^{-2}`. A repelling potential leaves the weight as it is.
-
-    Parameters
-    ----------
-    temperature_eV : array_like
-        Electron temperature [eV], > 0.
-    peak_yield, peak_energy_eV : array_like
-        Maximum yield of true secondaries; its energy [eV], > 0.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
-
-    Examples
-    --------
-    >>> round(float(maxwellian_yield(1e3, peak_yield=2.5, peak_energy_eV=300.0)), 3)
-    1.069
-    """
-    t, peak, a, b, height = _maxwellian_arguments(temperature_eV, peak_yield, peak_energy_eV)
-    return np.asarray(peak / height * (_mean_exp(t / a) - _mean_exp(t / b)))
-
-
-def maxwellian_isotropic_yield(
-    temperature_eV: ArrayLike,
-    *,
-    peak_yield: ArrayLike,
-    peak_energy_eV: ArrayLike,
-    mean_atomic_number: ArrayLike,
-) -> NDArray[np.float64]:
-    r"""`isotropic_yield` of "sanders_inouye_1979" averaged over a Maxwellian flux.
-
-    Closed form: yield and onset are sums of exponentials.
-
-    Parameters
-    ----------
-    temperature_eV : array_like
-        Electron temperature [eV], > 0.
-    peak_yield, peak_energy_eV, mean_atomic_number : array_like
-        As in `isotropic_yield`.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
-
-    Examples
-    --------
-    >>> round(float(maxwellian_isotropic_yield(
-    ...     1e3, peak_yield=2.5, peak_energy_eV=300.0, mean_atomic_number=10.6)), 3)
-    1.428
-    """
-    t, peak, a, b, height = _maxwellian_arguments(temperature_eV, peak_yield, peak_energy_eV)
-    z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
+        return np.asarray(peak * lin_joy_isotropic_shape(x) + 0.0 * z)
     growth = exponential_angle_factor(secondary_angle_coefficient(z)) - 1.0
-    e_max = np.asarray(peak_energy_eV, dtype=np.float64)
-    total = np.zeros(np.broadcast_shapes(t.shape, e_max.shape))
-    grown = total.copy()
-    # onset (1 - e^-x)^2 = 1 - 2 e^-x + e^-2x
-    for order, weight in ((0, 1.0), (1, -2.0), (2, 1.0)):
-        extra = order * t / e_max
-        pair = _mean_exp(t / a + extra) - _mean_exp(t / b + extra)
-        grown = grown + weight * pair
-        if order == 0:
-            total = total + pair
-    return np.asarray(peak / height * (total + growth * grown))
-
-
-def _mean_exp(ratio: NDArray[np.float64]) -> NDArray[np.float64]:
-    """<exp(-E k)> over E exp(-E/T)/T^2 with ratio = k T."""
-    return np.asarray((1.0 + ratio) ** -2.0)
+    onset = np.expm1(-x) ** 2
+    return np.asarray(peak * shape(x) * (1.0 + growth * onset))
 
 
 def true_secondary_peak(material: Material) -> float:
@@ -374,15 +316,3 @@ def _checked(
     energy = finite_array("energy_eV", energy_eV, at_least=0.0)
     peak = finite_array("peak_yield", peak_yield, at_least=0.0)
     return energy / finite_array("peak_energy_eV", peak_energy_eV, above=0.0), peak
-
-
-def _maxwellian_arguments(
-    temperature_eV: ArrayLike, peak_yield: ArrayLike, peak_energy_eV: ArrayLike
-) -> tuple[
-    NDArray[np.float64], NDArray[np.float64], NDArray[np.float64], NDArray[np.float64], float
-]:
-    t = finite_array("temperature_eV", temperature_eV, above=0.0)
-    peak = finite_array("peak_yield", peak_yield, at_least=0.0)
-    e_max = finite_array("peak_energy_eV", peak_energy_eV, above=0.0)
-    place, height = _sanders_inouye_peak()
-    return t, peak, np.asarray(_SLOW * e_max / place), np.asarray(_FAST * e_max / place), height

@@ -43,6 +43,15 @@ def point_document(found: PointResult) -> dict[str, object]:
             "weight": found.sheath.weight,
             "collection": found.sheath.collection,
         },
+        "photoelectron_sheath": None
+        if found.photoelectrons is None
+        else {
+            "debye_length_m": found.photoelectrons.debye_length_m,
+            "density_m3": found.photoelectrons.density_m3,
+            "mean_energy_eV": found.photoelectrons.mean_energy_eV,
+            "point_source_share": found.photoelectrons.point_source_share,
+            "photo_escape": found.photoelectrons.photo_escape,
+        },
         "other_laws_reached_V": dict(found.other_laws_reached_V),
         "notes": list(found.notes),
     }
@@ -82,6 +91,13 @@ def print_point(found: PointResult) -> None:
         f"{sheath.length_m:.4g} m; collection {sheath.collection}: "
         f"thick-sheath share {sheath.weight:.3f} (0 plane, 1 sphere or cylinder)"
     )
+    photo = found.photoelectrons
+    if photo is not None:
+        print(
+            f"photoelectrons: mean energy {photo.mean_energy_eV:.3g} eV, Debye length "
+            f"{photo.debye_length_m:.3g} m; escape {photo.photo_escape}: point-source share "
+            f"{photo.point_source_share:.3f} (0 plane)"
+        )
     for law, volts in found.other_laws_reached_V.items():
         what = "no floating potential" if volts is None else f"{_fine_volts(volts)} V"
         print(f"the other law, {law}, gives {what}: far above the peak energy neither is certain")

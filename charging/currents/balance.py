@@ -80,16 +80,21 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
 
     grid = np.sinh(np.linspace(-1.0, 1.0, SCAN_POINTS) * np.arcsinh(SEARCH_V))
     values, _ = net_current(model, grid, light)
-    found = [float(v) for v in grid[values == 0.0]]
+    # a zero between zeros is an exponential that underflowed (no ions), not a balance
+    hit = (values[1:-1] == 0.0) & (values[:-2] != 0.0) & (values[2:] != 0.0)
+    found = [float(v) for v in grid[1:-1][hit]]
     crossings = np.flatnonzero(values[:-1] * values[1:] < 0.0)
     found += [_root(current, grid[k], grid[k + 1]) for k in crossings]
     size = np.abs(values)
-    dips = 1 + np.flatnonzero(
-        (size[1:-1] <= size[:-2])
-        & (size[1:-1] <= size[2:])
-        & ((size[1:-1] < size[:-2]) | (size[1:-1] < size[2:]))  # a plateau has no dip
-        & (values[:-2] * values[1:-1] > 0.0)
-        & (values[1:-1] * values[2:] > 0.0)
+    dips = (
+        1
+        + np.flatnonzero(
+            (size[1:-1] <= size[:-2])
+            & (size[1:-1] <= size[2:])
+            & ((size[1:-1] < size[:-2]) | (size[1:-1] < size[2:]))  # a plateau has no dip
+            & (values[:-2] * values[1:-1] > 0.0)
+            & (values[1:-1] * values[2:] > 0.0)
+        )
     )
     for k in dips:
         found += _close_pair(current, grid[k - 1], grid[k + 1], np.sign(values[k]))

@@ -11,20 +11,32 @@ import numpy as np
 from numpy.typing import NDArray
 
 from charging.currents.collection import PLANE, Geometry
+from charging.currents.photo_escape import photo_escape
+from charging.currents.splines import segmented_knots
 from charging.currents.tables import Yield, YieldTable, average_yields, knot_scale, knots
 from environments.spectrum import SolarSpectrum
-from materials.backscatter import isotropic_backscatter
+from materials.backscatter import (
+    isotropic_backscatter,
+    isotropic_by_atomic_number,
+    substrate_share,
+)
 from materials.ion_impact import whipple_1981
-from materials.photoemission import escape_fraction
 from materials.photoyield import emission_spectrum, photo_current_density
 from materials.record import Material
-from materials.secondary import YieldLaw, isotropic_yield, true_secondary_peak
+from materials.secondary import (
+    LAW_FACTS,
+    YIELD_LAWS,
+    YieldLaw,
+    isotropic_yield,
+    true_secondary_peak,
+)
 from materials.secondary_escape import secondary_escape_fraction
 
 Array = NDArray[np.float64]
 
 SECONDARY_LAWS: tuple[YieldLaw, YieldLaw] = ("sanders_inouye_1979", "lin_joy_2005")
 """The exponential and the E^-0.67 law that a verdict compares; the first is the default."""
+
 
 @dataclass(frozen=True, slots=True)
 class Emitter:
@@ -43,36 +55,39 @@ def _nothing(energy_eV: Array) -> Array:
     return np.zeros_like(energy_eV)
 
 
-def emitter(material: Material, law: YieldLaw) -> Emitter:
-    """Collect the yields of a material: isotropic for electrons, normal for ions.
+def law_of(material: Material, asked: YieldLaw) -> YieldLaw:
+    """Return the law that stands for the one asked, where the record chooses its own.
 
-    Parameters
-    ----------
-    material : Material
-    law : str
-        One of `SECONDARY_LAWS`.
+    A verdict runs an exponential law and one with a tail E^-0.67. The law of a record takes
+    the place of the one with the slow tail if it has such a tail itself, else of the other;
+    a law asked for that is none of these two holds for every material.
+
+    Examples
+    --------
+    >>> from materials import load_material
+    >>> law_of(load_material("gold"), "lin_joy_2005")
+    'lin_joy_2005'
     """
-    if not material.emits:
-        return Emitter("nothing", _nothing, _nothing, _nothing)
-    peak = true_secondary_peak(material)
-    peak_energy = material.value("secondary_yield_peak_energy_eV")
+    own = material.laws.get("secondary_law")
+    if own is None or asked not in SECONDARY_LAWS:
+        return asked
+    known = next(law for law in YIELD_LAWS if law == own)
+    slow = LAW_FACTS["lin_joy_2005"].tail
+    same_kind = (LAW_FACTS[known].tail == slow) == (LAW_FACTS[asked].tail == slow)
+    return known if same_kind else asked
+
+
+def backscatter_yield(material: Material) -> Yield:
+    """Isotropic backscatter of a material by the law of its record, coating included."""
     number = material.value("mean_atomic_number")
     high = material.value("backscatter_high_energy")
     drop = material.get("backscatter_low_energy_drop", 0.0)
     drop_energy = material.get("backscatter_drop_energy_eV", 1.0)
-    ion_peak = material.value("ion_yield_peak")
-    ion_energy = material.value("ion_yield_peak_energy_eV")
+    by_number = material.laws.get("backscatter_law") == "hunger_kuchler_1979"
 
-    def secondary(energy_eV: Array) -> Array:
-        return isotropic_yield(
-            energy_eV,
-            law=law,
-            peak_yield=peak,
-            peak_energy_eV=peak_energy,
-            mean_atomic_number=number,
-        )
-
-    def backscatter(energy_eV: Array) -> Array:
+    def surface(energy_eV: Array) -> Array:
+        if by_number:
+            return isotropic_by_atomic_number(energy_eV, mean_atomic_number=number)
         return isotropic_backscatter(
             energy_eV,
             high_energy=high,
@@ -81,11 +96,63 @@ def emitter(material: Material, law: YieldLaw) -> Emitter:
             mean_atomic_number=number,
         )
 
+    if "coating_thickness_m" not in material.values:
+        return surface
+    thickness = material.value("coating_thickness_m")
+    density = material.value("density_kg_m3")
+    below = material.value("substrate_atomic_number")
+
+    def coated(energy_eV: Array) -> Array:
+        share = substrate_share(energy_eV, thickness_m=thickness, density_kg_m3=density)
+        under = isotropic_by_atomic_number(energy_eV, mean_atomic_number=below)
+        return (1.0 - share) * surface(energy_eV) + share * under
+
+    return coated
+
+
+def emitter(material: Material, law: YieldLaw) -> Emitter:
+    """Collect the yields of a material: isotropic for electrons, normal for ions.
+
+    Parameters
+    ----------
+    material : Material
+    law : str
+        One of `YIELD_LAWS`; see `law_of`.
+    """
+    if not material.emits:
+        return Emitter("nothing", _nothing, _nothing, _nothing)
+    chosen = law_of(material, law)
+    peak = true_secondary_peak(material)
+    peak_energy = material.value("secondary_yield_peak_energy_eV")
+    number = material.value("mean_atomic_number")
+    ion_peak = material.value("ion_yield_peak")
+    ion_energy = material.value("ion_yield_peak_energy_eV")
+
+    def secondary(energy_eV: Array) -> Array:
+        return isotropic_yield(
+            energy_eV,
+            law=chosen,
+            peak_yield=peak,
+            peak_energy_eV=peak_energy,
+            mean_atomic_number=number,
+        )
+
     def ion(energy_eV: Array) -> Array:
         return whipple_1981(energy_eV, peak_yield=ion_peak, peak_energy_eV=ion_energy)
 
-    key = (law, peak, peak_energy, number, high, drop, drop_energy, ion_peak, ion_energy)
-    return Emitter(key, secondary, backscatter, ion)
+    electron = tuple(material.get(key, 0.0) for key in (*_BACKSCATTER_KEYS, "density_kg_m3"))
+    key = (chosen, peak, peak_energy, number, *electron, ion_peak, ion_energy,
+           material.laws.get("backscatter_law"))  # fmt: skip
+    return Emitter(key, secondary, backscatter_yield(material), ion)
+
+
+_BACKSCATTER_KEYS = (
+    "backscatter_high_energy",
+    "backscatter_low_energy_drop",
+    "backscatter_drop_energy_eV",
+    "coating_thickness_m",
+    "substrate_atomic_number",
+)
 
 
 def electron_tables(
@@ -146,31 +213,60 @@ def photo_saturation_A_m2(material: Material, spectrum: SolarSpectrum) -> float:
     )
 
 
-def escape_tables(surfaces: Sequence[Material], spectrum: SolarSpectrum) -> YieldTable:
+STRONG_LINE = 0.05  # share of the photoelectrons that makes the end of a line matter
+
+
+def line_ends_V(materials: Sequence[Material], spectrum: SolarSpectrum) -> tuple[float, ...]:
+    """Potentials that hold back the last electron of a strong spectral line."""
+    energy = spectrum.photon_energy_eV
+    ends: set[float] = set()
+    for curve in {id(m): m.photoyield for m in materials}.values():
+        if curve is not None:
+            emitted = emission_spectrum(energy, spectrum.photon_flux_m2_s, curve)
+            strong = emitted > STRONG_LINE * emitted.sum()
+            ends.update(np.round(energy[strong] - curve.threshold_eV, 9).tolist())
+    return tuple(sorted(v for v in ends if v > 0.0))
+
+
+def escape_tables(
+    surfaces: Sequence[Material],
+    spectrum: SolarSpectrum,
+    *,
+    radius_m: float,
+    photo_geometry: str = "auto",
+) -> YieldTable:
     """Shares of photo- and secondary electrons that leave above a barrier height.
+
+    Parameters
+    ----------
+    surfaces : sequence of Material
+    spectrum : SolarSpectrum
+    radius_m : float
+        Radius of the body [m], for the escape of photoelectrons.
+    photo_geometry : str
+        One of `photo_escape.PHOTO_GEOMETRIES`.
 
     Returns
     -------
     YieldTable
-        L = number of surfaces; columns: photoelectrons, secondary electrons; planar
-        geometry (normal energy of Lambert emission).
+        L = number of surfaces; columns: photoelectrons, secondary electrons (planar:
+        normal energy of Lambert emission).
     """
-    height = knots(ESCAPE_SCALE_V, ESCAPE_SPACING)
-    unique = {material.name: material for material in surfaces}
+    breaks = line_ends_V(surfaces, spectrum)
+    height = segmented_knots(knots(ESCAPE_SCALE_V, ESCAPE_SPACING), breaks)
+    unique = {id(material): material for material in surfaces}
     columns = {
-        name: np.stack([_photo_escape(height, m, spectrum), _secondary_escape(height, m)], axis=-1)
-        for name, m in unique.items()
+        key: np.stack(
+            [
+                photo_escape(height, m, spectrum, radius_m=radius_m, geometry=photo_geometry),
+                _secondary_escape(height, m),
+            ],
+            axis=-1,
+        )
+        for key, m in unique.items()
     }
-    values = np.stack([columns[material.name] for material in surfaces])
-    return YieldTable.fit(ESCAPE_SCALE_V, values, ESCAPE_SPACING)
-
-
-def _photo_escape(height_V: Array, material: Material, spectrum: SolarSpectrum) -> Array:
-    if material.photoyield is None:
-        return np.ones_like(height_V)
-    energy, curve = spectrum.photon_energy_eV, material.photoyield
-    emitted = emission_spectrum(energy, spectrum.photon_flux_m2_s, curve)
-    return escape_fraction(height_V, energy, emitted, curve.threshold_eV)
+    values = np.stack([columns[id(material)] for material in surfaces])
+    return YieldTable.on(height, values, breaks)
 
 
 def _secondary_escape(height_V: Array, material: Material) -> Array:

@@ -10,24 +10,50 @@ from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.constants import e, epsilon_0
 
+from charging.currents.arrivals import arrivals, both_limits
 from charging.currents.barrier import escape_height
-from charging.currents.collection import SheathWeight, sheath_weight, thick_geometry
+from charging.currents.collection import (
+    Geometry,
+    sheath_weight,
+    thick_geometry,
+)
 from charging.currents.emission import (
     electron_tables,
     emitter,
     escape_tables,
     ion_tables,
+    line_ends_V,
     photo_saturation_A_m2,
 )
-from charging.currents.tables import YieldTable
-from environments.plasma import Plasma, one_sided_maxwellian_current
+from charging.currents.populations import (
+    Populations,
+    electron_sheath,
+    populations,
+    refuse_one_sided,
+)
+from charging.currents.spectra import SpectrumTable, spectrum_table
+from charging.currents.tables import Yield, YieldTable
+from environments.plasma import Plasma
 from environments.spectrum import SolarSpectrum
 from materials.record import Material
 from materials.secondary import YieldLaw
 
 Array = NDArray[np.float64]
+
+__all__ = [
+    "MECHANISMS",
+    "Currents",
+    "Populations",
+    "Setting",
+    "SurfaceModel",
+    "electron_sheath",
+    "net_in_limits",
+    "populations",
+    "surface_currents",
+    "surface_model",
+    "surface_models",
+]
 
 MECHANISMS = (
     "electron_collection",
@@ -41,47 +67,6 @@ MECHANISMS = (
 
 
 @dataclass(frozen=True, slots=True)
-class Populations:
-    """Maxwellian populations of all plasmas of a case, electrons or ions.
-
-    Attributes
-    ----------
-    temperature_eV, density_m3, thermal_current_A_m2 : ndarray [K]
-        Temperature; density and signed one-sided current at full strength.
-    charge_number : ndarray [K]
-        Magnitude of the charge in units of e.
-    plasma : ndarray of int [K]
-        Which plasma a population belongs to.
-    """
-
-    temperature_eV: Array
-    density_m3: Array
-    thermal_current_A_m2: Array
-    charge_number: Array
-    plasma: NDArray[np.intp]
-
-
-def populations(plasmas: Sequence[Plasma], *, electrons: bool) -> Populations:
-    """Gather the electron (or ion) populations of several plasmas."""
-    rows = [
-        (p.temperature_eV, p.density_m3, p.species.mass_kg, p.species.charge_number, i)
-        for i, plasma in enumerate(plasmas)
-        for p in plasma.populations
-        if (p.species.charge_number < 0) == electrons
-    ]
-    temperature, density, _, charge, owner = (
-        np.array([row[i] for row in rows], dtype=np.float64) for i in range(5)
-    )
-    thermal = np.array(
-        [
-            float(one_sided_maxwellian_current(n, t, mass_kg=m, charge_number=int(z)))
-            for t, n, m, z, _ in rows
-        ]
-    )
-    return Populations(temperature, density, thermal, np.abs(charge), owner.astype(np.intp))
-
-
-@dataclass(frozen=True, slots=True)
 class SurfaceModel:
     """S surfaces in P plasmas, ready for `surface_currents`.
 
@@ -91,8 +76,15 @@ class SurfaceModel:
         Body radius [m] and collection keyword of `sheath_weight`.
     electrons, ions : Populations
     electron_table, ion_table, escape_table : YieldTable
+        What Maxwellian electrons and ions release; shares that escape.
+    electron_spectra, ion_spectra : tuple of SpectrumTable
+        Everything about the populations that are no Maxwellians.
+    escape_breaks_V : tuple of float
+        Where the escape of photoelectrons has noticeable kinks: a strong line ends.
     photo_saturation_A_m2 : ndarray [S]
         Photocurrent density at normal incidence in full sun.
+    angle_growth : ndarray [S]
+        Largest growth of the yield at oblique incidence, 1: none.
     """
 
     radius_m: float
@@ -103,6 +95,10 @@ class SurfaceModel:
     ion_table: YieldTable
     escape_table: YieldTable
     photo_saturation_A_m2: Array
+    angle_growth: Array
+    electron_spectra: tuple[SpectrumTable, ...] = ()
+    ion_spectra: tuple[SpectrumTable, ...] = ()
+    escape_breaks_V: tuple[float, ...] = ()
 
 
 def surface_model(
@@ -113,13 +109,20 @@ def surface_model(
     law: YieldLaw,
     radius_m: float,
     collection: str = "auto",
+    photo_geometry: str = "auto",
 ) -> SurfaceModel:
     """Tabulate the answers of S surfaces to P plasmas and the Sun for one emission law.
 
     Arguments as in `surface_models`.
     """
     return surface_models(
-        materials, plasmas, spectrum, laws=[law], radius_m=radius_m, collection=collection
+        materials,
+        plasmas,
+        spectrum,
+        laws=[law],
+        radius_m=radius_m,
+        collection=collection,
+        photo_geometry=photo_geometry,
     )[0]
 
 
@@ -131,6 +134,7 @@ def surface_models(
     laws: Sequence[YieldLaw],
     radius_m: float,
     collection: str = "auto",
+    photo_geometry: str = "auto",
 ) -> tuple[SurfaceModel, ...]:
     """Tabulate the answers of S surfaces to P plasmas and the Sun, one model per law.
 
@@ -145,26 +149,57 @@ def surface_models(
     radius_m : float
         Radius of the body, for the sheath [m].
     collection : {"auto", "sphere", "cylinder", "plane"}
+    photo_geometry : {"auto", "planar", "point source"}
+        How photoelectrons leave a positive surface.
     """
+    refuse_one_sided(plasmas)
     thick = thick_geometry(collection)
     electrons = populations(plasmas, electrons=True)
     ions = populations(plasmas, electrons=False)
     emitters = [[emitter(material, law) for material in materials] for law in laws]
-    ion_table = ion_tables(emitters[0], ions.temperature_eV, thick)
-    escape_table = escape_tables(materials, spectrum)
+    ion_table = ion_tables(emitters[0], ions.temperature_eV[ions.maxwellian], thick)
+    ion_spectra = _spectra(plasmas, [(m.ion,) for m in emitters[0]], thick, electrons=False)
+    hot = electrons.temperature_eV[electrons.maxwellian]
+    escape_table = escape_tables(
+        materials, spectrum, radius_m=radius_m, photo_geometry=photo_geometry
+    )
     saturation = np.array([photo_saturation_A_m2(m, spectrum) for m in materials])
+    growth = np.array(
+        [1.0 if m.photoyield is None else m.photoyield.largest_angle_growth for m in materials]
+    )
     return tuple(
         SurfaceModel(
             radius_m=radius_m,
             collection=collection,
             electrons=electrons,
             ions=ions,
-            electron_table=electron_tables(of_law, electrons.temperature_eV, thick),
+            electron_table=electron_tables(of_law, hot, thick),
             ion_table=ion_table,
             escape_table=escape_table,
             photo_saturation_A_m2=saturation,
+            angle_growth=growth,
+            electron_spectra=_spectra(
+                plasmas, [(m.secondary, m.backscatter) for m in of_law], thick, electrons=True
+            ),
+            ion_spectra=ion_spectra,
+            escape_breaks_V=line_ends_V(materials, spectrum),
         )
         for of_law in emitters
+    )
+
+
+def _spectra(
+    plasmas: Sequence[Plasma],
+    yields: Sequence[Sequence[Yield]],
+    thick: Geometry,
+    *,
+    electrons: bool,
+) -> tuple[SpectrumTable, ...]:
+    return tuple(
+        spectrum_table(p, i, yields, thick)
+        for i, plasma in enumerate(plasmas)
+        for p in plasma.populations
+        if p.distribution is not None and (p.species.charge_number < 0) == electrons
     )
 
 
@@ -187,17 +222,6 @@ class Currents(NamedTuple):
 
     by_mechanism: Array
     slope: Array
-
-
-def electron_sheath(electrons: Populations, strength: Array) -> tuple[Array, Array]:
-    r"""Electron Debye length [m] and the temperature [eV] that belongs to it, each [...].
-
-    :math:`\lambda_D^{-2} = \sum n e/(\varepsilon_0 T)` over the electrons as printed; the
-    temperature is the harmonic one, :math:`\sum n/\sum(n/T)`.
-    """
-    density = electrons.density_m3 * strength[..., electrons.plasma]
-    stiffness = (density / electrons.temperature_eV).sum(axis=-1)
-    return np.sqrt(epsilon_0 / (e * stiffness)), density.sum(axis=-1) / stiffness
 
 
 def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) -> Currents:
@@ -223,17 +247,33 @@ def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) 
         radius_m=model.radius_m,
         collection=model.collection,
     )
-    electron, d_electron, answer, d_answer = _arrivals(
-        model.electrons, model.electron_table, model.collection, setting, potential_V, 1.0, sheath
+    electron, d_electron, answer, d_answer = arrivals(
+        model.electrons,
+        model.electron_table,
+        model.electron_spectra,
+        model.collection,
+        setting.strength,
+        potential_V,
+        1.0,
+        sheath,
     )
-    ion, d_ion, ion_answer, d_ion_answer = _arrivals(
-        model.ions, model.ion_table, model.collection, setting, potential_V, -1.0, sheath
+    ion, d_ion, ion_answer, d_ion_answer = arrivals(
+        model.ions,
+        model.ion_table,
+        model.ion_spectra,
+        model.collection,
+        setting.strength,
+        potential_V,
+        -1.0,
+        sheath,
     )
 
     height, height_slope = escape_height(potential_V)
     escape, d_escape = model.escape_table(height)
     d_escape = d_escape * height_slope[..., None]
-    photo = model.photo_saturation_A_m2 * setting.light
+    # `incidence_factor` of the light: exact in full sun; in penumbra, where light is not the
+    # cosine alone, a growth above 1 reaches its cap late
+    photo = model.photo_saturation_A_m2 * np.minimum(model.angle_growth * setting.light, 1.0)
     true_secondary, d_true_secondary = -answer[..., 0], -d_answer[..., 0]
     impact, d_impact = ion_answer[..., 0], d_ion_answer[..., 0]
     leaves, d_leaves = escape[..., 1], d_escape[..., 1]
@@ -262,58 +302,39 @@ def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) 
     return Currents(by_mechanism, slope)
 
 
-def _arrivals(
-    group: Populations,
-    table: YieldTable,
-    collection: str,
-    setting: Setting,
-    potential_V: Array,
-    attracting_sign: float,
-    sheath: SheathWeight,
-) -> tuple[Array, Array, Array, Array]:
-    """Collected current of electrons or ions, what it releases, and both slopes.
+def net_in_limits(
+    model: SurfaceModel, potential_V: Array, strength: Array
+) -> tuple[Array, Array, Array]:
+    """Net dark current of a planar and of a thick sheath, and the photocurrent at full light.
 
-    Returns J [..., S], dJ/dphi, released [..., S, C], d(released)/dphi, summed over the
-    populations; released has the sign of J and one column per yield (full escape).
+    Parameters
+    ----------
+    model : SurfaceModel
+    potential_V : ndarray [..., S]
+    strength : ndarray [..., P]
+
+    Returns
+    -------
+    ndarray [..., S], three of them
+        Current densities [A m-2]; they are linear in `strength`.
     """
-    thick = thick_geometry(collection)
-    w, dw = sheath.weight[..., None], attracting_sign * sheath.slope[..., None]
-    pull = attracting_sign * potential_V[..., None]
-    reduced = group.charge_number / group.temperature_eV
-    attracted = pull > 0.0
-    u = np.where(attracted, pull, 0.0) * reduced
-    boltzmann = np.exp(np.where(attracted, 0.0, pull) * reduced)
-    d_boltzmann = np.where(attracted, 0.0, boltzmann * reduced)
-    gain = thick.factor(u) - 1.0
-    collected = 1.0 + w * gain
-    d_collected = np.where(attracted, w * thick.slope(u) * reduced, 0.0) + dw * gain
-    strength = setting.strength[..., group.plasma]
-    thermal = (group.thermal_current_A_m2 * strength)[..., None, :]
-    current = thermal * boltzmann * collected
-    d_current = thermal * (d_boltzmann * collected + boltzmann * d_collected)
-
-    surfaces, kinds = u.shape[-2:]
-    energy = (np.where(attracted, pull, 0.0) * group.charge_number).reshape(
-        *u.shape[:-2], surfaces * kinds
+    electron = both_limits(
+        model.electrons,
+        model.electron_table,
+        model.electron_spectra,
+        model.collection,
+        strength,
+        potential_V,
+    )[0]
+    ion = both_limits(
+        model.ions, model.ion_table, model.ion_spectra, model.collection, strength, -potential_V
+    )[0]
+    escape = model.escape_table(escape_height(potential_V)[0])[0]
+    leaves = escape[..., 1:]
+    both = (
+        electron[..., 0:2]
+        + ion[..., 0:2]
+        + (ion[..., 2:4] - electron[..., 2:4]) * leaves
+        - electron[..., 4:6]
     )
-    value, slope = table(energy)
-    value = value.reshape(*u.shape, -1)
-    slope = slope.reshape(*u.shape, -1) * group.charge_number[:, None]
-    slope = np.where(attracted[..., None], slope, 0.0)
-    plane, thick_value = value[..., 0::2], value[..., 1::2]
-    mean = plane + w[..., None] * (thick_value - plane)
-    d_mean = (
-        slope[..., 0::2]
-        + w[..., None] * (slope[..., 1::2] - slope[..., 0::2])
-        + dw[..., None] * (thick_value - plane)
-    )
-    particles = (thermal / group.charge_number)[..., None]  # yields are per particle
-    released = particles * boltzmann[..., None] * mean
-    d_released = particles * (d_boltzmann[..., None] * mean + boltzmann[..., None] * d_mean)
-    sign = attracting_sign
-    return (
-        current.sum(axis=-1),
-        sign * d_current.sum(axis=-1),
-        released.sum(axis=-2),
-        sign * d_released.sum(axis=-2),
-    )
+    return both[..., 0], both[..., 1], model.photo_saturation_A_m2 * escape[..., 0]

@@ -9,7 +9,7 @@ per unit of the one-sided thermal current, with the yield y(E) at the impact
 energy and the collection factor G of the geometry. At 0 V it is the plain
 Maxwellian average, which also serves every repelled potential. The knots are
 :math:`\varphi_k = \varphi_s \sinh^2(kh)`: dense where square-root terms of y
-live, geometric where only ratios matter. Between knots a cubic spline.
+live, geometric where only ratios matter. Between knots a quintic spline.
 """
 
 from collections.abc import Callable, Sequence
@@ -18,20 +18,23 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.polynomial.legendre import leggauss
 from numpy.typing import NDArray
-from scipy.interpolate import CubicSpline
 
 from charging.currents.collection import Geometry
+from charging.currents.splines import polynomial_and_slope, segmented_spline
 
 Array = NDArray[np.float64]
 Yield = Callable[[Array], Array]
 
-SPACING = 0.02  # h; what the spline errs by is measured in tests/validation
+SPACING = 0.024  # h; the spline then errs by 1e-8 of what arrives at most, see the tests
 REACH_V = 4.0e5  # tables cover this potential; the search range is ±200 kV
 
 
 def knot_scale(lowest_temperature_eV: float) -> float:
-    """Return φ_s [V]: a tenth of the smallest yield energy scale, or the temperature."""
-    return min(10.0, lowest_temperature_eV)
+    """Return φ_s [V]: a hundredth of the smallest yield energy scale, or of the temperature.
+
+    Terms such as φ² ln φ of a thick sheath need knots far below either.
+    """
+    return 0.01 * min(10.0, lowest_temperature_eV)
 
 
 def knots(scale_V: float, spacing: float = SPACING) -> Array:
@@ -91,30 +94,29 @@ def average_yields(
 
 @dataclass(frozen=True, slots=True)
 class YieldTable:
-    """Cubic splines on the knots φ_s sinh²(kh), for many functions at once.
+    """Quintic splines on common knots, for many functions at once.
 
     Attributes
     ----------
-    scale_V, spacing : float
-        φ_s and h.
     knots_V : ndarray [K]
-    coefficients : ndarray [L, K-1, 4, C]
+    coefficients : ndarray [L, K-1, 6, C]
         L entries (surfaces times populations, flattened), highest power first,
         C columns.
     """
 
-    scale_V: float
-    spacing: float
     knots_V: Array
     coefficients: Array
 
     @classmethod
     def fit(cls, scale_V: float, values: Array, spacing: float = SPACING) -> "YieldTable":
         """Build from `values` [L, K, C] at ``knots(scale_V, spacing)`` [K]."""
-        grid = knots(scale_V, spacing)
-        pieces = CubicSpline(grid, values, axis=1).c  # [4, K-1, L, C]
-        ordered = np.ascontiguousarray(np.moveaxis(pieces, (2, 1, 0), (0, 1, 2)))
-        return cls(scale_V, spacing, grid, ordered)
+        return cls.on(knots(scale_V, spacing), values)
+
+    @classmethod
+    def on(cls, knots_V: Array, values: Array, breaks: Sequence[float] = ()) -> "YieldTable":
+        """Build from `values` [L, K, C] at any knots [K], split at those in `breaks`."""
+        pieces = segmented_spline(knots_V, np.moveaxis(values, 1, 0), breaks)  # [K-1, 6, L, C]
+        return cls(knots_V, np.ascontiguousarray(np.moveaxis(pieces, 2, 0)))
 
     def __call__(self, potential_V: Array) -> tuple[Array, Array]:
         """Return values and slopes by potential, [..., L, C], at `potential_V` [..., L] >= 0.
@@ -122,10 +124,7 @@ class YieldTable:
         Beyond the last knot (`REACH_V`) the last polynomial goes on; the solvers
         refuse such potentials.
         """
-        k = (np.arcsinh(np.sqrt(potential_V / self.scale_V)) / self.spacing).astype(np.intp)
-        k = np.minimum(k, len(self.knots_V) - 2)
+        k = np.searchsorted(self.knots_V, potential_V, side="right") - 1
+        k = np.clip(k, 0, len(self.knots_V) - 2)
         c = self.coefficients[np.arange(potential_V.shape[-1]), k]
-        x = (potential_V - self.knots_V[k])[..., None]
-        value = ((c[..., 0, :] * x + c[..., 1, :]) * x + c[..., 2, :]) * x + c[..., 3, :]
-        slope = (3.0 * c[..., 0, :] * x + 2.0 * c[..., 1, :]) * x + c[..., 2, :]
-        return value, slope
+        return polynomial_and_slope(c, (potential_V - self.knots_V[k])[..., None])

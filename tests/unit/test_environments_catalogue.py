@@ -44,6 +44,8 @@ def test_names_that_reports_and_cases_rely_on():
         "ECSS geostationary worst case",
         "NASA geostationary 90 percent",
         "substorm, 3 keV class",
+        "ECSS auroral worst case",
+        "solar wind at 1 AU",
     } <= set(plasma_names())
 
 
@@ -56,7 +58,7 @@ def test_every_entry_has_name_source_basis_and_both_charges(name):
     assert "basis" in document  # never by default within the package
     assert plasma.title
     assert plasma.source
-    assert {p.species.charge_number for p in plasma.populations} == {-1, 1}
+    assert {p.species.charge_number < 0 for p in plasma.populations} == {True, False}
     assert load_plasma(name) is plasma
 
 
@@ -167,9 +169,10 @@ def test_integers_beyond_floats_are_out_of_range():
 
 def test_law_error_names_what_is_allowed():
     with pytest.raises(EnvironmentDataError) as caught:
-        read_plasma(changed(("population", 1, "law"), "kappa"))
+        read_plasma(changed(("population", 1, "law"), "kapa"))
     assert str(caught.value) == (
-        'population[1].law = "kappa" is not known here; allowed: "maxwellian"'
+        'population[1].law = "kapa" is not known here; allowed: "maxwellian", "kappa", '
+        '"fontheim", "flat and maxwellian", "tabulated"; nearest: "kappa"'
     )
 
 

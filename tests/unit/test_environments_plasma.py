@@ -106,9 +106,11 @@ def test_current_refuses_mass():
 
 def test_unknown_law_names_the_allowed_ones():
     with pytest.raises(EnvironmentDataError) as caught:
-        Population(ELECTRON, "kappa", 1e6, 1e3)
+        Population(ELECTRON, "kapa", 1e6, 1e3)
     assert caught.value.key == ("law",)
-    assert caught.value.allowed == '"maxwellian"'
+    assert caught.value.nearest == "kappa"
+    with pytest.raises(EnvironmentDataError, match="needs its distribution"):
+        Population(ELECTRON, "kappa", 1e6, 1e3)
 
 
 @pytest.mark.parametrize(("density", "temperature"), [(-1.0, 1.0), (np.nan, 1.0), (1.0, 0.0)])

@@ -29,6 +29,7 @@ from materials.backscatter import (
 from materials.ion_impact import whipple_1981
 from materials.secondary import (
     YIELD_LAWS,
+    draine_salpeter_1979,
     isotropic_yield,
     lin_joy_2005,
     maxwellian_isotropic_yield,
@@ -36,11 +37,17 @@ from materials.secondary import (
     sanders_inouye_1979,
     secondary_escape_fraction,
     secondary_escape_slope,
+    sternglass_1954,
     true_secondary_peak,
 )
 
 Law = Callable[..., NDArray[np.float64]]
-LAWS: dict[str, Law] = {"sanders_inouye_1979": sanders_inouye_1979, "lin_joy_2005": lin_joy_2005}
+LAWS: dict[str, Law] = {
+    "sanders_inouye_1979": sanders_inouye_1979,
+    "lin_joy_2005": lin_joy_2005,
+    "sternglass_1954": sternglass_1954,
+    "draine_salpeter_1979": draine_salpeter_1979,
+}
 PEAK: dict[str, Any] = {"peak_yield": 2.4, "peak_energy_eV": 350.0}
 
 
@@ -59,7 +66,8 @@ def test_yield_at_zero_energy_is_zero_and_rises_linearly(law: str) -> None:
     kernel = LAWS[law]
     assert float(kernel(0.0, **PEAK)) == 0.0
     tiny = kernel([1e-6, 2e-6], **PEAK)
-    assert float(tiny[1] / tiny[0]) == pytest.approx(2.0, rel=1e-6)
+    # the square root in the exponent of Sternglass bends the start by 1e-4
+    assert float(tiny[1] / tiny[0]) == pytest.approx(2.0, rel=1e-4)
 
 
 def test_sanders_inouye_against_thirty_digits() -> None:

@@ -83,6 +83,11 @@ def test_every_number_carries_source_basis_and_spread(name: str) -> None:
     # read from the text, so that a gap cannot hide behind the reader
     document = tomllib.loads(library_text(name))
     records = {key: entry for key, entry in document.items() if isinstance(entry, dict)}
+    states = records.pop("surface_state", {})
+    samples = [v for v in records.get("photoyield", {}).values() if isinstance(v, dict)]
+    for record in (*states.values(), *samples):
+        assert len(record["source"]) > 10, name
+        assert record["basis"] in BASES, name
     for key, record in records.items():
         assert len(record["source"]) > 10, (name, key)
         assert record["basis"] in BASES, (name, key)

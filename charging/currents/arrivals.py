@@ -1,0 +1,99 @@
+"""What arrives at surfaces and what it releases, summed over the populations."""
+
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.typing import NDArray
+
+from charging.currents.collection import SheathWeight, thick_geometry
+from charging.currents.populations import Populations
+from charging.currents.spectra import SpectrumTable
+from charging.currents.tables import YieldTable
+
+Array = NDArray[np.float64]
+
+
+def arrivals(
+    group: Populations,
+    table: YieldTable,
+    spectra: Sequence[SpectrumTable],
+    collection: str,
+    strength: Array,
+    potential_V: Array,
+    attracting_sign: float,
+    sheath: SheathWeight,
+) -> tuple[Array, Array, Array, Array]:
+    """Collected current of electrons or ions, what it releases, and both slopes.
+
+    Returns J [..., S], dJ/dphi, released [..., S, C], d(released)/dphi, summed over the
+    populations; released has the sign of J and one column per yield (full escape).
+    """
+    pull = attracting_sign * potential_V
+    value, slope = both_limits(group, table, spectra, collection, strength, pull)
+    plane, gain = value[..., 0::2], value[..., 1::2] - value[..., 0::2]
+    d_plane, d_gain = slope[..., 0::2], slope[..., 1::2] - slope[..., 0::2]
+    weight = sheath.weight[..., None]
+    total = plane + weight * gain
+    d_total = attracting_sign * (d_plane + weight * d_gain) + sheath.slope[..., None] * gain
+    return total[..., 0], d_total[..., 0], total[..., 1:], d_total[..., 1:]
+
+
+def both_limits(
+    group: Populations,
+    table: YieldTable,
+    spectra: Sequence[SpectrumTable],
+    collection: str,
+    strength: Array,
+    pull_V: Array,
+) -> tuple[Array, Array]:
+    """Sum over all populations: columns [..., S, 2+2C] and slopes by `pull_V` [..., S].
+
+    Columns: collected current in plane and thick sheath, then released current per yield
+    in plane and thick sheath.
+    """
+    value, slope = _thermal_arrivals(group, table, collection, strength, pull_V)
+    for spectrum in spectra:
+        # per particle: the collected columns count charge, the yields electrons
+        scale = np.full(value.shape[-1], spectrum.current_A_m2 / spectrum.charge_number)
+        scale[:2] = spectrum.current_A_m2
+        present = strength[..., spectrum.plasma, None, None]
+        share, d_share = spectrum(pull_V)
+        value = value + present * scale * share
+        slope = slope + present * scale * d_share
+    return value, slope
+
+
+def _thermal_arrivals(
+    group: Populations, table: YieldTable, collection: str, strength: Array, pull_V: Array
+) -> tuple[Array, Array]:
+    """Sum over the Maxwellians alone; see `both_limits`."""
+    thick = thick_geometry(collection)
+    which = group.maxwellian
+    charge = group.charge_number[which]
+    pull = pull_V[..., None]
+    reduced = charge / group.temperature_eV[which]
+    attracted = pull > 0.0
+    u = np.where(attracted, pull, 0.0) * reduced
+    boltzmann = np.exp(np.where(attracted, 0.0, pull) * reduced)
+    d_boltzmann = np.where(attracted, 0.0, boltzmann * reduced)
+    present = strength[..., group.plasma[which]]
+    thermal = (group.thermal_current_A_m2[which] * present)[..., None, :]
+    factor = thick.factor(u)
+    d_factor = np.where(attracted, thick.slope(u) * reduced, 0.0)
+    current = np.stack([boltzmann, boltzmann * factor], axis=-1)
+    d_current = np.stack([d_boltzmann, d_boltzmann * factor + boltzmann * d_factor], axis=-1)
+
+    surfaces, kinds = u.shape[-2:]
+    energy = (np.where(attracted, pull, 0.0) * charge).reshape(*u.shape[:-2], surfaces * kinds)
+    found, d_found = table(energy)
+    found = found.reshape(*u.shape, -1)
+    d_found = d_found.reshape(*u.shape, -1) * charge[:, None]
+    d_found = np.where(attracted[..., None], d_found, 0.0)
+    particles = 1.0 / charge[:, None]  # yields are per particle
+    released = particles * boltzmann[..., None] * found
+    d_released = particles * (d_boltzmann[..., None] * found + boltzmann[..., None] * d_found)
+    scale = thermal[..., None]
+    return (
+        (scale * np.concatenate([current, released], axis=-1)).sum(axis=-2),
+        (scale * np.concatenate([d_current, d_released], axis=-1)).sum(axis=-2),
+    )
