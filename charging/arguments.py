@@ -44,11 +44,23 @@ def as_material(given: Material | str, *, key: str = "material") -> Material:
     from charging.case_library import Sources, find_material
 
     if not isinstance(given, str):
-        return given
+        return _levelled(given)
     try:
         return find_material(given, Sources(_HERE, allow_outside=True))[0]
     except ProblemsFound as error:
         raise _unusable(key, given, error) from None
+
+
+def _levelled(given: Material) -> Material:
+    from charging.photo_level import levelled
+    from materials.errors import MaterialError
+
+    try:
+        return levelled(given)
+    except MaterialError as error:
+        raise InputError(
+            f'material "{given.name}": {error}', key=error.key, value=error.value
+        ) from None
 
 
 def as_plasma(given: Plasma | str, *, key: str = "plasma") -> Plasma:

@@ -40,7 +40,7 @@ from charging.errors import KeyPath, Problem, ProblemsFound
 from charging.toml_file import TomlFile, parse_toml, read_toml
 from charging.units import case_bare_keys, rewrite_quantities
 from materials.errors import MaterialError
-from materials.surface_state import in_state
+from materials.surface_state import in_state, records_of_state
 
 if TYPE_CHECKING:
     from environments.plasma import Plasma
@@ -87,7 +87,8 @@ class LoadedCase:
     text, sha256 : str
         Its text, and the SHA-256 of its bytes in hexadecimal.
     materials, plasmas : mapping
-        Material or plasma by the text that names it in the case.
+        Material or plasma by the text that names it in the case; also, by their library
+        names, the materials whose curves the surface states need.
     material_texts, plasma_texts : mapping
         Their TOML texts by the same keys: with them the case can be run again.
     """
@@ -172,6 +173,18 @@ def _loaded(toml: TomlFile, path: Path, sources: Sources) -> LoadedCase:
     if not problems:
         named = {name: found[0] for name, found in materials.items()}
         problems += [*_layer_problems(case, named), *_state_problems(case, named)]
+        # states take curves of other records: a run repeated from its result needs those too
+        needed = (
+            (("surface", index, "surface_state"), other)
+            for index, surface in enumerate(case.surface)
+            for other in records_of_state(named[surface.material], surface.surface_state)
+        )
+        materials |= _found(
+            ((key, name) for key, name in needed if name not in materials),
+            find_material,
+            sources,
+            problems,
+        )
     if problems:
         raise input_error(problems, toml.document, file=toml.file, lines=toml.lines, origin=origin)
     return LoadedCase(

@@ -51,7 +51,8 @@ def find_material(name: str, sources: Sources) -> tuple[Material, str]:
     InputError
         The file was found and cannot be used.
     """
-    from materials.errors import MaterialError  # numpy loads here, not for the schema
+    from charging.photo_level import levelled  # numpy loads here, not for the schema
+    from materials.errors import MaterialError
     from materials.library import library_text, load_material, material_names, read_material
 
     toml = _toml("material", name, sources, sources.material_texts)
@@ -62,7 +63,7 @@ def find_material(name: str, sources: Sources) -> tuple[Material, str]:
             near = error.nearest or nearest_name(name, material_names())
             raise _unknown(near, "All names: halflit materials") from None
     try:
-        return read_material(toml.document), toml.text
+        return levelled(read_material(toml.document)), toml.text
     except MaterialError as error:
         raise _in_file(error, toml, {}) from None
 

@@ -49,7 +49,19 @@ Direction: TypeAlias = Annotated[tuple[float, float, float], AfterValidator(dire
 Positive: TypeAlias = Annotated[float, Field(gt=0.0)]
 Share: TypeAlias = Annotated[float, Field(ge=0.0, le=1.0)]
 Angle: TypeAlias = Annotated[float, Field(ge=-360.0, le=360.0)]
-Temperature: TypeAlias = Annotated[float, Field(gt=0.0, le=2000.0)]
+Temperature: TypeAlias = Annotated[float, Field(ge=50.0, le=2000.0)]
+"""Of a surface [K]; below 50 K the conduction law is refused."""
+SolarBand: TypeAlias = Literal[
+    "X-ray",
+    "EUV",
+    "FUV below Lyman-alpha",
+    "Lyman-alpha",
+    "FUV above Lyman-alpha",
+    "MUV",
+    "NUV",
+]
+"""Bands of `environments.spectrum.BANDS`, which needs numpy and cannot be read here."""
+BandFactor: TypeAlias = Annotated[float, Field(ge=0.0, le=1e6)]
 SolarActivity: TypeAlias = Annotated[float, Field(ge=50.0, le=500.0)]
 
 
@@ -119,6 +131,9 @@ class Sun(Table):
         ge=0.01,
         le=100.0,
         description="distance from the Sun, fixed orbits only; default 1",
+    )
+    flare: dict[SolarBand, BandFactor] = Field(
+        default_factory=dict, description="factor on the photons by band of the spectrum"
     )
     absorbing_height_km: float = Field(
         default=0.0, ge=0.0, le=1000.0, description="added to the Earth's radius for the shadow"
@@ -204,7 +219,7 @@ class Surface(Table):
     surface_state: Literal["as recorded", "clean", "air-exposed", "aged"] = Field(
         default="as recorded", description="state of the surface for photoemission"
     )
-    area_m2: Positive
+    area_m2: float = Field(gt=0.0, le=1e5)
     thickness_m: float | None = Field(default=None, gt=0.0, le=1.0, description="of a dielectric")
     normal: Direction | None = Field(default=None, description="outward, body axes")
     tracks_sun: bool = Field(default=False, description="turns about body y towards the Sun")

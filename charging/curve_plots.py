@@ -20,6 +20,7 @@ from charging.photo_table import (
 from charging.point import PointResult
 from charging.written_file import written_file
 from environments.spectrum import BANDS
+from materials.photoyield import yield_per_photon
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -141,34 +142,52 @@ def plot_photoyield(
     InputError
         As `photoyield_table` and `plot_point`.
     """
-    figure, (left, middle, right) = _figure(3, (14.5, 4.8))
     light = Sunlight(**sunlight)
-    records = {record.name: record for record in map(as_material, materials)}
+    found = [as_material(given) for given in materials]
+    records = [record for record in found if record.photoyield is not None]
+    if not records:
+        raise InputError(
+            "none of these materials emits photoelectrons: nothing to draw",
+            key=("material",),
+            value=", ".join(record.name for record in found),
+        )
+    figure, (left, middle, right) = _figure(3, (14.5, 4.8))
+    names = [record.name for record in records]
+    typed = [m for m, r in zip(materials, found, strict=True) if r.photoyield is not None]
     potential = np.linspace(0.0, 30.0, 601)
-    curves = retarding_curves(list(records.values()), potential, **sunlight)
-    rows = photoyield_table(list(records.values()), **sunlight)
-    emitting = [light.material(r) for r in records.values() if r.photoyield is not None]
-    for i, record in enumerate(emitting):
+    curves = retarding_curves(records, potential, **sunlight)
+    rows = photoyield_table(records, **sunlight)
+    highest = float(light.spectrum().photon_energy_eV.max())
+    top = 0.0
+    for i, record in enumerate(map(light.material, records)):
         colour = COLOURS[i % len(COLOURS)]
         style = STYLES[i // len(COLOURS) % len(STYLES)]
-        assert record.photoyield is not None
-        x, y = record.photoyield.photon_energy_eV, record.photoyield.electrons_per_photon
-        left.plot(x[1:], y[1:], color=colour, linestyle=style, label=record.name)
-        left.plot([x[0]], [y[1:].min()], color=colour, marker="|", linestyle="none")
-        right.plot(
-            potential, 1e6 * curves[record.name], color=colour, linestyle=style, label=record.name
-        )
+        yields, curve = record.photoyield, curves[i]
+        assert yields is not None
+        assert curve is not None
+        label = names[i]
+        if names.count(label) > 1 and isinstance(typed[i], str) and typed[i] != label:
+            label = f"{label} ({typed[i]})"
+        x = np.geomspace(1.001 * yields.threshold_eV, max(highest, 10.0 * yields.threshold_eV), 600)
+        left.plot(x, yield_per_photon(x, yields), color=colour, linestyle=style, label=label)
+        if np.any(curve > 0.0):
+            right.plot(potential, 1e6 * curve, color=colour, linestyle=style, label=label)
+        top = max(top, float(curve.max()))
     left.set_xscale("log")
     left.set_yscale("log")
-    left.set_xlabel("photon energy [eV] (tick: threshold)")
+    left.set_ylim(bottom=1e-7)
+    left.set_xlabel("photon energy [eV], to the end of the spectrum")
     left.set_ylabel("electrons per photon")
     left.set_title("yield", loc="left", fontsize=11)
-    left.set_xticks([5.0, 10.0, 20.0, 50.0, 100.0], ["5", "10", "20", "50", "100"])
+    left.set_xticks([5.0, 10.0, 30.0, 100.0, 1e3, 1e4], ["5", "10", "30", "100", "1000", "10⁴"])
     left.minorticks_off()
-    right.set_yscale("log")
-    top = max((float(curve.max()) for curve in curves.values()), default=0.0)
     if top > 0.0:
+        right.set_yscale("log")
         right.set_ylim(1e6 * top * 1e-4, 2e6 * top)
+        right.legend(fontsize=8)
+    else:
+        right.text(0.5, 0.5, "no current in this light", ha="center", transform=right.transAxes)
+        left.legend(fontsize=8)
     right.set_xlabel("potential of the surface [V]")
     right.set_ylabel("escaping current density [µA m$^{-2}$]")
     right.set_title(
@@ -178,8 +197,6 @@ def plot_photoyield(
         fontsize=11,
     )
     _draw_bands(middle, [row for row in rows if row.bands])
-    if emitting:
-        right.legend(fontsize=8)
     _save(figure, target)
 
 

@@ -16,16 +16,21 @@ from numpy.typing import NDArray
 
 from charging import __version__
 from charging.audit import charge_audit
-from charging.case import LoadedCase
+from charging.case import LoadedCase, OrbitKepler
 from charging.currents.surface import MECHANISMS, electron_sheath
 from charging.errors import InputError
 from charging.orbit_run import TOLERANCE, CaseRun, ModeRun
 from charging.review.limits import requirements
+from charging.spacecraft import surface_materials
+from charging.summary import peak_times_s
 from charging.surroundings import epoch64, event_strength, seconds64
+from environments.orbit import EARTH_RADIUS_M
 
 Array = NDArray[np.float64]
 
 ALL_MECHANISMS = (*MECHANISMS, "conduction", "bias_or_emitter")
+PLASMA_SHEET_FROM_KM = 25000.0
+KILOVOLT, STRONGLY_POSITIVE_V = 1000.0, 100.0
 REGION_MASKS = {"penumbra": 1, "umbra": 2, "plasma_event": 4}
 
 
@@ -89,13 +94,16 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
         Dimensions surface, time, mechanism, node, population, axis; labels as auxiliary
         coordinates ``surface_name`` and so on (``ds.set_xindex("surface_name")``).
     """
-    net, path, times = mode.net, mode.trajectories[member], mode.times_s
+    net, path = mode.net, mode.trajectories[member]
+    # the moments of the extremes belong to the file; times are kept to the nanosecond
+    times = np.union1d(mode.times_s, peak_times_s(mode, member))
+    times = np.unique(np.rint(times * 1e9)) / 1e9
     state = path(times)
     node_potential = net.potentials(state)
     surface = node_potential[:, net.surface_node].T
     shot = mode.way.snapshot(times)
     light = (shot.illumination * shot.incidence_cosine).T
-    flows = mode.balance.flows(member, times, state, light)
+    flows = mode.balance.flows(member, times, state, light, shot.illumination[:, None])
     setting, temperature = mode.around.at(times)
 
     by_mechanism = np.zeros((len(ALL_MECHANISMS), *surface.shape))
@@ -127,7 +135,7 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
         "surface_temperature": temperature.T,
         "position": shot.position_m,
         "sun_direction": shot.sun_direction,
-        "region": _region(mode, shot.illumination),
+        "region": _region(mode, times, shot.illumination),
         "population_density": shares * density[:, None],
         "population_temperature": np.concatenate([g.temperature_eV for g in groups]),
         "population_current_density": shares * thermal[:, None],
@@ -207,6 +215,7 @@ def attributes(
         "backscatter_law": "prokopenko_laframboise_1980",
         "ion_impact_law": "whipple_1981",
         "conduction_law": "Arrhenius with adamec_calderwood_1981",
+        "photoyield": json.dumps(photoyields(loaded), ensure_ascii=False),
         "case_file": loaded.path.name,
         "case_text": loaded.text,
         "case_sha256": loaded.sha256,
@@ -232,6 +241,26 @@ def attributes(
         ),
         "warnings": "\n".join(warnings_of(loaded, mode)) or "none",
     }
+
+
+def photoyields(loaded: LoadedCase) -> list[dict[str, object]]:
+    """How each surface emits in sunlight: state, level and basis of its curve, energies."""
+    used = surface_materials(loaded.case, loaded.materials)
+    rows: list[dict[str, object]] = []
+    for surface, material in zip(loaded.case.surface, used, strict=True):
+        curve = material.photoyield
+        row: dict[str, object] = {"surface": surface.name, "state": surface.surface_state}
+        if curve is not None:
+            row |= {
+                "threshold_eV": curve.threshold_eV,
+                "level": curve.level,
+                "basis": curve.basis,
+                "spread_factor": curve.spread_factor,
+                "electron_energies": "photons" if curve.energies is None else curve.energies.law,
+                "note": curve.note,
+            }
+        rows.append(row)
+    return rows
 
 
 def _texts(kind: str, texts: Mapping[str, str]) -> dict[str, object]:
@@ -262,20 +291,47 @@ def warnings_of(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
     """What a reader of the result must know about this run."""
     reason = loaded.case.plasma.accept_assumed
     accepted = "" if reason is None else f" (accepted: {reason})"
-    return tuple(
+    found = [
         f'plasma "{plasma.name}" rests on assumed figures{accepted}'
         for plasma in dict.fromkeys(mode.plasmas)
         if plasma.basis == "assumed"
-    )
+    ]
+    orbit = loaded.case.orbit
+    if isinstance(orbit, OrbitKepler):
+        perigee = orbit.semi_major_axis_km * (1.0 - orbit.eccentricity)
+        if perigee < PLASMA_SHEET_FROM_KM:
+            found.append(
+                f'plasma "{mode.plasmas[0].name}" is used along the whole orbit, down to '
+                f"{perigee - EARTH_RADIUS_M / 1e3:.0f} km altitude"
+            )
+    lowest = min(float(mode.net.potentials(path.y_end).min()) for path in mode.trajectories)
+    highest = max(float(mode.net.potentials(path.y_end).max()) for path in mode.trajectories)
+    assumed = [
+        material.name
+        for material in dict.fromkeys(loaded.materials.values())
+        if "ion_yield_peak" in material.values
+        and material.values["ion_yield_peak"].basis == "assumed"
+    ]
+    if lowest < -KILOVOLT and assumed:
+        found.append(
+            "electrons released by ions carry much of the balance at kilovolts, and their "
+            f"yield is assumed for {', '.join(assumed)}"
+        )
+    if highest > STRONGLY_POSITIVE_V and lowest < -STRONGLY_POSITIVE_V:
+        found.append(
+            f"a surface stands {highest:.0f} V above the plasma beside negative ones: their "
+            "electrons, whose exchange is not modelled, would pull it down"
+        )
+    return tuple(found)
 
 
-def _region(mode: ModeRun, light: Array) -> NDArray[np.int8]:
+def _region(mode: ModeRun, times: Array, light: Array) -> NDArray[np.int8]:
     flags = np.zeros(light.shape, dtype=np.int8)
     flags[(light > 0.0) & (light < 1.0)] |= REGION_MASKS["penumbra"]
     flags[light <= 0.0] |= REGION_MASKS["umbra"]
     for event in mode.around.episodes:
         # below 1 % of its strength an event is over
-        flags[event_strength(mode.times_s, event) > 0.01] |= REGION_MASKS["plasma_event"]
+        flags[event_strength(times, event) > 0.01] |= REGION_MASKS["plasma_event"]
     return flags
 
 

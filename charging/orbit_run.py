@@ -127,7 +127,12 @@ def spectrum_of(loaded: LoadedCase, mode: Mode | None = None) -> SolarSpectrum:
     f107, mean = sun.f107, sun.f107_81day
     if mode is not None and mode.f107 is not None:
         f107 = mean = mode.f107
-    return solar_spectrum(f107=f107, f107_81day=mean, distance_au=sun_distance_au(loaded.case))
+    return solar_spectrum(
+        f107=f107,
+        f107_81day=mean,
+        distance_au=sun_distance_au(loaded.case),
+        band_factors={str(band): factor for band, factor in sun.flare.items()},
+    )
 
 
 def plasma_names(loaded: LoadedCase, mode: Mode | None) -> tuple[str, ...]:

@@ -59,6 +59,7 @@ def sunlit_potentials(
             f107=light.f107,
             surface_state=light.surface_state,
             photo_escape=light.photo_escape,
+            flare=light.flare,
         ).reached_V
         for given in materials
     )

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 from typing import TypedDict, Unpack
 
 import numpy as np
@@ -26,7 +26,6 @@ from charging.currents.photo_escape import (
     photo_sheath,
     point_source_weight,
 )
-from charging.errors import InputError
 from environments.errors import EnvironmentDataError
 from environments.spectrum import BANDS, NM_EV, SolarSpectrum, photon_flux, solar_spectrum
 from materials.photo_laws import incidence_factor
@@ -80,6 +79,8 @@ class PhotoRow:
         Factor either way by which the yield is uncertain.
     above_last_point : str or None
         What holds above the last point: "hold" or "x-ray absorption".
+    electron_energies : str or None
+        "photons", or the law that the record prescribes.
     photo_escape : str
         Geometry of escape: auto, planar, point source.
     photoelectron_debye_length_m, photoelectron_density_m3 : float or None
@@ -103,6 +104,7 @@ class PhotoRow:
     source: str | None = None
     spread_factor: float | None = None
     above_last_point: str | None = None
+    electron_energies: str | None = None
     photo_escape: str
     photoelectron_debye_length_m: float | None = None
     photoelectron_density_m3: float | None = None
@@ -119,6 +121,7 @@ class SunlightOptions(TypedDict, total=False):
     surface_state: str
     photo_escape: str
     radius_m: float
+    flare: Mapping[str, float]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -139,14 +142,17 @@ class Sunlight:
         Geometry of escape; auto: between the two by Debye length and `radius_m`.
     radius_m : float
         Radius of the body [m], above 0, up to 1000; for auto.
+    flare : mapping of str to float
+        Factor on the photons by band of the spectrum.
     """
 
     distance_au: float = 1.0
     f107: float = 150.0
     incidence_cosine: float = 1.0
     surface_state: str = "as recorded"
-    photo_escape: str = "planar"
+    photo_escape: str = "auto"
     radius_m: float = 1.0
+    flare: Mapping[str, float] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         as_number("incidence_cosine", self.incidence_cosine, at_least=0.0, high=1.0)
@@ -156,7 +162,9 @@ class Sunlight:
     def spectrum(self) -> SolarSpectrum:
         """Return the solar spectrum; InputError for a distance or activity out of range."""
         try:
-            return solar_spectrum(f107=self.f107, distance_au=self.distance_au)
+            return solar_spectrum(
+                f107=self.f107, distance_au=self.distance_au, band_factors=self.flare
+            )
         except EnvironmentDataError as error:
             raise from_environment(error) from None
 
@@ -211,8 +219,8 @@ def photoyield_table(
 
 def retarding_curves(
     materials: Sequence[Material | str], potential_V: Array, **sunlight: Unpack[SunlightOptions]
-) -> dict[str, Array]:
-    """Photocurrent density that still escapes at positive potentials, by material name.
+) -> tuple[Array | None, ...]:
+    """Photocurrent density that still escapes at positive potentials.
 
     Parameters
     ----------
@@ -223,23 +231,24 @@ def retarding_curves(
 
     Returns
     -------
-    dict of str to ndarray [N]
-        [A m-2], >= 0; materials that emit nothing are left out.
+    tuple of (ndarray [N] or None)
+        [A m-2], >= 0, in the order of `materials`; None for one that emits nothing.
 
     Examples
     --------
-    >>> curve = retarding_curves(["gold"], np.array([0.0, 5.0]))["gold"]
+    >>> (curve,) = retarding_curves(["gold"], np.array([0.0, 5.0]))
     >>> bool(curve[0] > 10.0 * curve[1] > 0.0)
     True
     """
     light = Sunlight(**sunlight)
     spectrum = light.spectrum()
-    curves = {}
-    for material in map(light.material, materials):
-        if material.photoyield is not None:
-            escaping = _escape(potential_V, material, spectrum, light)
-            curves[material.name] = light.current_A_m2(material, spectrum) * escaping
-    return curves
+    return tuple(
+        None
+        if material.photoyield is None
+        else light.current_A_m2(material, spectrum)
+        * _escape(potential_V, material, spectrum, light)
+        for material in map(light.material, materials)
+    )
 
 
 def photocurrent_grid(
@@ -301,7 +310,8 @@ def _bands(material: Material, spectrum: SolarSpectrum, light: Sunlight) -> tupl
     emitted = emission_spectrum(spectrum.photon_energy_eV, spectrum.photon_flux_m2_s, curve)
     band = np.array(spectrum.band)
     current = light.current_A_m2(material, spectrum)
-    shares = [float(emitted[band == name].sum() / emitted.sum()) for name in BANDS]
+    whole = float(emitted.sum())
+    shares = [float(emitted[band == name].sum()) / whole if whole else 0.0 for name in BANDS]
     return tuple(
         BandShare(name, share * current, share) for name, share in zip(BANDS, shares, strict=True)
     )
@@ -316,32 +326,28 @@ def _row(material: Material, spectrum: SolarSpectrum, light: Sunlight) -> PhotoR
             saturation_current_A_m2=0.0,
             photo_escape=light.photo_escape,
         )
-    sheath = photo_sheath(material, spectrum)
-    if sheath is None:
-        raise InputError(
-            f'material "{material.name}": no photon of the solar spectrum exceeds the threshold',
-            key=("photoyield",),
-            value=curve.threshold_eV,
-        )
+    sheath = photo_sheath(material, spectrum)  # None: no photon exceeds the threshold
+    lit = sheath is not None
     return PhotoRow(
         material=material.name,
         surface_state=light.surface_state,
         threshold_eV=curve.threshold_eV,
         threshold_nm=NM_EV / curve.threshold_eV,
         saturation_current_A_m2=light.current_A_m2(material, spectrum),
-        potential_at_1_percent_V=_potential_at(0.01, material, spectrum, light),
-        potential_at_0p1_percent_V=_potential_at(0.001, material, spectrum, light),
-        mean_energy_eV=sheath.mean_energy_eV,
+        potential_at_1_percent_V=_potential_at(0.01, material, spectrum, light) if lit else None,
+        potential_at_0p1_percent_V=_potential_at(0.001, material, spectrum, light) if lit else None,
+        mean_energy_eV=None if sheath is None else sheath.mean_energy_eV,
         upper_photon_energy_eV=float(curve.photon_energy_eV[-1]),
         basis=curve.basis,
         level=curve.level,
         source=curve.source,
         spread_factor=curve.spread_factor,
         above_last_point=curve.above_last_point,
+        electron_energies="photons" if curve.energies is None else curve.energies.law,
         photo_escape=light.photo_escape,
-        photoelectron_debye_length_m=sheath.debye_length_m,
-        photoelectron_density_m3=sheath.density_m3,
-        point_source_share=_point_share(sheath, light),
+        photoelectron_debye_length_m=None if sheath is None else sheath.debye_length_m,
+        photoelectron_density_m3=None if sheath is None else sheath.density_m3,
+        point_source_share=None if sheath is None else _point_share(sheath, light),
         bands=_bands(material, spectrum, light),
     )
 

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, replace
 from types import MappingProxyType
 
 import numpy as np
@@ -19,7 +19,7 @@ from charging.arguments import (
 )
 from charging.currents.balance import SEARCH_V, Root, breakdown, floating_potentials
 from charging.currents.collection import COLLECTIONS, sheath_weight
-from charging.currents.emission import SECONDARY_LAWS
+from charging.currents.emission import SECONDARY_LAWS, law_of
 from charging.currents.photo_escape import (
     PHOTO_GEOMETRIES,
     photo_sheath,
@@ -35,10 +35,10 @@ from charging.currents.surface import (
 )
 from charging.errors import NoSolutionError
 from environments.errors import EnvironmentDataError
-from environments.plasma import Plasma
+from environments.plasma import Plasma, moments, warnings_of
 from environments.spectrum import SolarSpectrum, solar_spectrum
 from materials.record import EMISSION_NEEDED, EMISSION_OPTIONAL, Material
-from materials.secondary import YieldLaw
+from materials.secondary import YIELD_LAWS, YieldLaw, fitted_range_eV
 
 Array = NDArray[np.float64]
 
@@ -157,9 +157,10 @@ def floating_point(
     radius_m: float = 1.0,
     distance_au: float = 1.0,
     f107: float = 150.0,
-    law: str = "sanders_inouye_1979",
+    law: str | None = None,
     surface_state: str = "as recorded",
     photo_escape: str = "auto",
+    flare: Mapping[str, float] | None = None,
 ) -> PointResult:
     """Find every floating potential of a one-sided patch without conduction.
 
@@ -180,11 +181,14 @@ def floating_point(
     f107 : float, optional
         Solar radio flux at 10.7 cm and its 81-day mean [1e-22 W m-2 Hz-1], 50 to 500.
     law : str, optional
-        Secondary-emission law, "sanders_inouye_1979" or "lin_joy_2005".
+        Secondary-emission law, one of `materials.secondary.YIELD_LAWS`; default: the one that
+        the material's record chooses, else "sanders_inouye_1979".
     surface_state : {"as recorded", "clean", "air-exposed", "aged"}, optional
         State of the surface for photoemission, see `materials.surface_state`.
     photo_escape : {"auto", "planar", "point source"}, optional
         How photoelectrons leave a positive surface; auto blends by their Debye length.
+    flare : mapping of str to float, optional
+        Factor on the photons by band of the spectrum.
 
     Returns
     -------
@@ -211,12 +215,15 @@ def floating_point(
     record = in_surface_state(as_material(material), surface_state)
     surrounding = as_plasma(plasma)
     as_choice("photo_escape", photo_escape, PHOTO_GEOMETRIES)
-    chosen = _law(law)
+    if law is not None:  # overrides the choice of the record
+        rest = {key: value for key, value in record.laws.items() if key != "secondary_law"}
+        record = replace(record, laws=rest)
+    chosen = _law(law, record)
     as_choice("collection", collection, COLLECTIONS)
     radius = as_number("radius_m", radius_m, above=0.0, high=LARGEST_RADIUS_M)
     cosine = as_number("incidence_cosine", incidence_cosine, at_least=0.0, high=1.0)
     try:
-        spectrum = solar_spectrum(f107=f107, distance_au=distance_au)
+        spectrum = solar_spectrum(f107=f107, distance_au=distance_au, band_factors=flare)
     except EnvironmentDataError as error:
         raise from_environment(error) from None
     light = cosine if sunlit else 0.0
@@ -268,7 +275,10 @@ def floating_point(
         else None,
         other_laws_reached_V=MappingProxyType(others),
         curve=_curve(mine, found.roots, light),
-        notes=_notes(record, surrounding, found.roots, light, collection),
+        notes=(
+            *_law_notes(record, surrounding, chosen, found.reached_V, others),
+            *_notes(record, surrounding, found.roots, light, collection),
+        ),
     )
 
 
@@ -294,9 +304,49 @@ def _photoelectrons(
     )
 
 
-def _law(law: str) -> YieldLaw:
-    as_choice("law", law, SECONDARY_LAWS)
-    return next(known for known in SECONDARY_LAWS if known == law)
+def _law(law: str | None, material: Material) -> YieldLaw:
+    if law is None:
+        return law_of(material, SECONDARY_LAWS[0])
+    as_choice("law", law, YIELD_LAWS)
+    return next(known for known in YIELD_LAWS if known == law)
+
+
+CHARGED_V = -100.0
+"""Below this a surface counts as charged when two laws are compared."""
+
+
+def _law_notes(
+    material: Material,
+    plasma: Plasma,
+    law: YieldLaw,
+    reached_V: float,
+    others: Mapping[str, float | None],
+) -> Iterator[str]:
+    """What the choice of the secondary law means here, and of the spectra."""
+    for other, volts in others.items():
+        if volts is None or (reached_V < CHARGED_V) == (volts < CHARGED_V):
+            continue
+        charges, leaves = (law, other) if reached_V < CHARGED_V else (other, law)
+        worst = min(reached_V, volts)
+        yield (
+            f"{charges} charges it to {worst:.0f} V, {leaves} leaves it uncharged: the law "
+            "decides, take the worse"
+        )
+    if material.emits:
+        low, high = fitted_range_eV(law, material.value("secondary_yield_peak_energy_eV"))
+        arriving = [
+            energy
+            for energy, p in zip(
+                moments(plasma)["flux_mean_energy_eV"], plasma.populations, strict=True
+            )
+            if p.species.charge_number < 0
+        ]
+        if max(arriving) > high:
+            yield (
+                f"electrons of {max(arriving):.3g} eV on average: beyond the {low:.3g} to "
+                f"{high:.3g} eV to which {law} was fitted"
+            )
+    yield from (f'plasma "{plasma.name}": {warning}' for warning in warnings_of(plasma))
 
 
 def _curve(model: SurfaceModel, roots: tuple[Root, ...], light: float) -> CurrentCurve:

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import json
 import os
+import re
 import shutil
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -11,7 +13,11 @@ from pathlib import Path
 from charging.errors import InputError
 
 MARK = "summary.json"
-"""Every result folder holds this file; a folder without it is not ours to replace."""
+"""Every result folder holds this file, with the key `PROGRAM`."""
+
+PROGRAM = "halflit_version"
+OWN = re.compile(r"summary\.json|surfaces\.csv|result(_\d+)?(_[a-z_0-9]+)?(\.nc)?|[a-z]+\.png")
+"""Names that a run writes; a folder with anything else is not ours to replace."""
 
 
 def check_target(target: Path) -> None:
@@ -22,7 +28,7 @@ def check_target(target: Path) -> None:
     InputError
         As `result_folder`.
     """
-    target = target.absolute()
+    target = target.resolve()
     if target.exists():
         _refuse_foreign(target)
     standing = next(p for p in target.parents if p.exists())
@@ -46,7 +52,7 @@ def result_folder(target: Path) -> Iterator[Path]:
     InputError
         The target exists and is no result folder, or the place cannot be written.
     """
-    target = target.absolute()
+    target = target.resolve()  # a link stays a link to the new result
     partial = target.with_name(f".{target.name}.partial")
     previous = target.with_name(f".{target.name}.previous")
     try:
@@ -65,7 +71,7 @@ def result_folder(target: Path) -> Iterator[Path]:
         if target.exists():
             target.rename(previous)
         partial.rename(target)
-    except OSError as error:
+    except (OSError, RuntimeError) as error:  # the HDF library reports a full disk as RuntimeError
         raise _unwritable(target, error) from error
     finally:
         shutil.rmtree(partial, ignore_errors=True)
@@ -76,13 +82,31 @@ def result_folder(target: Path) -> Iterator[Path]:
 def _refuse_foreign(target: Path) -> None:
     if not target.is_dir():
         raise InputError(f"--out {target}: is a file", allowed="a folder that may be (re)placed")
-    if any(target.iterdir()) and not (target / MARK).is_file():
-        raise InputError(
-            f"--out {target}: exists and holds no {MARK}, so it is not a result folder",
-            allowed="a new name, an empty folder or an earlier result",
-        )
+    names = sorted(entry.name for entry in target.iterdir())
+    if not names:
+        return
+    strange = [name for name in names if not OWN.fullmatch(name)]
+    if strange:
+        reason = f"holds {strange[0]}, which no run wrote"
+    elif not _is_ours(target / MARK):
+        reason = f"holds no {MARK} of this program"
+    else:
+        return
+    raise InputError(
+        f"--out {target}: exists and {reason}, so it is not replaced",
+        allowed="a new name, an empty folder or an earlier result",
+    )
 
 
-def _unwritable(target: Path, error: OSError) -> InputError:
-    reason = os.strerror(error.errno) if error.errno else str(error)
+def _is_ours(mark: Path) -> bool:
+    try:
+        document = json.loads(mark.read_text(encoding="utf-8"))
+    except (OSError, ValueError):
+        return False
+    return isinstance(document, dict) and PROGRAM in document
+
+
+def _unwritable(target: Path, error: OSError | RuntimeError) -> InputError:
+    code = getattr(error, "errno", None)
+    reason = os.strerror(code) if code else str(error)
     return InputError(f"--out {target}: cannot be written ({reason})", allowed="a writable place")

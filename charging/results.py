@@ -10,13 +10,14 @@ from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import Any
 
+from charging import __version__
 from charging.case import LoadedCase
 from charging.clock import iso_time
 from charging.dataset import mode_dataset, warnings_of
 from charging.orbit_run import CaseRun, ModeRun
 from charging.result_folder import result_folder
 from charging.review.limits import UNITS
-from charging.review.sentences import sentence, unmet
+from charging.review.sentences import first_fixes, not_assessable, sentence, unmet
 from charging.summary import Judgement, ModeSummary, Peak, case_summaries, worst
 
 CSV_COLUMNS = (
@@ -34,9 +35,18 @@ CSV_COLUMNS = (
 )
 
 
-def result_name(number: int) -> str:
-    """File of a mode: the base is result.nc, alternatives are numbered from 1."""
-    return "result.nc" if number == 0 else f"result_{number:02d}.nc"
+def result_name(number: int, law: str | None = None) -> str:
+    """File of a mode: the base is result.nc, alternatives are numbered from 1.
+
+    `law` is given for every emission law but the nominal one.
+
+    Examples
+    --------
+    >>> result_name(0), result_name(2), result_name(1, "lin_joy_2005")
+    ('result.nc', 'result_02.nc', 'result_01_lin_joy_2005.nc')
+    """
+    stem = "result" if number == 0 else f"result_{number:02d}"
+    return f"{stem}.nc" if law is None else f"{stem}_{law}.nc"
 
 
 def limit_row(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> dict[str, Any]:
@@ -49,14 +59,14 @@ def limit_row(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> dict[s
         "kind": requirement.kind,
         "requirement_id": requirement.requirement_id,
         "mode": judgement.mode,
-        "plasma": mode.plasma_at(judgement.peak.time_s).name,
+        "plasma": mode.plasma_at(judgement.peak.time_s).name if stand.value else None,
         "age": "begin",
         "value": stand.value,
         "allowed": requirement.limit,
         "unit": UNITS[requirement.kind],
         "margin": stand.margin,
         "margin_dB": stand.margin_dB,
-        "time": _moment(loaded, judgement.peak),
+        "time": _moment_of(loaded, judgement.peak),
         "clause": requirement.clause or None,
         "law": judgement.peak.law,
         "verdict": judgement.verdict,
@@ -76,11 +86,12 @@ def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> di
                 "lowest_V": peaks.lowest.value,
                 "highest_V": peaks.highest.value,
                 "worst_normal_V": peaks.normal.value,
-                "worst_normal_time": _moment(loaded, peaks.normal),
+                "worst_normal_time": _moment_of(loaded, peaks.normal),
                 "worst_inverted_V": peaks.inverted.value,
-                "worst_inverted_time": _moment(loaded, peaks.inverted),
+                "worst_inverted_time": _moment_of(loaded, peaks.inverted),
                 "largest_field_V_m": peaks.field.value,
                 "verdict": worst([j.verdict for j in judged]),
+                "bonded": peaks.bonded,
                 "limits": [limit_row(loaded, mode, j) for j in judged],
             }
         )
@@ -96,12 +107,14 @@ def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> di
         "steady_after_s": summary.steady_s,
         "verdict": summary.verdict,
         "sentences": sentences(loaded, mode, summary),
+        "first_fixes": first_fixes(loaded, summary.judgements),
     }
 
 
 def sentences(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> list[str]:
-    """One sentence per limit that is not met, the worst first."""
-    return [sentence(loaded, mode, j) for j in unmet(summary.judgements)]
+    """One sentence per limit exceeded, the worst first; then what could not be assessed."""
+    exceeded = [sentence(loaded, mode, j) for j in unmet(summary.judgements)]
+    return exceeded + not_assessable(summary.judgements)
 
 
 def eclipse_rows(loaded: LoadedCase, mode: ModeRun) -> list[dict[str, Any]]:
@@ -135,6 +148,7 @@ def summary_document(
     warnings = list(dict.fromkeys(w for mode in run.modes for w in warnings_of(run.loaded, mode)))
     return {
         "title": run.loaded.case.title,
+        "halflit_version": __version__,
         "case_sha256": run.loaded.sha256,
         "verdict": worst([s.verdict for s in summaries]),
         "laws": list(run.modes[0].laws),
@@ -145,6 +159,10 @@ def summary_document(
             {
                 "mode": mode.name,
                 "result": result_name(i),
+                "results_by_law": {
+                    law: result_name(i, law if member else None)
+                    for member, law in enumerate(mode.laws)
+                },
                 "charge_audit_relative": audit,
                 **document,
             }
@@ -181,11 +199,15 @@ def write_results(run: CaseRun, target: Path, *, plots: bool = True) -> dict[str
     with result_folder(target) as folder:
         audits = []
         for i, mode in enumerate(run.modes):
-            dataset = mode_dataset(run, mode)
-            audits.append(float(dataset.attrs["charge_audit_relative"]))
-            dataset.to_netcdf(folder / result_name(i), engine="netcdf4", format="NETCDF4")
-            if plots:
-                plot_all(dataset, folder if i == 0 else folder / Path(result_name(i)).stem)
+            found = []
+            for member, law in enumerate(mode.laws):
+                dataset = mode_dataset(run, mode, member)
+                found.append(float(dataset.attrs["charge_audit_relative"]))
+                name = result_name(i, law if member else None)
+                dataset.to_netcdf(folder / name, engine="netcdf4", format="NETCDF4")
+                if plots and member == 0:
+                    plot_all(dataset, folder if i == 0 else folder / Path(name).stem)
+            audits.append(max(found))
         document = summary_document(run, summaries, audits)
         (folder / "surfaces.csv").write_text(surfaces_csv(document), encoding="utf-8")
         text = json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
@@ -204,3 +226,8 @@ def _flush(files: Iterable[Path]) -> None:
 
 def _moment(loaded: LoadedCase, peak: Peak) -> str:
     return iso_time(loaded.case.epoch, peak.time_s)
+
+
+def _moment_of(loaded: LoadedCase, peak: Peak) -> str | None:
+    """Time of a difference, null where there never was one."""
+    return _moment(loaded, peak) if peak.value else None

@@ -4,6 +4,7 @@ from collections.abc import Mapping, Sequence
 
 from charging.case_tables import Case, Surface
 from charging.network.nodes import Face, Network, network
+from materials.library import load_material
 from materials.record import Material
 from materials.surface_state import in_state
 
@@ -42,9 +43,13 @@ def spacecraft_network(case: Case, materials: Mapping[str, Material]) -> Network
 
 def surface_materials(case: Case, materials: Mapping[str, Material]) -> Sequence[Material]:
     """Materials in the order of the surfaces, each in the state its surface asks for."""
+
+    def kept(name: str) -> Material:
+        return materials[name] if name in materials else load_material(name)
+
     states: dict[tuple[str, str], Material] = {}
     for s in case.surface:
         key = (s.material, s.surface_state)
         if key not in states:
-            states[key] = in_state(materials[s.material], s.surface_state)
+            states[key] = in_state(materials[s.material], s.surface_state, load=kept)
     return tuple(states[s.material, s.surface_state] for s in case.surface)

@@ -30,7 +30,8 @@ class SurfacePeaks:
     """Extremes of one surface over the laws of a mode.
 
     lowest, highest : absolute potential [V]; normal, inverted : lowest and highest of
-    surface minus structure [V]; field : largest |field| in the dielectric, signed [V/m].
+    surface minus structure [V]; field : largest |field| in the dielectric, signed [V/m];
+    bonded : part of structure.
     """
 
     surface: str
@@ -40,6 +41,7 @@ class SurfacePeaks:
     normal: Peak
     inverted: Peak
     field: Peak
+    bonded: bool
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,6 +122,7 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
                 normal=peak(difference, False),
                 inverted=peak(difference, True),
                 field=high if abs(high.value) >= abs(low.value) else low,
+                bonded=bool(node == 0),
             )
         )
     structure = [v[:, 0] for v in absolute]
@@ -139,6 +142,13 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
         verdict=worst([j.verdict for j in judgements]),
         steady_s=_steady(times, absolute, loaded.case.duration_s),
     )
+
+
+def peak_times_s(mode: ModeRun, member: int) -> Array:
+    """Times [s] at which an absolute or differential potential of one law is extreme."""
+    times, states = _samples(mode, member)
+    quantities = mode.balance.controlled(states)
+    return np.unique(times[np.concatenate([quantities.argmin(axis=0), quantities.argmax(axis=0)])])
 
 
 def _samples(mode: ModeRun, member: int) -> tuple[Array, Array]:

@@ -63,8 +63,9 @@ class Surroundings:
     Attributes
     ----------
     knots_s : ndarray [K]
-    table : ndarray [K, 2S]
-        Illumination times incidence cosine of each surface, then their temperatures [K].
+    table : ndarray [K, 2S+1]
+        Illumination times incidence cosine of each surface, their temperatures [K], then the
+        illumination.
     episodes : tuple of Episode
     plasma_count : int
     breaks_s : tuple of float
@@ -92,7 +93,8 @@ class Surroundings:
         """Plasma shares [m, P] and light [m, S], and surface temperatures [K, m, S]."""
         both = self._blend(time_s)
         surfaces = both.shape[-1] // 2
-        return Setting(self.strength(time_s), both[..., :surfaces]), both[..., surfaces:]
+        setting = Setting(self.strength(time_s), both[..., :surfaces], both[..., -1:])
+        return setting, both[..., surfaces:-1]
 
     def strength(self, time_s: Array) -> Array:
         """Share of each plasma [m, P] at times [m], adding to 1.
@@ -243,7 +245,13 @@ def surroundings(case: Case, mode: Mode | None, episodes: Sequence[Episode]) -> 
         breaks |= {event.onset_s, rise_end, rise_end + event.hold_s}
     return Surroundings(
         knots_s=knots,
-        table=np.hstack([light, _temperatures(case.surface, knots, shot.illumination)]),
+        table=np.hstack(
+            [
+                light,
+                _temperatures(case.surface, knots, shot.illumination),
+                shot.illumination[:, None],
+            ]
+        ),
         episodes=tuple(episodes),
         plasma_count=1 + max((event.plasma for event in episodes), default=0),
         breaks_s=tuple(sorted(t for t in breaks if 0.0 < t < end)),
@@ -254,12 +262,12 @@ def surroundings(case: Case, mode: Mode | None, episodes: Sequence[Episode]) -> 
 def output_times(case: Case, around: Surroundings) -> Array:
     """Output grid [s]: start + k·step and the end, 1 s steps around eclipse contacts.
 
-    Without an orbit the first step is refined from a millisecond on, twenty times a
-    decade: it holds the charging of structure.
+    After an uncharged start the first step is refined from a millisecond on, twenty times
+    a decade: it holds the charging of structure.
     """
     end, step = case.duration_s, case.time.output_step_s
     grid = np.append(np.arange(case.output_times - 1) * step, end)
-    if isinstance(case.orbit, OrbitFixed) and step > FIRST_OUTPUT_S:
+    if case.time.start == "uncharged" and step > FIRST_OUTPUT_S:
         decades = np.log10(step / FIRST_OUTPUT_S)
         grid = np.union1d(grid, np.geomspace(FIRST_OUTPUT_S, step, round(20 * decades) + 1))
     fine = [

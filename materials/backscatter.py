@@ -329,8 +329,9 @@ def isotropic_by_atomic_number(
     if angle == "darlington_cosslett_1972":
         coefficient = backscatter_angle_coefficient(mean_atomic_number)
     elif angle == "darlington_1975":
-        # 0.891 (eta/0.891)^mu is exponential too, with this coefficient
-        coefficient = np.log(_GRAZING / normal)
+        # 0.891 (eta/0.891)^mu is exponential too, with this coefficient; 0 matters only
+        # beyond 1e9 eV, where the fit of heavy elements would pass 0.891
+        coefficient = np.maximum(np.log(_GRAZING / normal), 0.0)
     else:
         raise ValueError(f"angle law {angle!r} is unknown; allowed: {', '.join(ANGLE_LAWS)}")
     return np.asarray(normal * exponential_angle_factor(coefficient))

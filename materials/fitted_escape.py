@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
@@ -11,6 +12,53 @@ from materials.errors import finite_array
 
 EscapeGeometry = Literal["planar", "point source"]
 GEOMETRIES: tuple[EscapeGeometry, ...] = ("planar", "point source")
+FITTED_LAWS = ("maxwellian", "two exponentials")
+
+
+@dataclass(frozen=True, slots=True)
+class FittedEnergies:
+    """Energies of photoelectrons that a record prescribes, instead of those from photons.
+
+    Attributes
+    ----------
+    law : str
+        One of `FITTED_LAWS`.
+    source, basis : str
+    temperature_eV : float
+        T of the Maxwellian [eV].
+    current_uA_m2, scale_V : tuple of float
+        Terms of the exponentials [uA m-2], [V]; only the ratios of the currents count.
+    """
+
+    law: str
+    source: str
+    basis: str
+    temperature_eV: float = 0.0
+    current_uA_m2: tuple[float, ...] = ()
+    scale_V: tuple[float, ...] = ()
+
+    @property
+    def mean_energy_eV(self) -> float:
+        """Mean energy [eV]: 2 T; of exponentials as planar escape, twice their mean scale.
+
+        Examples
+        --------
+        >>> FittedEnergies("maxwellian", "own", "assumed", temperature_eV=1.5).mean_energy_eV
+        3.0
+        """
+        if self.law == "maxwellian":
+            return 2.0 * self.temperature_eV
+        return float(2.0 * np.average(self.scale_V, weights=self.current_uA_m2))
+
+    def escape(self, potential_V: ArrayLike, geometry: EscapeGeometry) -> NDArray[np.float64]:
+        """Share that escapes at V; a fit of exponentials holds for the body it was fitted to."""
+        if self.law == "maxwellian":
+            return maxwellian_escape(
+                potential_V, temperature_eV=self.temperature_eV, geometry=geometry
+            )
+        return two_exponential_escape(
+            potential_V, current_A_m2=self.current_uA_m2, scale_V=self.scale_V
+        )
 
 
 def maxwellian_escape(

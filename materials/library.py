@@ -142,4 +142,22 @@ def read_material(document: Mapping[str, object]) -> Material:
     >>> read_material({"name": "ideal collector", "kind": "conductor", "emits": False}).emits
     False
     """
-    return material_from(document)
+    material = material_from(document)
+    for state, record in material.surface_states.items():
+        if record.curve_of is not None:
+            _refuse_no_curve(("surface_state", state, "curve_of"), record.curve_of)
+    return material
+
+
+def _refuse_no_curve(key: tuple[str, ...], name: str) -> None:
+    """Refuse a name that is none of a library material with a photoyield."""
+    try:
+        text = library_text(name)
+    except MaterialError as error:
+        raise MaterialError(
+            key, name, "is unknown", allowed=error.allowed, nearest=error.nearest
+        ) from None
+    if "photoyield" not in tomllib.loads(text):
+        raise MaterialError(
+            key, name, "emits nothing", allowed="a library material with a photoyield"
+        )

@@ -42,8 +42,14 @@ def fowler_function(x: ArrayLike) -> NDArray[np.float64]:
     True
     """
     x = finite_array("x", x)
-    # spence(1 + e^-|x|) = Li2(-e^-|x|); the identity of the dilogarithm joins the sides
-    low = -spence(1.0 + np.exp(-np.abs(x)))
+    # spence(1 + e^-|x|) = Li2(-e^-|x|); the identity of the dilogarithm joins the sides.
+    # Where 1 + t has lost digits of t = e^-|x|, Fowler's own series: 40 terms below 1/e
+    t = np.exp(-np.abs(x))
+    small = np.where(t < np.exp(-1.0), t, 0.0)
+    series = np.zeros_like(small)
+    for n in range(40, 0, -1):
+        series = small * ((1.0 if n % 2 else -1.0) / n**2 + series)
+    low = np.where(t < np.exp(-1.0), series, -spence(1.0 + t))
     return np.asarray(np.where(x <= 0.0, low, np.pi**2 / 6.0 + 0.5 * x**2 - low))
 
 

@@ -17,7 +17,8 @@ from materials.entries import (
     text_at,
 )
 from materials.errors import MaterialError
-from materials.photo_laws import law_yield
+from materials.fitted_escape import FITTED_LAWS, FittedEnergies
+from materials.photo_laws import fowler_dubridge, law_yield
 from materials.record import (
     ABOVE_LAST_POINT,
     BASES,
@@ -25,6 +26,7 @@ from materials.record import (
     PHOTOYIELD_LEVELS,
     SURFACE_STATES,
     YIELD_COUNTS,
+    MeasuredCurrent,
     PhotoYield,
     Samples,
     SurfaceState,
@@ -32,6 +34,8 @@ from materials.record import (
 
 WHERE = "photoyield"
 LAW_SAMPLES = 60
+SMALLEST_YIELD, LARGEST_YIELD = 1e-30, 10.0
+LOWEST_EDGE_EV, HIGHEST_EDGE_EV = 1.0, 1e5
 _TABLE_KEYS = ("photon_energy_eV", "electrons_per_photon")
 _LAW_KEYS = ("threshold_eV", "electrons_per_photon_at_1_eV", "upper_photon_energy_eV")
 _OWN_KEYS = {
@@ -54,6 +58,8 @@ _COMMON_KEYS = (
     "counts",
     "reflectance",
     "largest_angle_growth",
+    "electron_energies",
+    "normalised_to",
     "note",
 )
 _STATE_KEYS = ("curve_of", "barrier_shift_eV", "source", "basis", "note")
@@ -68,9 +74,9 @@ def photoyield_from(entry: object) -> PhotoYield:
     if law == "table":
         energy, emitted = _points(table)
     else:
-        threshold = _within(table, "threshold_eV", 1.0, 20.0)
-        upper = _within(table, "upper_photon_energy_eV", threshold, 1e5, above=True)
-        at_1_eV = _within(table, "electrons_per_photon_at_1_eV", 0.0, 10.0, above=True)
+        threshold = _within(table, "threshold_eV", LOWEST_EDGE_EV, 20.0)
+        upper = _within(table, "upper_photon_energy_eV", threshold, HIGHEST_EDGE_EV, above=True)
+        at_1_eV = _within(table, "electrons_per_photon_at_1_eV", SMALLEST_YIELD, LARGEST_YIELD)
         if law == "power":
             # Kane 1967: 1 to 5/2 by the way of excitation and scattering
             exponent = _within(table, "exponent", 1.0, 2.5)
@@ -81,6 +87,7 @@ def photoyield_from(entry: object) -> PhotoYield:
         points[-1] = upper
         energy = points.tolist()
         emitted = law_yield(points, threshold, at_1_eV, exponent=exponent).tolist()
+        _law_within(upper, threshold, at_1_eV, exponent, temperature)
     above = (
         choice_at(table, (WHERE, "above_last_point"), ABOVE_LAST_POINT)
         if "above_last_point" in table
@@ -114,9 +121,9 @@ def photoyield_from(entry: object) -> PhotoYield:
         level=choice_at(table, (WHERE, "level"), PHOTOYIELD_LEVELS),
         spread_factor=factor,
         near_threshold_factor=_factor(table, "near_threshold_factor", factor),
-        near_threshold_to_eV=number_at(table, (WHERE, near)) if near in table else energy[0],
+        near_threshold_to_eV=_edge(table, near, energy[0]),
         high_energy_factor=_factor(table, "high_energy_factor", factor),
-        high_energy_from_eV=number_at(table, (WHERE, high)) if high in table else energy[-1],
+        high_energy_from_eV=_edge(table, high, energy[-1]),
         note=text_at(table, (WHERE, "note")) if "note" in table else "",
         law=law,
         electrons_per_photon_at_1_eV=at_1_eV,
@@ -127,6 +134,8 @@ def photoyield_from(entry: object) -> PhotoYield:
         counts=counts,
         reflectance=reflectance,
         largest_angle_growth=_within(table, growth, 1.0, 5.0) if growth in table else 1.0,
+        energies=_energies(table),
+        normalised_to=_measured(table),
     )
 
 
@@ -170,14 +179,24 @@ def _points(table: Table) -> tuple[list[float], list[float]]:
             (WHERE, "photon_energy_eV"), len(energy), "is too few points", allowed="at least 3"
         )
     _rising(energy, (WHERE, "photon_energy_eV"))
+    if energy[0] < LOWEST_EDGE_EV:
+        raise MaterialError(
+            (WHERE, "photon_energy_eV", 0),
+            energy[0],
+            "is too low for a threshold",
+            allowed=f"at least {LOWEST_EDGE_EV:g} eV",
+        )
     if emitted[0] != 0.0:
         raise MaterialError(
             (WHERE, "electrons_per_photon", 0), emitted[0], "is not 0", allowed="0 at the threshold"
         )
     for index, number in enumerate(emitted[1:], start=1):
-        if not 0.0 < number <= 10.0:
+        if not SMALLEST_YIELD <= number <= LARGEST_YIELD:
             raise MaterialError(
-                (WHERE, "electrons_per_photon", index), number, "is out of range", allowed="0 to 10"
+                (WHERE, "electrons_per_photon", index),
+                number,
+                "is out of range",
+                allowed=f"{SMALLEST_YIELD:g} to {LARGEST_YIELD:g}",
             )
     return energy, emitted
 
@@ -233,6 +252,82 @@ def _within(table: Table, key: str, low: float, high: float, *, above: bool = Fa
             (WHERE, key), number, "is out of range", allowed=f"{first}{low:g} to {high:g}"
         )
     return number
+
+
+def _edge(table: Table, key: str, default: float) -> float:
+    return _within(table, key, LOWEST_EDGE_EV, HIGHEST_EDGE_EV) if key in table else default
+
+
+def _law_within(
+    upper: float, threshold: float, at_1_eV: float, exponent: float, temperature_K: float
+) -> None:
+    """Refuse a law that gives more than tables may hold."""
+    if temperature_K > 0.0:
+        largest = fowler_dubridge(
+            upper,
+            threshold_eV=threshold,
+            electrons_per_photon_at_1_eV=at_1_eV,
+            temperature_K=temperature_K,
+        )
+    else:
+        largest = law_yield(upper, threshold, at_1_eV, exponent=exponent)
+    if float(largest) > LARGEST_YIELD:
+        raise MaterialError(
+            (WHERE, "upper_photon_energy_eV"),
+            upper,
+            f"takes the law to {float(largest):.3g} electrons per photon",
+            allowed=f"where the law gives at most {LARGEST_YIELD:g}",
+        )
+
+
+def _energies(table: Table) -> FittedEnergies | None:
+    """Return the prescribed energies of the electrons; None: those from photons."""
+    key = "electron_energies"
+    if key not in table:
+        return None
+    path: Path = (WHERE, key)
+    entry = table_at(table[key], path)
+    law = choice_at(entry, (*path, "law"), FITTED_LAWS)
+    own = ("temperature_eV",) if law == "maxwellian" else ("current_uA_m2", "scale_V")
+    refuse_unknown(entry, ("law", *own, "source", "basis"), path)
+    source = text_at(entry, (*path, "source"))
+    basis = choice_at(entry, (*path, "basis"), BASES)
+    if law == "maxwellian":
+        temperature = number_at(entry, (*path, "temperature_eV"))
+        _in_range(temperature, 0.05, 100.0, (*path, "temperature_eV"))
+        return FittedEnergies(law, source, basis, temperature_eV=temperature)
+    current = numbers_at(entry, (*path, "current_uA_m2"))
+    scale = numbers_at(entry, (*path, "scale_V"))
+    if len(current) != 2:
+        raise MaterialError(
+            (*path, "current_uA_m2"), len(current), "is no pair", allowed="two numbers"
+        )
+    if len(scale) != 2:
+        raise MaterialError((*path, "scale_V"), len(scale), "is no pair", allowed="two numbers")
+    for i in range(2):
+        _in_range(current[i], 1e-6, 1e6, (*path, "current_uA_m2", i))
+        _in_range(scale[i], 0.05, 100.0, (*path, "scale_V", i))
+    return FittedEnergies(law, source, basis, current_uA_m2=tuple(current), scale_V=tuple(scale))
+
+
+def _measured(table: Table) -> MeasuredCurrent | None:
+    """Return the measured current to which the record wants its curve scaled."""
+    key = "normalised_to"
+    if key not in table:
+        return None
+    path: Path = (WHERE, key)
+    entry = table_at(table[key], path)
+    refuse_unknown(entry, ("saturation_current_uA_m2", "f107", "source"), path)
+    current = number_at(entry, (*path, "saturation_current_uA_m2"))
+    _in_range(current, 1e-6, 1e4, (*path, "saturation_current_uA_m2"))
+    f107 = number_at(entry, (*path, "f107"))
+    _in_range(f107, 50.0, 500.0, (*path, "f107"))
+    return MeasuredCurrent(current, f107, text_at(entry, (*path, "source")))
+
+
+def _in_range(number: float, low: float, high: float, path: Path) -> None:
+    if not low <= number <= high:
+        raise MaterialError(path, number, "is out of range", allowed=f"{low:g} to {high:g}")
 
 
 def _factor(table: Table, key: str, default: float | None = None) -> float:

@@ -58,7 +58,24 @@ def material_from(document: Table) -> Material:
     }
     material = Material(name, kind, description, emits, values, curve, states, laws)
     _check_completeness(material)
+    _check_shifts(material)
     return material
+
+
+def _check_shifts(material: Material) -> None:
+    """Refuse a barrier shift larger than half the threshold it moves."""
+    if material.photoyield is None:
+        return
+    half = 0.5 * material.photoyield.threshold_eV
+    for name, state in material.surface_states.items():
+        shift = state.barrier_shift_eV
+        if shift is not None and abs(shift) > half:
+            raise MaterialError(
+                ("surface_state", name, "barrier_shift_eV"),
+                shift,
+                "is more than half the threshold",
+                allowed=f"{-half:g} to {half:g} eV",
+            )
 
 
 def _check_completeness(material: Material) -> None:

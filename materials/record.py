@@ -16,6 +16,8 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from materials.errors import MaterialError
+from materials.fitted_escape import FittedEnergies
+from materials.photoelectron_energies import LowEnergyPeak
 
 KINDS = ("conductor", "dielectric", "semiconductor")
 BASES = ("measured", "handbook", "derived", "memory", "assumed")
@@ -174,6 +176,18 @@ class Samples:
     basis: str
 
 
+@dataclass(frozen=True, slots=True)
+class MeasuredCurrent:
+    """A saturation current to which a record wants its curve scaled, and why.
+
+    Measured at normal incidence, 1 AU, `f107` [sfu]. Whoever knows the spectrum applies it.
+    """
+
+    saturation_current_uA_m2: float
+    f107: float
+    source: str
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class PhotoYield:
     """Electrons per photon against photon energy.
@@ -192,7 +206,9 @@ class PhotoYield:
     `above_last_point` says what holds beyond the last point: its value ("hold") or
     energy times `x_ray` absorption. Yields that count absorbed photons are multiplied
     by 1 - `reflectance`. `largest_angle_growth` caps the growth of the yield at
-    oblique incidence, 1: none.
+    oblique incidence, 1: none. `peak` are the energies of collided electrons where they
+    are not those of the material that bears the curve, `energies` a prescribed law
+    instead of the energies from photons, `normalised_to` a scaling still to be applied.
     """
 
     photon_energy_eV: NDArray[np.float64]
@@ -215,6 +231,9 @@ class PhotoYield:
     counts: str = "incident photons"
     reflectance: Samples | None = None
     largest_angle_growth: float = 1.0
+    peak: LowEnergyPeak | None = None
+    energies: FittedEnergies | None = None
+    normalised_to: MeasuredCurrent | None = None
 
     def __post_init__(self) -> None:
         for name in ("photon_energy_eV", "electrons_per_photon"):

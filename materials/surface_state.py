@@ -5,6 +5,7 @@ Each returns a new material or curve that says in its note what was done.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 from functools import cache
 from typing import Final
@@ -15,6 +16,7 @@ from numpy.typing import ArrayLike
 from materials.errors import MaterialError, finite_array
 from materials.library import load_material
 from materials.photo_laws import law_yield
+from materials.photoemission import low_energy_peak
 from materials.photoyield import photo_current_density, yield_per_photon
 from materials.record import BASES, Material, PhotoYield
 
@@ -30,6 +32,16 @@ AGED_FROM: Final = (
 )
 """Laboratory curves of conducting surfaces whose largest yields make the aged state."""
 
+AGED_ENERGIES_OF: Final = "gold, air-exposed"
+"""Conductor with adsorbed layers whose collided electrons have the energies of all aged ones."""
+
+AGED_SPREAD_FACTOR: Final = 3.0
+"""Smallest factor either way of the aged state: an envelope of other surfaces (assumed)."""
+
+AGED_UPPER_EV: Final = 3e4
+
+Load = Callable[[str], Material]
+
 AGED_SOURCE: Final = (
     "largest of our laboratory curves of conducting surfaces at each photon energy, after the"
     " statement that the yields of all materials rise over the first months in space, become"
@@ -38,7 +50,23 @@ AGED_SOURCE: Final = (
 )
 
 
-def in_state(material: Material, state: str) -> Material:
+def records_of_state(material: Material, state: str) -> tuple[str, ...]:
+    """Library materials whose records a state needs besides the material itself.
+
+    Examples
+    --------
+    >>> records_of_state(load_material("gold"), "air-exposed")
+    ('gold, air-exposed',)
+    """
+    if material.photoyield is None or state == "as recorded":
+        return ()
+    record = material.surface_states.get(state.replace("-", "_"))
+    if record is None:
+        return AGED_FROM if state == "aged" else ()
+    return () if record.curve_of is None else (record.curve_of,)
+
+
+def in_state(material: Material, state: str, *, load: Load = load_material) -> Material:
     """Return a material in a state of its surface; only photoemission changes.
 
     Parameters
@@ -48,6 +76,8 @@ def in_state(material: Material, state: str) -> Material:
         "clean" and "air-exposed" must be in the record (``[surface_state.clean]``,
         ``[surface_state.air_exposed]``); "aged" is `aged_photoyield` unless the record
         has its own ``[surface_state.aged]``.
+    load : callable, optional
+        Gives the materials of `records_of_state`, for a run repeated from kept records.
 
     Returns
     -------
@@ -77,7 +107,8 @@ def in_state(material: Material, state: str) -> Material:
     record = material.surface_states.get(state.replace("-", "_"))
     if record is None:
         if state == "aged":
-            return replace(material, photoyield=aged_photoyield())
+            aged = aged_photoyield() if load is load_material else _envelope(load)
+            return replace(material, photoyield=aged)
         known = [s.replace("_", "-") for s in material.surface_states]
         raise MaterialError(
             ("surface_state",),
@@ -86,12 +117,11 @@ def in_state(material: Material, state: str) -> Material:
             allowed=", ".join(dict.fromkeys(("as recorded", *known, "aged"))),
         )
     if record.curve_of is not None:
-        other = load_material(record.curve_of).photoyield
-        if other is None:
-            raise MaterialError(
-                ("surface_state", state, "curve_of"), record.curve_of, "has no photoyield"
-            )
-        changed = replace(other, note=f"Curve of {record.curve_of}: {record.source}. {other.note}")
+        bearer = load(record.curve_of)
+        other = bearer.photoyield
+        assert other is not None  # `read_material` saw to it
+        note = f"Curve of {record.curve_of}: {record.source}. {other.note}"
+        changed = replace(other, note=note, peak=low_energy_peak(bearer))
     else:
         assert record.barrier_shift_eV is not None  # the reader saw to it
         changed = shift_barrier(curve, record.barrier_shift_eV, source=record.source)
@@ -103,7 +133,8 @@ def in_state(material: Material, state: str) -> Material:
 def aged_photoyield() -> PhotoYield:
     """Yield of a surface that has aged in orbit, the same for all materials.
 
-    At each photon energy the largest of the laboratory yields of `AGED_FROM`.
+    At each photon energy to 30 keV the largest of the laboratory yields of `AGED_FROM`. The
+    electrons have the energies of a conductor with adsorbed layers, whatever lies below.
 
     Returns
     -------
@@ -120,21 +151,35 @@ def aged_photoyield() -> PhotoYield:
     >>> aged_photoyield().threshold_eV
     4.0
     """
-    curves = [c for c in (load_material(name).photoyield for name in AGED_FROM) if c is not None]
+    return _envelope(load_material)
+
+
+def _envelope(load: Load) -> PhotoYield:
+    curves = [c for c in (load(name).photoyield for name in AGED_FROM) if c is not None]
     lowest = min(curve.threshold_eV for curve in curves)
     # log-log between points must follow the quadratic rise of each curve from its threshold
-    fine = np.concatenate([lowest + np.arange(0.0, 1.0, 0.02), np.geomspace(5.0, 100.0, 60)])
-    energy = np.unique(np.concatenate([fine, *(curve.photon_energy_eV for curve in curves)]))
+    fine = np.concatenate(
+        [lowest + np.arange(0.0, 1.0, 0.02), np.geomspace(5.0, AGED_UPPER_EV, 260)]
+    )
+    points = [curve.photon_energy_eV for curve in curves]
+    edges = [c.x_ray.photon_energy_eV for c in curves if c.x_ray is not None]
+    energy = np.unique(np.concatenate([fine, *points, *edges]))
+    energy = energy[(energy >= lowest) & (energy <= AGED_UPPER_EV)]
     emitted = np.max([yield_per_photon(energy, curve) for curve in curves], axis=0)
-    first = curves[0]
-    return replace(
-        first,
+    return PhotoYield(
         photon_energy_eV=energy,
         electrons_per_photon=emitted,
         source=AGED_SOURCE,
         basis="assumed",
         level="largest of laboratory curves",
-        note="Curves: " + ", ".join(AGED_FROM) + ".",
+        spread_factor=max(AGED_SPREAD_FACTOR, *(c.spread_factor for c in curves)),
+        near_threshold_factor=max(AGED_SPREAD_FACTOR, *(c.near_threshold_factor for c in curves)),
+        near_threshold_to_eV=max(c.near_threshold_to_eV for c in curves),
+        high_energy_factor=max(AGED_SPREAD_FACTOR, *(c.high_energy_factor for c in curves)),
+        high_energy_from_eV=min(c.high_energy_from_eV for c in curves),
+        note=f"Curves: {', '.join(AGED_FROM)}. Energies as of {AGED_ENERGIES_OF}.",
+        largest_angle_growth=max(c.largest_angle_growth for c in curves),
+        peak=low_energy_peak(load(AGED_ENERGIES_OF)),
     )
 
 
@@ -234,6 +279,7 @@ def normalised_to_current(
         electrons_per_photon=factor * curve.electrons_per_photon,
         electrons_per_photon_at_1_eV=factor * curve.electrons_per_photon_at_1_eV,
         level="normalised to a measured current",
+        normalised_to=None,
         note=f"All yields times {factor:.4g} to give {wanted:.4g} A m-2: {source}. "
         f"{curve.note}".strip(),
     )

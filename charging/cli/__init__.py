@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import errno
 import os
 import sys
 from typing import Annotated
@@ -9,8 +10,10 @@ from typing import Annotated
 import typer
 
 import charging.cli.cases as cases
+import charging.cli.onsets as onsets
 import charging.cli.questions as questions
 import charging.cli.runs as runs
+import charging.cli.stream as stream
 from charging import __version__
 
 app = typer.Typer(
@@ -42,26 +45,47 @@ def _root(
 
 runs.register(app)
 questions.register(app)
+onsets.register(app)
 app.add_typer(cases.app, name="case")
 
 
 def main() -> None:
     """Run the command line and leave with an exit code.
 
-    0 done, 1 a limit exceeded (review), 2 bad input, 3 no numerical solution,
-    4 not assessable (review), 130 interrupted.
+    0 done, 1 a limit exceeded (review), 2 bad input or output, 3 no numerical solution,
+    4 not assessable (review), 130 interrupted. A closed pipe is silent and changes nothing.
     """
+    sys.stdout = stream.PipeProof(sys.stdout)
+    code = _answer()
+    try:
+        sys.stdout.flush()
+    except OSError as error:
+        code = _cannot_print(error)
+    sys.exit(code)
+
+
+def _answer() -> int | str | None:
     from charging.errors import HalflitError, NoSolutionError
 
     try:
         app()
+    except SystemExit as leaving:
+        return leaving.code
     except HalflitError as error:
         print(f"error: {error}", file=sys.stderr)
-        sys.exit(3 if isinstance(error, NoSolutionError) else 2)
-    except BrokenPipeError:
-        # the reader of a pipe has gone: say nothing, and keep the exit handler from saying it
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        sys.exit(0)
+        return 3 if isinstance(error, NoSolutionError) else 2
     except KeyboardInterrupt:
         print("interrupted", file=sys.stderr)
-        sys.exit(130)
+        return 130
+    except OSError as error:
+        if error.errno != errno.ENOSPC:
+            raise
+        return _cannot_print(error)
+    return 0
+
+
+def _cannot_print(error: OSError) -> int:
+    print(f"error: standard output cannot be written ({error.strerror}).", file=sys.stderr)
+    # what is left in the buffer must not fail again when the interpreter closes it
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    return 2

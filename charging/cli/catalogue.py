@@ -112,7 +112,12 @@ def material_document(material: Material) -> dict[str, object]:
 
 def plasma_document(plasma: Plasma) -> dict[str, object]:
     """Return a plasma as JSON: source, populations with moments, null where undefined."""
-    from environments.plasma import moments, population_names
+    from environments.plasma import (
+        extrapolated_share,
+        moments,
+        population_names,
+        warnings_of,
+    )
 
     columns = {name: values.tolist() for name, values in moments(plasma).items()}
     return {
@@ -124,12 +129,14 @@ def plasma_document(plasma: Plasma) -> dict[str, object]:
         "note": plasma.note,
         "electron_debye_length_m": _debye_m(plasma),
         "electron_to_ion_current_ratio": _ratio(plasma),
+        "warnings": list(warnings_of(plasma)),
         "populations": [
             {
                 "name": name,
                 "species": population.species.name,
                 "charge_number": population.species.charge_number,
                 "law": population.law,
+                "extrapolated_share": extrapolated_share(population),
                 **{key: values[i] for key, values in columns.items()},
             }
             for i, (name, population) in enumerate(
@@ -272,7 +279,12 @@ def _print_plasmas(found: Sequence[Plasma]) -> None:
 
 
 def _print_plasma(plasma: Plasma) -> None:
-    from environments.plasma import moments, population_names
+    from environments.plasma import (
+        extrapolated_share,
+        moments,
+        population_names,
+        warnings_of,
+    )
 
     print(f"{plasma.name}: {plasma.title}\n")
     values = moments(plasma)
@@ -310,5 +322,12 @@ def _print_plasma(plasma: Plasma) -> None:
     print(
         f"source ({plasma.basis}): {plasma.source}{f', {plasma.clause}' if plasma.clause else ''}"
     )
+    names = population_names(plasma.populations)
+    for name, population in zip(names, plasma.populations, strict=True):
+        if population.law == "tabulated":
+            share = 100.0 * extrapolated_share(population)
+            print(f"{name}: {share:.2g} % of the current extrapolated below the first channel")
+    for warning in warnings_of(plasma):
+        print(f"warning: {warning}")
     if plasma.note:
         print(f"note: {plasma.note}")

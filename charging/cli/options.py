@@ -41,6 +41,15 @@ PhotoEscape = Annotated[
         help="How photoelectrons leave a positive surface; auto: by Debye length and --radius-m.",
     ),
 ]
+Flare = Annotated[
+    list[str] | None,
+    typer.Option(
+        "--flare",
+        metavar="BAND=FACTOR",
+        show_default=False,
+        help="Factor on the photons of a band, e.g. X-ray=100; may be given several times.",
+    ),
+]
 Radius = Annotated[
     float, typer.Option("--radius-m", help="Radius of the body [m], above 0, up to 1000.")
 ]
@@ -59,9 +68,36 @@ def as_options(*positional: str) -> Iterator[None]:
     except InputError as error:
         if error.file is None and len(error.key) == 1 and error.key[0] not in positional:
             name = str(error.key[0])
-            option = f"--{name.replace('_', '-')}"
+            option = "--flare" if name == "band_factors" else f"--{name.replace('_', '-')}"
             error.message = error.message.replace(f"{name} = ", f"{option} ", 1)
         raise
+
+
+def as_factors(given: list[str] | None) -> dict[str, float]:
+    """Return the factors of ``--flare``; InputError for text that is no BAND=FACTOR.
+
+    Examples
+    --------
+    >>> as_factors(["X-ray=100"])
+    {'X-ray': 100.0}
+    """
+    from charging.errors import InputError, printable
+
+    factors = {}
+    for text in given or ():
+        band, equals, factor = text.partition("=")
+        try:
+            factors[band.strip()] = float(factor)
+        except ValueError:
+            equals = ""
+        if not equals:
+            raise InputError(
+                f'--flare "{printable(text)}": is no BAND=FACTOR',
+                key=("flare",),
+                value=text,
+                allowed="a band of 'halflit spectrum', an equals sign and a number",
+            )
+    return factors
 
 
 def check_picture(plot: Path | None) -> None:

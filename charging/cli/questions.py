@@ -58,13 +58,15 @@ def point(
     distance_au: Distance = 1.0,
     f107: Activity = 150.0,
     law: Annotated[
-        str,
+        str | None,
         typer.Option(
             "--law",
-            metavar="sanders_inouye_1979|lin_joy_2005",
-            help="Secondary-emission law.",
+            metavar="NAME",
+            show_default=False,
+            help="Secondary-emission law: sanders_inouye_1979, lin_joy_2005, sternglass_1954, "
+            "draine_salpeter_1979; default: the material's choice, else the first.",
         ),
-    ] = "sanders_inouye_1979",
+    ] = None,
     surface_state: SurfaceState = "as recorded",
     photo_escape: PhotoEscape = "auto",
     plot: Plot = None,

@@ -179,8 +179,8 @@ def _print_run(result: CaseRun, document: dict[str, Any]) -> None:
     laws = document["laws"]
     if len(laws) > 1:
         print(
-            f"\nThe table takes the worse of the secondary-emission laws {' and '.join(laws)}; "
-            f"files and plots show {laws[0]}."
+            f"\nThe table takes the worse of the secondary-emission laws {' and '.join(laws)}; the "
+            f"plots show {laws[0]}. Each law has a result file of its own."
         )
     for warning in document["warnings"]:
         print(f"Note: {warning}.")
@@ -194,7 +194,12 @@ def _clock(result: CaseRun) -> Callable[[str], str]:
 
     case = result.loaded.case
     if case.orbit.kind == "fixed":
-        return lambda text: str(datetime.fromisoformat(text) - case.epoch).replace(" days, ", "d ")
+
+        def elapsed(text: str) -> str:
+            whole = round((datetime.fromisoformat(text) - case.epoch).total_seconds())
+            return f"{whole // 3600}:{whole // 60 % 60:02d}:{whole % 60:02d}"
+
+        return elapsed
     if case.duration_s > 86400.0:
         return lambda text: text[5:19].replace("T", " ")
     return lambda text: text[11:19]
@@ -202,10 +207,11 @@ def _clock(result: CaseRun) -> Callable[[str], str]:
 
 def _print_mode(mode: dict[str, Any], clock: Callable[[str], str]) -> None:
     def when(row: dict[str, Any], side: str) -> str:
-        return clock(row[f"worst_{side}_time"]) if row[f"worst_{side}_V"] else "-"
+        time = row[f"worst_{side}_time"]
+        return "-" if time is None else clock(time)
 
     def size(row: dict[str, Any], side: str) -> str:
-        return volts(row[f"worst_{side}_V"]) if row[f"worst_{side}_V"] else "-"
+        return "-" if row[f"worst_{side}_time"] is None else volts(row[f"worst_{side}_V"])
 
     rows = []
     for row in mode["surfaces"]:
@@ -223,7 +229,7 @@ def _print_mode(mode: dict[str, Any], clock: Callable[[str], str]) -> None:
                 {"normal": "-", "inverted": "+", "field": ""}[tight["kind"]]
                 + _value(tight["allowed"], tight["unit"], sign=False),
                 _value(tight["margin"], tight["unit"]),
-                row["verdict"],
+                f"{row['verdict']}, bonded" if row["bonded"] else row["verdict"],
             )
         )
     print_table(
@@ -259,10 +265,12 @@ def _print_mode(mode: dict[str, Any], clock: Callable[[str], str]) -> None:
         print(
             "not steady at the end of the run"
             if steady is None
-            else f"steady (1 V or 1 %) after {steady:.0f} s"
+            else f"steady: within 1 V or 1 % of the last value after {steady:.0f} s"
         )
     for text in mode["sentences"]:
         print(f"- {text}")
+    for fix, surfaces in mode["first_fixes"].items():
+        print(f"First fix to try on {', '.join(surfaces)}: {fix}.")
 
 
 def _print_caution() -> None:

@@ -13,10 +13,12 @@ from charging.cli.options import (
     Activity,
     Cosine,
     Distance,
+    Flare,
     PhotoEscape,
     Plot,
     Radius,
     SurfaceState,
+    as_factors,
     as_options,
     check_picture,
     wrote,
@@ -29,6 +31,20 @@ if TYPE_CHECKING:
 
 CURVE_V = (0.5, 1.0, 2.0, 3.0, 5.0, 7.0, 10.0, 15.0, 20.0, 30.0)
 """Potentials [V] of the printed retarding curve."""
+
+
+def distinct_labels(names: Sequence[str], given: Sequence[str]) -> list[str]:
+    """Return the names of records, with what was typed where one name stands twice.
+
+    Examples
+    --------
+    >>> distinct_labels(["gold", "gold", "PTFE"], ["gold", "./mine.toml", "PTFE"])
+    ['gold', 'gold (./mine.toml)', 'PTFE']
+    """
+    return [
+        name if names.count(name) == 1 or name == text else f"{name} ({text})"
+        for name, text in zip(names, given, strict=True)
+    ]
 
 
 def register(app: typer.Typer) -> None:
@@ -47,8 +63,9 @@ def photoyield(
     f107: Activity = 150.0,
     incidence_cosine: Cosine = 1.0,
     surface_state: SurfaceState = "as recorded",
-    photo_escape: PhotoEscape = "planar",
+    photo_escape: PhotoEscape = "auto",
     radius_m: Radius = 1.0,
+    flare: Flare = None,
     plasma: Annotated[
         str | None,
         typer.Option(
@@ -76,6 +93,7 @@ def photoyield(
         surface_state=surface_state,
         photo_escape=photo_escape,
         radius_m=radius_m,
+        flare=as_factors(flare),
     )
     potential = np.array(CURVE_V)
     with as_options("material"):
@@ -98,27 +116,33 @@ def photoyield(
                     **asdict(row),
                     "retarding_curve": {
                         "potential_V": list(CURVE_V),
-                        "current_A_m2": curves[row.material].tolist(),
+                        "current_A_m2": curve.tolist(),
                     }
-                    if row.material in curves
+                    if curve is not None
                     else None,
                     "floating_potential_V": volts,
                 }
-                for row, volts in zip(rows, floats, strict=True)
+                for row, curve, volts in zip(rows, curves, floats, strict=True)
             ]
         )
         return
-    _print_rows(rows, floats if plasma is not None else None)
-    emitting = list({row.material: row for row in rows if row.bands}.values())
+    labels = distinct_labels([row.material for row in rows], materials)
+    _print_rows(rows, labels, floats if plasma is not None else None)
+    emitting = [
+        (label, row, curve.tolist())
+        for label, row, curve in zip(labels, rows, curves, strict=True)
+        if curve is not None
+    ]
     if emitting:
         print()
-        _print_bands(emitting)
+        _print_bands([(label, row) for label, row, _ in emitting])
         print()
-        _print_curves(emitting, {name: curve.tolist() for name, curve in curves.items()})
+        _print_curves(emitting)
     print(
         f"\nSun at {distance_au:g} AU, F10.7 {f107:g}, incidence cosine {incidence_cosine:g}; "
         f"surface {surface_state}; escape {photo_escape}"
         + (f", body radius {radius_m:g} m" if photo_escape == "auto" else "")
+        + "".join(f", {band} times {factor:g}" for band, factor in as_factors(flare).items())
         + "."
     )
     print(
@@ -129,11 +153,13 @@ def photoyield(
         print(f"Floating: reached from 0 V in {plasma}, all currents balanced, no conduction.")
 
 
-def _print_rows(rows: Sequence[PhotoRow], floats: Sequence[float | None] | None) -> None:
+def _print_rows(
+    rows: Sequence[PhotoRow], labels: Sequence[str], floats: Sequence[float | None] | None
+) -> None:
     print_table(
         [
             (
-                row.material,
+                labels[i],
                 number(row.threshold_eV, ".2f"),
                 number(row.threshold_nm, ".0f"),
                 f"{1e6 * row.saturation_current_A_m2:.4g}",
@@ -166,33 +192,33 @@ def _print_rows(rows: Sequence[PhotoRow], floats: Sequence[float | None] | None)
     )
 
 
-def _print_bands(rows: Sequence[PhotoRow]) -> None:
-    bands = [share.band for share in rows[0].bands]
+def _print_bands(rows: Sequence[tuple[str, PhotoRow]]) -> None:
+    bands = [share.band for share in rows[0][1].bands]
     print_table(
         [
-            (band, *(f"{100.0 * row.bands[i].share:.1f}" for row in rows))
+            (band, *(f"{100.0 * row.bands[i].share:.1f}" for _, row in rows))
             for i, band in enumerate(bands)
         ],
-        ("share of the current, %", *(row.material for row in rows)),
+        ("share of the current, %", *(label for label, _ in rows)),
         "l" + "r" * len(rows),
     )
 
 
-def _print_curves(rows: Sequence[PhotoRow], curves: dict[str, list[float]]) -> None:
+def _print_curves(rows: Sequence[tuple[str, PhotoRow, list[float]]]) -> None:
     print_table(
         [
             (
                 f"{volts:g}",
                 *(
-                    f"{100.0 * curves[r.material][i] / r.saturation_current_A_m2:.3g}"
-                    if r.saturation_current_A_m2
+                    f"{100.0 * curve[i] / row.saturation_current_A_m2:.3g}"
+                    if row.saturation_current_A_m2
                     else "-"
-                    for r in rows
+                    for _, row, curve in rows
                 ),
             )
             for i, volts in enumerate(CURVE_V)
         ],
-        ("escaping at V, %", *(row.material for row in rows)),
+        ("escaping at V, %", *(label for label, _, _ in rows)),
         "r" + "r" * len(rows),
     )
 
@@ -206,6 +232,7 @@ def spectrum(
         ),
     ] = None,
     distance_au: Distance = 1.0,
+    flare: Flare = None,
     above: Annotated[
         list[float] | None,
         typer.Option(
@@ -229,7 +256,12 @@ def spectrum(
     with as_options():
         energies = [as_number("above", given, above=0.0, high=1e6) for given in above or ()]
         try:
-            sun = solar_spectrum(f107=f107, f107_81day=f107_81day, distance_au=distance_au)
+            sun = solar_spectrum(
+                f107=f107,
+                f107_81day=f107_81day,
+                distance_au=distance_au,
+                band_factors=as_factors(flare),
+            )
         except EnvironmentDataError as error:
             raise from_environment(error) from None
     if plot is not None:
@@ -245,6 +277,7 @@ def spectrum(
                 "f107": sun.f107,
                 "f107_81day": sun.f107_81day,
                 "distance_au": sun.distance_au,
+                "flare": as_factors(flare),
                 "bands": [asdict(row) for row in rows],
                 "photons_above": [
                     {"photon_energy_eV": energy, "photon_flux_m2_s": flux} for energy, flux in over
@@ -274,3 +307,5 @@ def spectrum(
         f"Sun at {distance_au:g} AU, {activity}. Activity scales "
         "everything below 123 nm;\nabove, a reference spectrum stays as it is."
     )
+    if flare:
+        print("Flare: " + ", ".join(f"{b} times {x:g}" for b, x in as_factors(flare).items()) + ".")

@@ -86,8 +86,9 @@ def _thermal_arrivals(
     surfaces, kinds = u.shape[-2:]
     energy = (np.where(attracted, pull, 0.0) * charge).reshape(*u.shape[:-2], surfaces * kinds)
     found, d_found = table(energy)
-    found = found.reshape(*u.shape, -1)
-    d_found = d_found.reshape(*u.shape, -1) * charge[:, None]
+    columns = found.shape[-1]
+    found = found.reshape(*u.shape, columns)
+    d_found = d_found.reshape(*u.shape, columns) * charge[:, None]
     d_found = np.where(attracted[..., None], d_found, 0.0)
     particles = 1.0 / charge[:, None]  # yields are per particle
     released = particles * boltzmann[..., None] * found

@@ -5,11 +5,12 @@ depends on where the surface comes from. Roots are searched on a scan uniform in
 asinh of the potential out to ±200 kV.
 """
 
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.optimize import brentq, minimize_scalar
+from scipy.optimize import brentq
 
 from charging.currents.surface import (
     MECHANISMS,
@@ -22,7 +23,8 @@ from charging.errors import NoSolutionError
 Array = NDArray[np.float64]
 
 SEARCH_V = 2e5
-SCAN_POINTS = 20_001
+SCAN_POINTS = 12_001
+TOUCHING = 1e-9  # of the current at the ends of the interval: a double root
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,7 +64,7 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
     Returns
     -------
     FloatingPotentials
-        Roots to 1 µV or 1e-12; a touching (double) root counts once and as unstable.
+        Roots to 1 nV or 1e-12; a touching (double) root counts once and as unstable.
 
     Raises
     ------
@@ -71,33 +73,27 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
 
     Notes
     -----
-    Two roots closer than a scan interval (0.12 % of the potential) are found when the
-    current has an extremum between them: it is searched for by minimisation.
+    The scan carries the analytic slope. Two roots inside one interval (0.2 % of the
+    potential) have an extremum between them: the slope turns towards zero current at one
+    end and away at the other. Where the tangents of both ends leave room for a crossing,
+    the extremum is located as the root of the slope.
     """
 
     def current(v: float) -> float:
         return float(net_current(model, np.array([v]), light)[0][0])
 
+    def slope(v: float) -> float:
+        return float(net_current(model, np.array([v]), light)[1][0])
+
     grid = np.sinh(np.linspace(-1.0, 1.0, SCAN_POINTS) * np.arcsinh(SEARCH_V))
-    values, _ = net_current(model, grid, light)
-    # a zero between zeros is an exponential that underflowed (no ions), not a balance
+    values, slopes = net_current(model, grid, light)
+    # a zero between zeros is an exponential that underflowed, not a balance
     hit = (values[1:-1] == 0.0) & (values[:-2] != 0.0) & (values[2:] != 0.0)
     found = [float(v) for v in grid[1:-1][hit]]
     crossings = np.flatnonzero(values[:-1] * values[1:] < 0.0)
     found += [_root(current, grid[k], grid[k + 1]) for k in crossings]
-    size = np.abs(values)
-    dips = (
-        1
-        + np.flatnonzero(
-            (size[1:-1] <= size[:-2])
-            & (size[1:-1] <= size[2:])
-            & ((size[1:-1] < size[:-2]) | (size[1:-1] < size[2:]))  # a plateau has no dip
-            & (values[:-2] * values[1:-1] > 0.0)
-            & (values[1:-1] * values[2:] > 0.0)
-        )
-    )
-    for k in dips:
-        found += _close_pair(current, grid[k - 1], grid[k + 1], np.sign(values[k]))
+    for k in _dips(grid, values, slopes):
+        found += _close_pair(current, slope, grid[k], grid[k + 1])
     if not found:
         raise NoSolutionError(
             f"no floating potential within ±{SEARCH_V / 1e3:.0f} kV: the net current keeps the "
@@ -110,20 +106,40 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
     return FloatingPotentials(tuple(roots), _reached(roots, current(0.0)))
 
 
-def _root(current, low: float, high: float) -> float:  # type: ignore[no-untyped-def]
+def _dips(grid: Array, values: Array, slopes: Array) -> Iterable[int]:
+    """Intervals in which the current may touch or cross zero twice."""
+    sign = np.sign(values[:-1])
+    falls, rises = sign * slopes[:-1], sign * slopes[1:]
+    low, high = sign * values[:-1], sign * values[1:]
+    turns = (sign * values[1:] > 0.0) & (falls < 0.0) & (rises > 0.0)
+    width = np.diff(grid)
+    # where the tangents meet: the lowest a convex curve can reach
+    with np.errstate(divide="ignore", invalid="ignore"):
+        meet = (low - high + rises * width) / (rises - falls)
+    bottom = low + falls * np.clip(meet, 0.0, width)
+    # a curve that is not convex may go lower still: twice the drop is allowed for
+    deep = bottom - np.minimum(low, high) < -0.5 * np.minimum(low, high)
+    return (int(k) for k in np.flatnonzero(turns & deep))
+
+
+def _root(current: Callable[[float], float], low: float, high: float) -> float:
     return float(brentq(current, low, high, xtol=1e-9, rtol=1e-12))
 
 
-def _close_pair(current, low: float, high: float, sign: float) -> list[float]:  # type: ignore[no-untyped-def]
-    """Roots around an extremum of the current that comes near zero without a sign change."""
-    best = minimize_scalar(
-        lambda v: sign * current(v), bounds=(low, high), method="bounded", options={"xatol": 1e-9}
-    )
-    value = sign * current(best.x)
-    if value < 0.0:
-        return [_root(current, low, best.x), _root(current, best.x, high)]
-    edge = max(abs(current(low)), abs(current(high)))
-    return [float(best.x)] if value <= 1e-9 * edge else []
+def _close_pair(
+    current: Callable[[float], float],
+    slope: Callable[[float], float],
+    low: float,
+    high: float,
+) -> list[float]:
+    """Roots around the extremum between `low` and `high`, where the slope changes sign."""
+    best = float(brentq(slope, low, high, xtol=1e-12, rtol=1e-14))
+    bottom, at_low, at_high = current(best), current(low), current(high)
+    if bottom == 0.0:
+        return [best]
+    if bottom * at_low < 0.0:
+        return [_root(current, low, best), _root(current, best, high)]
+    return [best] if abs(bottom) <= TOUCHING * max(abs(at_low), abs(at_high)) else []
 
 
 def _reached(roots: list[Root], at_zero: float) -> float:

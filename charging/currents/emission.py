@@ -16,8 +16,11 @@ from charging.currents.splines import segmented_knots
 from charging.currents.tables import Yield, YieldTable, average_yields, knot_scale, knots
 from environments.spectrum import SolarSpectrum
 from materials.backscatter import (
+    BACKSCATTER_LAWS,
+    hunger_kuchler_held,
     isotropic_backscatter,
     isotropic_by_atomic_number,
+    prokopenko_laframboise_1980,
     substrate_share,
 )
 from materials.ion_impact import whipple_1981
@@ -77,24 +80,41 @@ def law_of(material: Material, asked: YieldLaw) -> YieldLaw:
     return known if same_kind else asked
 
 
-def backscatter_yield(material: Material) -> Yield:
-    """Isotropic backscatter of a material by the law of its record, coating included."""
+def backscatter_law(material: Material) -> str:
+    """Name of the backscatter law of a record.
+
+    Examples
+    --------
+    >>> from materials import load_material
+    >>> backscatter_law(load_material("gold"))
+    'prokopenko_laframboise_1980'
+    """
+    return material.laws.get("backscatter_law", BACKSCATTER_LAWS[0])
+
+
+def backscatter_yield(material: Material, *, isotropic: bool = True) -> Yield:
+    """Backscatter of a material by the law of its record, coating included.
+
+    `isotropic` False gives normal incidence.
+    """
     number = material.value("mean_atomic_number")
-    high = material.value("backscatter_high_energy")
-    drop = material.get("backscatter_low_energy_drop", 0.0)
-    drop_energy = material.get("backscatter_drop_energy_eV", 1.0)
-    by_number = material.laws.get("backscatter_law") == "hunger_kuchler_1979"
+    levels = {
+        "high_energy": material.value("backscatter_high_energy"),
+        "low_energy_drop": material.get("backscatter_low_energy_drop", 0.0),
+        "drop_energy_eV": material.get("backscatter_drop_energy_eV", 1.0),
+    }
+
+    def by_number(energy_eV: Array, z: float) -> Array:
+        if isotropic:
+            return isotropic_by_atomic_number(energy_eV, mean_atomic_number=z)
+        return hunger_kuchler_held(energy_eV, mean_atomic_number=z)
 
     def surface(energy_eV: Array) -> Array:
-        if by_number:
-            return isotropic_by_atomic_number(energy_eV, mean_atomic_number=number)
-        return isotropic_backscatter(
-            energy_eV,
-            high_energy=high,
-            low_energy_drop=drop,
-            drop_energy_eV=drop_energy,
-            mean_atomic_number=number,
-        )
+        if backscatter_law(material) == "hunger_kuchler_1979":
+            return by_number(energy_eV, number)
+        if isotropic:
+            return isotropic_backscatter(energy_eV, mean_atomic_number=number, **levels)
+        return prokopenko_laframboise_1980(energy_eV, **levels)
 
     if "coating_thickness_m" not in material.values:
         return surface
@@ -104,8 +124,7 @@ def backscatter_yield(material: Material) -> Yield:
 
     def coated(energy_eV: Array) -> Array:
         share = substrate_share(energy_eV, thickness_m=thickness, density_kg_m3=density)
-        under = isotropic_by_atomic_number(energy_eV, mean_atomic_number=below)
-        return (1.0 - share) * surface(energy_eV) + share * under
+        return (1.0 - share) * surface(energy_eV) + share * by_number(energy_eV, below)
 
     return coated
 
@@ -195,7 +214,8 @@ def _tables(
         averages = average_yields(flat, float(temperature), grid, (PLANE, thick))
         for i, key in enumerate(unique):
             known[key].append(averages[i * width : (i + 1) * width].reshape(2 * width, -1).T)
-    values = np.stack([table for key, _ in rows for table in known[key]])
+    tables = [table for key, _ in rows for table in known[key]]
+    values = np.stack(tables) if tables else np.zeros((0, len(grid), 2 * width))
     return YieldTable.fit(scale, values)
 
 
@@ -221,7 +241,7 @@ def line_ends_V(materials: Sequence[Material], spectrum: SolarSpectrum) -> tuple
     energy = spectrum.photon_energy_eV
     ends: set[float] = set()
     for curve in {id(m): m.photoyield for m in materials}.values():
-        if curve is not None:
+        if curve is not None and curve.energies is None:
             emitted = emission_spectrum(energy, spectrum.photon_flux_m2_s, curve)
             strong = emitted > STRONG_LINE * emitted.sum()
             ends.update(np.round(energy[strong] - curve.threshold_eV, 9).tolist())

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from charging.currents.barrier import ROUNDING_V
 from charging.currents.collection import SheathWeight, sheath_weight
 from charging.currents.splines import (
+    graded_knots,
     polynomial,
     polynomial_and_slope,
     segmented_knots,
@@ -34,6 +35,8 @@ Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
 SCALE_V, SPACING = 0.05, 0.008
+NOT_GRADED = 10.0  # spacing of knots below a break that needs no grading
+SPECTRUM_DEGREE = 5  # the kinks of spectra ask for more
 DEGREE = 3  # a quintic on fewer knots costs a march a fifth more
 
 
@@ -45,7 +48,7 @@ class NetCurrents:
     ----------
     knots_V : ndarray [K]
         From 0 upwards; mirrored for negative potentials.
-    coefficients : ndarray [U, S, 2(K-1), 4, 2P+1]
+    coefficients : ndarray [U, S, 2(K-1), degree+1, 2P+1]
         Negative side first; columns: plasmas in plane geometry, plasmas in thick
         geometry, photoelectrons at full light.
     electrons : Populations
@@ -93,7 +96,7 @@ class NetCurrents:
         )
 
     def _cells(self, which: Index, potential_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
-        """Coefficients [m, S, 4, C] of the cells, distance from their knots [m, S, 1], side."""
+        """Coefficients [m, S, degree+1, C], distance from the left knot [m, S, 1], side."""
         cells = len(self.knots_V) - 1
         size = np.abs(potential_V)
         k = np.clip(np.searchsorted(self.knots_V, size, side="right") - 1, 0, cells - 1)
@@ -123,7 +126,7 @@ class NetCurrents:
         plasmas = share.shape[-1]
         plane: Array = (columns[..., :plasmas] * share).sum(axis=-1)
         thick: Array = (columns[..., plasmas:-1] * share).sum(axis=-1)
-        light = np.minimum(self.angle_growth * setting.light, 1.0)
+        light = np.minimum(self.angle_growth * setting.light, setting.illumination)
         return plane + w * (thick - plane) + light * columns[..., -1]
 
 
@@ -131,9 +134,15 @@ def net_currents(models: Sequence[SurfaceModel]) -> NetCurrents:
     """Tabulate surface models that differ in emission only (a law, a material value)."""
     first = models[0]
     spectra = [s for model in models for s in (*model.electron_spectra, *model.ion_spectra)]
-    kinks = {b for s in spectra for b in s.breaks_V}
-    breaks = sorted({ROUNDING_V, *first.escape_breaks_V, *kinks})
+    degree = SPECTRUM_DEGREE if spectra else DEGREE
+    breaks = [ROUNDING_V, *first.escape_breaks_V]
     grid = segmented_knots(knots(SCALE_V, SPACING), breaks)
+    kinks = {b: h for s in spectra for b, h in s.breaks_V.items()}
+    if kinks:
+        smooth = dict.fromkeys(breaks, NOT_GRADED)
+        graded = {**smooth, **kinks, float(grid[-1]): NOT_GRADED}
+        grid = graded_knots(SCALE_V, SPACING, graded)
+        breaks = sorted(graded)[:-1]
     plasmas = int(first.electrons.plasma.max()) + 1
     surfaces = len(first.photo_saturation_A_m2)
     both = []
@@ -149,7 +158,7 @@ def net_currents(models: Sequence[SurfaceModel]) -> NetCurrents:
                 plane.append(in_plane)
                 thick.append(in_thick)
             values = np.stack([*plane, *thick, photo], axis=-1)  # [K, S, 2P+1]
-            pieces = segmented_spline(grid, values, breaks, DEGREE)
+            pieces = segmented_spline(grid, values, breaks, degree)
             sides.append(np.moveaxis(pieces, 2, 0))
         both.append(np.concatenate(sides, axis=1))
     return NetCurrents(

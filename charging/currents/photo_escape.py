@@ -10,7 +10,7 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.constants import e, epsilon_0, m_e
+from scipy.constants import e, epsilon_0, k, m_e
 
 from environments.spectrum import SolarSpectrum
 from materials.photoemission import (
@@ -68,10 +68,12 @@ def photo_sheath(material: Material, spectrum: SolarSpectrum) -> PhotoSheath | N
     if curve is None:
         return None
     energy, flux = spectrum.photon_energy_eV, spectrum.photon_flux_m2_s
+    current = float(photo_current_density(energy, flux, curve))
+    if curve.energies is not None:
+        return sheath_of(current, curve.energies.mean_energy_eV) if current > 0.0 else None
     weight = escaping_weights(energy, flux, curve)
     if not np.any(weight > 0.0):
         return None
-    current = float(photo_current_density(energy, flux, curve))
     mean = mean_photoelectron_energy(
         energy, weight, curve.threshold_eV, peak=low_energy_peak(material)
     )
@@ -151,12 +153,16 @@ def photo_escape(
     """
     sheath, curve = photo_sheath(material, spectrum), material.photoyield
     if sheath is None or curve is None:
+        if curve is not None and curve.temperature_K > 0.0:  # what a warm metal emits below
+            return np.exp(-np.maximum(potential_V, 0.0) * e / (k * curve.temperature_K))
         return np.ones_like(potential_V)
     energy = spectrum.photon_energy_eV
     weight = escaping_weights(energy, spectrum.photon_flux_m2_s, curve)
     peak = low_energy_peak(material)
 
     def limit(which: Literal["planar", "point source"]) -> Array:
+        if curve.energies is not None:
+            return curve.energies.escape(potential_V, which)
         return escape_fraction(
             potential_V, energy, weight, curve.threshold_eV, geometry=which, peak=peak
         )

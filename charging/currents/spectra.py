@@ -11,19 +11,15 @@ yields are tabulated once per case over the energy gained or lost; tables are sp
 at the kinks of the spectrum.
 """
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from charging.currents.collection import PLANE, Geometry
-from charging.currents.splines import (
-    polynomial_and_slope,
-    segmented_knots,
-    segmented_spline,
-)
-from charging.currents.tables import REACH_V, Yield, knots
+from charging.currents.splines import graded_knots, polynomial_and_slope, segmented_spline
+from charging.currents.tables import REACH_V, SPACING, Yield, knots
 from environments.energy_panels import energy_nodes
 from environments.isotropic import Distribution, distribution_moments, lowest_panel_eV
 from environments.plasma import Population, population_current
@@ -96,8 +92,9 @@ class SpectrumTable:
         Which plasma the population belongs to.
     current_A_m2, charge_number : float
         Signed one-sided current at full strength; magnitude of the charge.
-    breaks_V : tuple of float
-        Magnitudes of the retarding potentials at which the tables have kinks.
+    breaks_V : mapping of float to float
+        Magnitudes of the retarding potentials at which the tables have kinks, and the
+        spacing of knots that these need, see `graded_knots`.
     repelled_knots_eV, attracted_knots_eV : ndarray
     repelled : ndarray [S, K-1, 6, 1+Y]
         Logarithm of the collected share over `cut`, then mean yields.
@@ -110,7 +107,7 @@ class SpectrumTable:
     plasma: int
     current_A_m2: float
     charge_number: float
-    breaks_V: tuple[float, ...]
+    breaks_V: Mapping[float, float]
     repelled_knots_eV: Array
     attracted_knots_eV: Array
     repelled: Array
@@ -173,11 +170,32 @@ class SpectrumTable:
         return share * mean, d_share * mean + share * d_mean
 
 
+NOTHING = 1e-250  # share of a spectrum below which it counts as ended
+NEAR_A_STEP, NEAR_A_KINK = 0.04, 0.05  # spacing of knots below a mark of the spectrum
+
+
+def _marks(distribution: Distribution, mass_kg: float, end_eV: float) -> dict[float, float]:
+    """Spacing of the knots below every mark of a spectrum up to `end_eV`, by energy [eV].
+
+    Just below a step of the spectrum the particles that still arrive do so with the energy
+    that is left to them, so the mean yield changes there as the yield does near zero energy.
+    """
+    marks = sorted({m for m in distribution.marks_eV if 0.0 < m < end_eV} | {end_eV})
+    below, above = (
+        distribution.flux(np.array(marks) * (1.0 + side * 1e-9), mass_kg) for side in (-1.0, 1.0)
+    )
+    steps = np.abs(above - below) > 1e-6 * below
+    return {
+        mark: NEAR_A_STEP if step else NEAR_A_KINK for mark, step in zip(marks, steps, strict=True)
+    }
+
+
 def spectrum_table(
     population: Population,
     plasma: int,
     yields: Sequence[Sequence[Yield]],
     thick: Geometry,
+    rows: Sequence[int] | None = None,
 ) -> SpectrumTable:
     """Tabulate one population.
 
@@ -187,9 +205,11 @@ def spectrum_table(
         With a distribution.
     plasma : int
         Index of its plasma.
-    yields : sequence [S] of sequences [Y] of callables
-        What each surface releases per particle.
+    yields : sequence [U] of sequences [Y] of callables
+        What each kind of surface releases per particle.
     thick : Geometry
+    rows : sequence of int [S], optional
+        Kind of each surface; default: one surface per kind.
     """
     distribution = population.distribution
     if distribution is None:
@@ -202,10 +222,16 @@ def spectrum_table(
     grid = size * knots(0.01 * min(10.0, distribution.scale_eV) / size)
 
     end = min(reach, distribution.top_eV)
-    base = np.append(grid[grid < 0.999 * end], end)
-    lost = segmented_knots(base, distribution.marks_eV)
+    scale = 0.01 * min(10.0, distribution.scale_eV)
+    spacings = _marks(distribution, mass, end)
+    lost = graded_knots(scale, SPACING, spacings)
     share, released = repelled_averages(distribution, mass, flat, lost)
     cutoff = distribution.cutoff_eV
+    counts = share > NOTHING
+    counts[-1] |= end == cutoff and counts[-2]
+    if not counts.all():  # a steep tail: what lies beyond is nothing
+        lost, share, released = lost[counts], share[counts], released[:, counts]
+        end = float(lost[-1])
     with np.errstate(divide="ignore", invalid="ignore"):  # the end of a spectrum, set below
         rest = (1.0 - lost / cutoff) ** 2
         log_share, mean = np.log(share / rest), released / share
@@ -225,14 +251,17 @@ def spectrum_table(
     mean_both = both / thick_share  # [S Y, 2, K]
     pulled[..., 1:] = np.moveaxis(mean_both, 2, 0).reshape(len(grid), surfaces, 2 * kinds)
     marks = [m for m in distribution.marks_eV if m < end]
+    kind = np.arange(surfaces) if rows is None else np.asarray(rows, dtype=np.intp)
+    repelled = np.moveaxis(segmented_spline(lost, columns, marks), 2, 0)[kind]
+    attracted = np.moveaxis(segmented_spline(grid, pulled, ()), 2, 0)[kind]
     return SpectrumTable(
         plasma=plasma,
         current_A_m2=population_current(population),
         charge_number=size,
-        breaks_V=tuple(m / size for m in (*marks, *([cutoff] if end == cutoff else []))),
+        breaks_V={m / size: spacing for m, spacing in spacings.items() if m < end or end == cutoff},
         repelled_knots_eV=lost,
         attracted_knots_eV=grid,
-        repelled=np.ascontiguousarray(np.moveaxis(segmented_spline(lost, columns, marks), 2, 0)),
-        attracted=np.ascontiguousarray(np.moveaxis(segmented_spline(grid, pulled, ()), 2, 0)),
+        repelled=np.ascontiguousarray(repelled),
+        attracted=np.ascontiguousarray(attracted),
         cutoff_eV=cutoff,
     )

@@ -1,6 +1,6 @@
 """Splines as piecewise polynomials, split where a function has a kink."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from itertools import pairwise
 from math import factorial
 
@@ -64,6 +64,35 @@ def segmented_knots(base: Array, breaks: Sequence[float]) -> Array:
             between = np.linspace(a, b, FEWEST_POINTS + 2)[1:-1]
         parts.append(np.concatenate([[a], between]))
     return np.concatenate([*parts, base[-1:]])
+
+
+FINEST = 0.1  # of an energy scale of 10 eV: where grading towards a break ends
+
+
+def graded_knots(scale: float, spacing: float, breaks: Mapping[float, float]) -> Array:
+    """Knots from 0 to the last break, dense at 0 and just below every break.
+
+    Parameters
+    ----------
+    scale, spacing : float
+        From 0 upwards the knots lie like scale·sinh²(k·spacing).
+    breaks : mapping of float to float
+        Position of each break, and the spacing with which the knots grow away from it
+        downwards in the same manner.
+    """
+    parts, low = [], 0.0
+    for place in sorted(breaks):
+        width = place - low
+        # the numbers of knots of both progressions add up
+        left = np.geomspace(1e-9, 0.5, 1500) * width
+        fine = np.concatenate([[low], low + left, place - left[-2::-1], [place]])
+        down = np.sqrt(np.maximum(place - fine, 0.0) / min(scale, FINEST))
+        count = np.arcsinh(np.sqrt(fine / scale)) / spacing - np.arcsinh(down) / breaks[place]
+        number = max(2 * FEWEST_POINTS, int(np.ceil(count[-1] - count[0])))
+        part = np.interp(np.linspace(count[0], count[-1], number + 1), count, fine)
+        parts.append(part[:-1])
+        low = place
+    return np.concatenate([*parts, [low]])
 
 
 def polynomial(c: Array, x: Array) -> Array:

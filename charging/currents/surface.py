@@ -19,6 +19,7 @@ from charging.currents.collection import (
     thick_geometry,
 )
 from charging.currents.emission import (
+    Emitter,
     electron_tables,
     emitter,
     escape_tables,
@@ -33,7 +34,7 @@ from charging.currents.populations import (
     refuse_one_sided,
 )
 from charging.currents.spectra import SpectrumTable, spectrum_table
-from charging.currents.tables import Yield, YieldTable
+from charging.currents.tables import YieldTable
 from environments.plasma import Plasma
 from environments.spectrum import SolarSpectrum
 from materials.record import Material
@@ -158,7 +159,7 @@ def surface_models(
     ions = populations(plasmas, electrons=False)
     emitters = [[emitter(material, law) for material in materials] for law in laws]
     ion_table = ion_tables(emitters[0], ions.temperature_eV[ions.maxwellian], thick)
-    ion_spectra = _spectra(plasmas, [(m.ion,) for m in emitters[0]], thick, electrons=False)
+    ion_spectra = _spectra(plasmas, emitters[0], thick, electrons=False)
     hot = electrons.temperature_eV[electrons.maxwellian]
     escape_table = escape_tables(
         materials, spectrum, radius_m=radius_m, photo_geometry=photo_geometry
@@ -178,9 +179,7 @@ def surface_models(
             escape_table=escape_table,
             photo_saturation_A_m2=saturation,
             angle_growth=growth,
-            electron_spectra=_spectra(
-                plasmas, [(m.secondary, m.backscatter) for m in of_law], thick, electrons=True
-            ),
+            electron_spectra=_spectra(plasmas, of_law, thick, electrons=True),
             ion_spectra=ion_spectra,
             escape_breaks_V=line_ends_V(materials, spectrum),
         )
@@ -189,14 +188,14 @@ def surface_models(
 
 
 def _spectra(
-    plasmas: Sequence[Plasma],
-    yields: Sequence[Sequence[Yield]],
-    thick: Geometry,
-    *,
-    electrons: bool,
+    plasmas: Sequence[Plasma], surfaces: Sequence[Emitter], thick: Geometry, *, electrons: bool
 ) -> tuple[SpectrumTable, ...]:
+    unique = {m.key: m for m in surfaces}
+    place = {key: i for i, key in enumerate(unique)}
+    yields = [(m.secondary, m.backscatter) if electrons else (m.ion,) for m in unique.values()]
+    rows = [place[m.key] for m in surfaces]
     return tuple(
-        spectrum_table(p, i, yields, thick)
+        spectrum_table(p, i, yields, thick, rows)
         for i, plasma in enumerate(plasmas)
         for p in plasma.populations
         if p.distribution is not None and (p.species.charge_number < 0) == electrons
@@ -207,11 +206,14 @@ class Setting(NamedTuple):
     """What surrounds the surfaces at one moment.
 
     strength : ndarray [..., P], share of each plasma, adding to 1;
-    light : ndarray [..., S], illumination times incidence cosine.
+    light : ndarray [..., S], illumination times incidence cosine;
+    illumination : ndarray [..., 1], share of the solar disc in view, which light that grows
+    at oblique incidence cannot exceed.
     """
 
     strength: Array
     light: Array
+    illumination: Array | float = 1.0
 
 
 class Currents(NamedTuple):
@@ -271,9 +273,9 @@ def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) 
     height, height_slope = escape_height(potential_V)
     escape, d_escape = model.escape_table(height)
     d_escape = d_escape * height_slope[..., None]
-    # `incidence_factor` of the light: exact in full sun; in penumbra, where light is not the
-    # cosine alone, a growth above 1 reaches its cap late
-    photo = model.photo_saturation_A_m2 * np.minimum(model.angle_growth * setting.light, 1.0)
+    # illumination times `incidence_factor` of the cosine
+    lit = np.minimum(model.angle_growth * setting.light, setting.illumination)
+    photo = model.photo_saturation_A_m2 * lit
     true_secondary, d_true_secondary = -answer[..., 0], -d_answer[..., 0]
     impact, d_impact = ion_answer[..., 0], d_ion_answer[..., 0]
     leaves, d_leaves = escape[..., 1], d_escape[..., 1]

@@ -113,15 +113,25 @@ class ChargeBalance:
         across: Array = (self.net.link_rows * y[:, None, :]).sum(axis=-1)
         return across * self.net.link_conductance_S
 
-    def flows(self, member: int, time_s: Array, y: Array, light: Array | None = None) -> Flows:
+    def flows(
+        self,
+        member: int,
+        time_s: Array,
+        y: Array,
+        light: Array | None = None,
+        illumination: Array | None = None,
+    ) -> Flows:
         """Evaluate all currents of one member by the direct path, not by the march's tables.
 
-        `light` [m, S] replaces the interpolated one where the exact one is known.
+        `light` [m, S] and `illumination` [m, 1] replace the interpolated ones where the exact
+        ones are known; give both.
         """
         potential = self.net.potentials(y)[:, self.net.surface_node]
         setting, temperature = self.around.at(time_s)
         if light is not None:
-            setting = setting._replace(light=light)
+            setting = setting._replace(
+                light=light, illumination=1.0 if illumination is None else illumination
+            )
         by_mechanism = surface_currents(self.models[member], potential, setting).by_mechanism
         return Flows(by_mechanism, self._film_current(temperature, y), self._links(y))
 

@@ -22,10 +22,7 @@ WORDS = {
 
 
 def sentence(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
-    """Say what stands where, when, driven by what, and what to try first.
-
-    The fix is a suggestion: nothing was run with it.
-    """
+    """Say what stands where, when and driven by what."""
     stand, peak = judgement.standing, judgement.peak
     requirement = stand.requirement
     unit = UNITS[requirement.kind]
@@ -36,17 +33,10 @@ def sentence(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
         "inverted": f"stands {size} above structure",
         "field": f"holds {size} across its film",
     }[requirement.kind]
-    if judgement.verdict == "not assessable":
-        return (
-            f"{judgement.surface}: {requirement.requirement_id} is not assessable: "
-            f"{judgement.reason}."
-        )
-    surface = next(s for s in loaded.case.surface if s.name == judgement.surface)
     return (
         f"{judgement.surface} {what} at {_when(loaded, mode, peak.time_s)}; allowed {limit} "
         f"({requirement.requirement_id}); law {peak.law}. "
-        f"{_driver(loaded, mode, judgement)} "
-        f"First fix to try: {_first_fix(surface, judgement, loaded)}."
+        f"{_driver(loaded, mode, judgement)}"
     )
 
 
@@ -57,12 +47,13 @@ def _when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
         if start is not None and end is not None and start <= time_s <= end:
             text += f", {(time_s - start) / 60.0:.0f} min into eclipse"
         elif end is not None and end < time_s < end + 3600.0:
-            text += f", {span(time_s - end)} after the end of umbra"
+            # the difference of the times as printed
+            text += f", {span(round(time_s) - round(end))} after the end of umbra"
     begun = [e for e in mode.around.episodes if e.onset_s <= time_s]
     if begun:
         last = max(begun, key=lambda e: e.onset_s)
         name = mode.plasmas[last.plasma].name
-        text += f", {span(time_s - last.onset_s)} after the onset of '{name}'"
+        text += f", {span(round(time_s) - round(last.onset_s))} after the onset of '{name}'"
     if not mode.around.episodes and not mode.around.eclipses:
         text = f"{span(time_s)} after the start in mode '{mode.name}'"
     return text
@@ -90,17 +81,40 @@ def _driver(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
     return text + "."
 
 
-def _first_fix(surface: Surface, judgement: Judgement, loaded: LoadedCase) -> str:
+def first_fixes(loaded: LoadedCase, judgements: Sequence[Judgement]) -> dict[str, list[str]]:
+    """First thing to try, and the surfaces with an exceeded limit it is meant for.
+
+    A suggestion: nothing was run with it.
+    """
+    fixes: dict[str, list[str]] = {}
+    for judgement in unmet(judgements):
+        surface = next(s for s in loaded.case.surface if s.name == judgement.surface)
+        names = fixes.setdefault(_first_fix(surface), [])
+        if surface.name not in names:
+            names.append(surface.name)
+    return fixes
+
+
+def _first_fix(surface: Surface) -> str:
     if surface.floating:
-        return "a bleed resistor from it to structure ([[link]])"
-    if judgement.standing.requirement.kind == "inverted" and "cover glass" in surface.material:
-        return (
-            'material = "cover glass, ITO-coated" without thickness_m: a face bonded to structure'
-        )
-    return "a conductive outer layer bonded to structure (a conductor without thickness_m)"
+        return "a bleed resistor to structure ([[link]])"
+    if surface.material.startswith("cover glass"):
+        return 'a face bonded to structure (material = "cover glass, ITO-coated", no thickness_m)'
+    return "a conductive outer layer bonded to structure (a conductor, no thickness_m)"
 
 
 def unmet(judgements: Sequence[Judgement]) -> list[Judgement]:
-    """Judgements that are not within, the worst first."""
-    bad = [j for j in judgements if j.verdict != "within"]
+    """Judgements that exceed their limit, the worst first."""
+    bad = [j for j in judgements if j.verdict == "exceeded"]
     return sorted(bad, key=lambda j: j.standing.margin / j.standing.requirement.limit)
+
+
+def not_assessable(judgements: Sequence[Judgement]) -> list[str]:
+    """One sentence per reason why limits could not be assessed."""
+    surfaces: dict[str, list[str]] = {}
+    for j in judgements:
+        if j.verdict == "not assessable":
+            names = surfaces.setdefault(j.reason, [])
+            if j.surface not in names:
+                names.append(j.surface)
+    return [f"Not assessable: {reason} ({', '.join(who)})." for reason, who in surfaces.items()]

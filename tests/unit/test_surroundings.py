@@ -152,7 +152,7 @@ def test_event_without_rise_starts_at_once() -> None:
 def test_shares_add_to_one_and_a_later_event_acts_on_what_it_finds() -> None:
     around = Surroundings(
         knots_s=np.array([0.0, 1e4]),
-        table=np.zeros((2, 2)),
+        table=np.zeros((2, 3)),
         episodes=(Episode(0.0, 100.0, 900.0, 500.0, 1), Episode(1250.0, 500.0, 10.0, 1e3, 2)),
         plasma_count=3,
         breaks_s=(),

@@ -7,12 +7,13 @@ calibration and not asserted. Run with ``-s`` to see all figures.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, replace
 
 import numpy as np
 import pytest
 from mpmath import mp  # type: ignore[import-untyped]
+from scipy.constants import e
 
 from charging.currents.photo_escape import photo_escape, photo_sheath, sheath_of
 from charging.photo_table import photocurrent_grid, photoyield_table
@@ -73,11 +74,13 @@ def recorded_air_exposed_gold(energy: float) -> float:
     return float(yield_per_photon(energy, curve))
 
 
-# The curve of clean gold claims a factor 10 near its threshold; that is the tolerance.
+# Semi-independent: the yields of clean gold know nothing of Wass et al., but the barrier of
+# 4.2 eV is theirs. The curve of clean gold claims a factor 10 near its threshold; that is the
+# tolerance. Which end of the published range belongs to which energy is our reading.
 # The recorded air-exposed curve took its points below 7 eV from Wass et al.: not counted.
 GOLD = [
     Check(
-        f"yield of gold with an adsorbed layer at {energy} eV",
+        f"yield of gold with an adsorbed layer at {energy} eV (semi-independent)",
         published,
         "1",
         10.0,
@@ -85,7 +88,7 @@ GOLD = [
         "measured",
         lambda energy=energy: clean_gold_with_lowered_barrier(energy),  # type: ignore[misc]
     )
-    for energy, published in ((4.8, 1.0e-5), (5.5, 2.1e-5), (6.2, 4.4e-5))
+    for energy, published in ((4.8, 1.0e-5), (6.2, 4.4e-5))
 ] + [
     Check(
         f"recorded yield of air-exposed gold at {energy} eV (own source)",
@@ -109,12 +112,15 @@ def test_gold_near_threshold(check: Check) -> None:
     assert factor <= check.tolerance, check.source
 
 
-def test_lowered_barrier_gives_the_published_average_of_the_near_ultraviolet() -> None:
+def test_lowered_barrier_lies_in_the_published_range_of_the_near_ultraviolet() -> None:
     # the range 4.8 to 6.2 eV as a whole, each yield weighted alike in the logarithm
     energy = np.linspace(4.8, 6.2, 29)
     ours = np.exp(np.mean([np.log(clean_gold_with_lowered_barrier(e)) for e in energy]))
     published = np.sqrt(1.0e-5 * 4.4e-5)
-    say(f"gold with adsorbed layer, 4.8-6.2 eV: {ours:.3g}, published mean {published:.3g}")
+    say(
+        f"gold with adsorbed layer, 4.8-6.2 eV, semi-independent: {ours:.3g}; geometric mean of"
+        f" the published ends (derived, not published): {published:.3g}"
+    )
     assert 1.0 / 4.4 < ours / published < 4.4  # the width of the published range itself
 
 
@@ -126,13 +132,44 @@ NAKAGAWA = (
 )
 
 
-@pytest.mark.parametrize("f107", [90.0, 150.0])
-def test_aged_state_against_geotail(f107: float) -> None:
-    # 1993-1998 had F10.7 of 70 to 120 for the most part (memory); 150 is our default
-    curve, sun = aged_photoyield(), solar_spectrum(f107=f107)
-    ours = 1e6 * float(photo_current_density(sun.photon_energy_eV, sun.photon_flux_m2_s, curve))
-    say(f"aged state at F10.7 {f107:g}: {ours:.1f} uA m-2, Geotail 85 +- 33")
-    assert abs(ours - 85.0) <= 33.0, NAKAGAWA
+GEOTAIL_F107 = (70.0, 80.0, 90.0, 100.0, 120.0, 150.0)
+
+
+def test_aged_state_against_geotail() -> None:
+    # 1993-1998 had F10.7 of 70 to 120 for the most part (memory); 150 is our default. The
+    # lower end of 85 +- 33 is 52: met from about 90 on, missed by 1 to 3 at 70 and 80.
+    met = {}
+    for f107 in GEOTAIL_F107:
+        sun = solar_spectrum(f107=f107)
+        ours = 1e6 * float(
+            photo_current_density(sun.photon_energy_eV, sun.photon_flux_m2_s, aged_photoyield())
+        )
+        met[f107] = abs(ours - 85.0) <= 33.0
+        words = "within" if met[f107] else "OUTSIDE"
+        say(f"aged state at F10.7 {f107:g}: {ours:.1f} uA m-2, {words} Geotail 85 +- 33")
+    assert all(met[f107] for f107 in GEOTAIL_F107 if f107 >= 90.0), NAKAGAWA
+    assert not any(met[f107] for f107 in GEOTAIL_F107 if f107 <= 80.0), NAKAGAWA
+
+
+def test_membership_of_the_envelope_decides_the_geotail_check() -> None:
+    # which laboratory curves count as those of aged surfaces was chosen by us: each material
+    # alone, and the envelope without its strongest member
+    sun = solar_spectrum(f107=100.0)
+    yields = {
+        name: yield_per_photon(sun.photon_energy_eV, load_material(name).photoyield)  # type: ignore[arg-type]
+        for name in AGED_FROM
+    }
+
+    def current(names: Iterable[str]) -> float:
+        largest = np.max([yields[name] for name in names], axis=0)
+        return float(1e6 * e * (sun.photon_flux_m2_s * largest).sum())
+
+    alone = {name: round(current([name]), 1) for name in AGED_FROM}
+    without = {name: round(current(set(AGED_FROM) - {name}), 1) for name in AGED_FROM}
+    say(f"envelope at F10.7 100: {current(AGED_FROM):.1f}; each alone {alone}; without {without}")
+    assert current(AGED_FROM) >= max(alone.values()) - 0.05
+    # without a single one of its members the envelope leaves the published range
+    assert min(without.values()) < 85.0 - 33.0
 
 
 def test_no_curve_behind_the_aged_state_knows_a_current_measured_in_orbit() -> None:
@@ -144,9 +181,9 @@ def test_no_curve_behind_the_aged_state_knows_a_current_measured_in_orbit() -> N
 
 
 def test_surface_density_of_photoelectrons_against_geotail() -> None:
-    # the relation alone, with Geotail's own current and energy scale
+    # not counted: the relation alone, with Geotail's own current and energy scale
     density = sheath_of(85e-6, 2.0 * 2.1).density_m3
-    say(f"photoelectron density {density:.3g} m-3, Geotail 2.9e9 +- 1.4e9")
+    say(f"not counted: photoelectron density {density:.3g} m-3, Geotail 2.9e9 +- 1.4e9")
     assert abs(density - 2.9e9) <= 1.4e9, NAKAGAWA
 
 
@@ -186,8 +223,8 @@ def test_shape_of_the_aged_state_against_the_two_exponential_fit(name: str) -> N
 
 @pytest.mark.parametrize("radius", [GEOS_RADIUS_M, 1.1])
 def test_shape_at_the_quiet_sun_is_weaker_and_known(radius: float) -> None:
-    # F10.7 80, when less of the current comes from energetic photons: the worst conductor,
-    # bodies of the size of the satellites behind the fit (memory). Too low by up to 2.7
+    # F10.7 80, when less of the current comes from energetic photons (all aged surfaces are
+    # alike); bodies of the size of the satellites behind the fit (memory). Too low by up to 2.7
     # around 4 V; the activity behind the fit is not known to us.
     material = in_state(load_material("oxidised aluminium"), "aged")
     ours = photo_escape(SHAPE_V, material, solar_spectrum(f107=80.0), radius_m=radius)
@@ -237,13 +274,23 @@ def test_collided_electrons_rule_from_about_20_eV() -> None:
 
 
 def test_mean_energies_are_printed_beside_the_published_range() -> None:
-    # not asserted: the publications do not say whether a mean energy or a V_0 is meant
+    # not counted, no agreement claimed: the publications do not say whether a mean energy or
+    # a V_0 (half of it as planar escape) is meant; the aged state and gold lie outside
+    # 2.1 +- 0.5 either way, graphite and steel inside it as a V_0
     say("mean energies [eV]; published 1.0 to 2.5 (memory), in orbit 2.1 +- 0.5")
-    for row in photoyield_table(["gold", "gold, air-exposed", "graphite", "stainless steel"]):
-        say(f"  {row.material}: {row.mean_energy_eV:.2f}")
+    for state in ("as recorded", "aged"):
+        for row in photoyield_table(
+            ["gold", "graphite", "stainless steel"], surface_state=state, f107=90.0
+        ):
+            assert row.mean_energy_eV is not None
+            half = 0.5 * row.mean_energy_eV
+            say(f"  {row.material}, {state}: {row.mean_energy_eV:.2f}, V_0 {half:.2f}")
 
 
 # --- thresholds of two compilations ----------------------------------------------------------
+#
+# Not a check of the library: its curves and work functions come from their own sources. Two
+# compilations are compared, neither of which a run uses, to show how far such figures differ.
 
 HANDBOOK = "handbook of physical quantities, vacuum-cleaned polycrystalline samples (two copies)"
 HANDBOOK_eV = {
@@ -283,21 +330,23 @@ def test_work_functions_against_contact_potentials() -> None:
 # --- Fowler's function -----------------------------------------------------------------------
 
 
-@pytest.mark.parametrize("x", [-30.0, -8.0, -3.0, -1.0, -0.2, 0.0, 0.2, 1.0, 4.0, 8.0, 30.0])
+@pytest.mark.parametrize(
+    "x", [-600.0, -90.0, -30.0, -8.0, -3.0, -1.0, -0.2, 0.0, 0.2, 1.0, 4.0, 8.0, 30.0]
+)
 def test_fowler_function_against_its_series(x: float) -> None:
     # Fowler 1931: x <= 0: e^x - e^2x/4 + e^3x/9 - ...; x >= 0: pi^2/6 + x^2/2 - (same of -x)
     with mp.workdps(30):
-        y = mp.exp(-abs(mp.mpf(x)))
-        series = mp.nsum(lambda n: (-1) ** (n + 1) * y**n / n**2, [1, mp.inf])
+        y = mp.exp(-abs(mp.mpf(x)))  # nsum is accurate against 1, so the first y is taken out
+        series = y * mp.nsum(lambda n: (-y) ** (n - 1) / n**2, [1, mp.inf])
         expected = series if x <= 0 else mp.pi**2 / 6 + mp.mpf(x) ** 2 / 2 - series
-    assert float(fowler_function(x)) == pytest.approx(float(expected), rel=1e-14)
+    assert float(fowler_function(x)) == pytest.approx(float(expected), rel=2e-15, abs=0.0)
 
 
 def test_fowler_function_against_its_integral() -> None:
     for x in (-5.0, 0.0, 2.5, 12.0):
         with mp.workdps(30):
             exact = mp.quad(lambda y: mp.log1p(mp.exp(x - y)), [0, max(x, 1), max(x, 1) + 80])  # noqa: B023
-        assert float(fowler_function(x)) == pytest.approx(float(exact), rel=1e-13)
+        assert float(fowler_function(x)) == pytest.approx(float(exact), rel=1e-13, abs=0.0)
 
 
 # --- solar activity --------------------------------------------------------------------------
@@ -306,6 +355,7 @@ METALS_AND_CARBONS = (
     "oxidised aluminium", "gold", "silver", "copper", "stainless steel", "titanium", "graphite",
     "carbon-fibre composite", "ITO coating",
 )  # fmt: skip
+BELOW_EXPECTED = ("silver",)
 HIGH_THRESHOLD = ("fused silica", "cover glass", "PTFE", "FEP film, silvered")
 
 
@@ -315,8 +365,10 @@ def test_ratio_of_photocurrents_between_solar_activities() -> None:
     grid = photocurrent_grid(EMITTING, incidence_cosine=[1.0], f107=[80.0, 200.0])[:, 0]
     ratio = dict(zip(EMITTING, grid[:, 1] / grid[:, 0], strict=True))
     shares = {row.material: row.bands for row in photoyield_table(EMITTING, f107=140.0)}
+    steady = {}
     for name, value in ratio.items():
         part = {share.band: share.share for share in shares[name]}
+        steady[name] = 1.0 - sum(part[b] for b in list(part)[:4])
         euv = part["X-ray"] + part["EUV"] + part["FUV below Lyman-alpha"]
         say(
             f"{name}: 200/80 = {value:.2f}; at 140: below 120 nm {100 * euv:.0f} %, "
@@ -324,7 +376,15 @@ def test_ratio_of_photocurrents_between_solar_activities() -> None:
             f"{100 * (1 - euv - part['Lyman-alpha']):.0f} %"
         )
     for name in METALS_AND_CARBONS:
-        assert 1.5 <= round(ratio[name], 1) <= 1.7, (name, ratio[name])
+        if name in BELOW_EXPECTED:
+            continue
+        assert 1.5 <= ratio[name] <= 1.7, (name, ratio[name])
+    # silver misses the expected range: its curve begins at 4.26 eV, so that light above
+    # 123 nm, which does not follow the activity, gives more of its current than elsewhere
+    for name in BELOW_EXPECTED:
+        say(f"{name}: {ratio[name]:.3f} lies below the expected 1.5 to 1.7")
+        assert ratio[name] < 1.5
+        assert steady[name] > max(steady[n] for n in METALS_AND_CARBONS if n != name)
     for name in HIGH_THRESHOLD:
         assert 1.7 <= ratio[name] <= 2.4, (name, ratio[name])
     # the near ultraviolet of air-exposed gold does not follow the activity
@@ -340,7 +400,7 @@ def test_ratio_of_activities_is_explained_by_the_bands(name: str) -> None:
         if share.share > 0.0
     ]
     total = active.saturation_current_A_m2 / quiet.saturation_current_A_m2
-    assert sum(share * gain for share, gain in gains) == pytest.approx(total, rel=1e-12)
+    assert sum(share * gain for share, gain in gains) == pytest.approx(total, rel=1e-12, abs=0.0)
     # Woods & Rottman 2002: Lyman-alpha by 1 + 0.00423 * 120; nothing scales above 123 nm
     by_band = {s.band: a.current_A_m2 / s.current_A_m2 for s, a in
                zip(quiet.bands, active.bands, strict=True) if s.share > 0.0}  # fmt: skip

@@ -1,0 +1,215 @@
+"""Roots of the current balance: double roots built by hand, folds, branches, a fine scan."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from numpy.typing import NDArray
+
+from charging.currents.balance import floating_potentials, net_current
+from charging.currents.folds import fold_points, with_density
+from charging.currents.surface import SurfaceModel, surface_model
+from charging.errors import InputError, NoSolutionError
+from environments.auroral import FlatAndMaxwellian, Fontheim
+from environments.distributions import Kappa
+from environments.plasma import (
+    ELECTRON,
+    HYDROGEN_ION,
+    OXYGEN_ION,
+    Plasma,
+    Population,
+    population_of,
+)
+from environments.spectrum import solar_spectrum
+from materials import load_material, material_names
+from materials.secondary import YIELD_LAWS
+
+Array = NDArray[np.float64]
+SUN = solar_spectrum()
+
+
+def plasma(*parts: Population) -> Plasma:
+    return Plasma("test", "test", "a test", "assumed", None, "", parts)
+
+
+def maxwellian(species, density, temperature):
+    return Population(species, "maxwellian", density, temperature)
+
+
+def model_of(name: str, around: Plasma, law="sanders_inouye_1979", **options) -> SurfaceModel:
+    options = {"radius_m": 1.0, "collection": "sphere", **options}
+    return surface_model([load_material(name)], [around], SUN, law=law, **options)
+
+
+def triple_root_plasma(hot_eV: float = 3000.0, hot_m3: float = 1e6) -> Plasma:
+    return plasma(
+        maxwellian(ELECTRON, 2e6, 60.0),
+        maxwellian(ELECTRON, hot_m3, hot_eV),
+        maxwellian(HYDROGEN_ION, 2e6, 60.0),
+        maxwellian(HYDROGEN_ION, hot_m3, hot_eV),
+    )
+
+
+def test_three_roots_and_the_branch_reached():
+    # between its two folds the hot population leaves both branches open
+    model = model_of("polyimide film", triple_root_plasma(hot_m3=0.3e6))
+    found = floating_potentials(model, 0.0)
+    assert [r.stable for r in found.roots] == [True, False, True]
+    at_zero = net_current(model, np.zeros(1), 0.0)[0][0]
+    assert at_zero > 0.0
+    assert found.reached_V == found.roots[2].potential_V > 0.0
+    dense = floating_potentials(model_of("polyimide film", triple_root_plasma()), 0.0)
+    assert dense.reached_V == dense.roots[0].potential_V < -1000.0
+
+
+def test_double_roots_built_by_adding_a_constant_current():
+    """A constant taken off the current moves an extremum onto zero exactly."""
+    base = model_of("polyimide film", triple_root_plasma(hot_m3=0.3e6))
+    grid = -np.geomspace(1.0, 2e4, 40001)
+    slope = net_current(base, grid, 0.0)[1]
+    turning = np.flatnonzero(slope[:-1] * slope[1:] < 0.0)
+    assert turning.size >= 1
+    for k in turning:
+        low, high = grid[k + 1], grid[k]
+        for _ in range(80):
+            middle = 0.5 * (low + high)
+            same = net_current(base, np.array([middle]), 0.0)[1][0] * slope[k] > 0.0
+            low, high = (low, middle) if same else (middle, high)
+        at = 0.5 * (low + high)
+        extremum = float(net_current(base, np.array([at]), 0.0)[0][0])
+        minimum = slope[k] > 0.0  # the grid falls: towards 0 V the current falls, then rises
+        for offset, count in ((3e-8, 2), (0.0, 1)):
+            # the photocurrent of a surface far below 0 V is a constant: use it as the offset,
+            # so that a minimum ends just below zero, a maximum just above, or exactly on it
+            beyond = -offset * abs(extremum) if minimum else offset * abs(extremum)
+            shifted = replace(base, photo_saturation_A_m2=np.array([beyond - extremum]))
+            found = floating_potentials(shifted, 1.0)
+            near = [r for r in found.roots if abs(r.potential_V - at) < 0.05 * abs(at)]
+            # rounding may open an exact double root into two a millivolt apart
+            assert len(near) == 2 or (count == 1 and len(near) == 1), (at, offset)
+            assert max(abs(r.potential_V - at) for r in near) < 2e-3 * abs(at)
+
+
+def test_folds_in_density_bracket_the_triple_region():
+    around = triple_root_plasma(hot_m3=1e6)
+    model = model_of("polyimide film", around)
+    values = np.geomspace(1e-3, 1e2, 26)
+    folds = fold_points(lambda f: with_density(model, f, 1), values)
+    assert folds
+    for fold in folds:
+        below = floating_potentials(with_density(model, fold.parameter * (1 - 1e-4), 1), 0.0)
+        above = floating_potentials(with_density(model, fold.parameter * (1 + 1e-4), 1), 0.0)
+        more, fewer = (above, below) if fold.appears else (below, above)
+        assert len(more.roots) == len(fewer.roots) + 2
+        # at a fold current and slope vanish together
+        at = with_density(model, fold.parameter, 1)
+        value, slope = net_current(at, np.array([fold.potential_V]), 0.0)
+        scale = np.abs(net_current(at, np.array([2.0 * fold.potential_V]), 0.0)[0][0])
+        assert abs(value[0]) < 1e-3 * scale
+        assert abs(slope[0] * fold.potential_V) < 2e-2 * scale
+
+
+def test_fold_in_temperature():
+    def model_at(hot_eV: float) -> SurfaceModel:
+        return model_of("polyimide film", triple_root_plasma(hot_eV))
+
+    folds = fold_points(model_at, np.geomspace(500.0, 8000.0, 7))
+    assert folds
+    assert all(500.0 < fold.parameter < 8000.0 for fold in folds)
+
+
+def test_no_sign_change_is_an_error():
+    around = plasma(maxwellian(ELECTRON, 1e6, 1000.0), maxwellian(HYDROGEN_ION, 1e-3, 1.0))
+    model = model_of("bare collector", around, collection="plane")
+    silent = replace(model, ions=replace(model.ions, thermal_current_A_m2=np.zeros(1)))
+    with pytest.raises(NoSolutionError):
+        floating_potentials(silent, 0.0)
+
+
+@pytest.mark.parametrize("species", [ELECTRON, HYDROGEN_ION])
+def test_a_plasma_of_one_sign_is_refused(species):
+    alone = plasma(maxwellian(species, 1e6, 100.0))
+    with pytest.raises(InputError, match="holds no"):
+        model_of("gold", alone)
+
+
+# --- random triples against a fine scan ---------------------------------------------------
+
+
+def random_plasma(random: np.random.Generator) -> Plasma:
+    def temperature() -> float:
+        return float(10.0 ** random.uniform(-1.0, 4.7))
+
+    def density() -> float:
+        return float(10.0 ** random.uniform(4.0, 8.0))
+
+    parts: list[Population] = []
+    kind = random.integers(0, 5)
+    if kind == 1:
+        parts.append(
+            population_of(ELECTRON, Kappa(density(), temperature(), random.uniform(2.1, 8)))
+        )
+    elif kind == 2:
+        parts.append(population_of(ELECTRON, FlatAndMaxwellian(
+            3.9e-18, 17440.0, 1.13e6, 3960.0)))  # fmt: skip
+    elif kind == 3:
+        centre = float(10.0 ** random.uniform(2.5, 4.3))
+        parts.append(population_of(ELECTRON, Fontheim(
+            10.0 ** random.uniform(9, 12), random.uniform(0.8, 2.0), 1e8, 2e3,
+            10.0 ** random.uniform(7, 10), centre, centre * random.uniform(0.05, 0.4),
+            30.0, 5e4)))  # fmt: skip
+    parts += [maxwellian(ELECTRON, density(), temperature()) for _ in range(random.integers(1, 3))]
+    ion = HYDROGEN_ION if random.random() < 0.7 else OXYGEN_ION
+    parts += [maxwellian(ion, density(), temperature()) for _ in range(random.integers(1, 3))]
+    return plasma(*parts)
+
+
+def random_triple(seed: int) -> tuple[SurfaceModel, float]:
+    random = np.random.default_rng([4, seed])
+    name = str(random.choice(material_names()))
+    model = model_of(
+        name,
+        random_plasma(random),
+        law=YIELD_LAWS[random.integers(0, 4)],
+        collection=str(random.choice(["auto", "sphere", "cylinder", "plane"])),
+        radius_m=float(10.0 ** random.uniform(-1.0, 1.5)),
+    )
+    light = 0.0 if random.random() < 0.5 else float(random.uniform(0.0, 1.0))
+    return model, light
+
+
+def assert_no_root_missed(seed: int) -> int:
+    """Compare with a scan of 1e5 points uniform in asinh; returns the number of roots."""
+    model, light = random_triple(seed)
+    scan = np.sinh(np.linspace(-1.0, 1.0, 100_001) * np.arcsinh(2e5))
+    value = np.concatenate([net_current(model, part, light)[0] for part in np.array_split(scan, 8)])
+    crossing = np.flatnonzero(value[:-1] * value[1:] < 0.0)
+    try:
+        found = floating_potentials(model, light).roots
+    except NoSolutionError:
+        assert crossing.size == 0, seed
+        return 0
+    volts = np.array([r.potential_V for r in found])
+    for k in crossing:
+        inside = (volts >= scan[k]) & (volts <= scan[k + 1])
+        assert inside.any(), (seed, scan[k])
+    for v in volts:  # and what is found is a root
+        step = 1e-6 * max(1.0, abs(v))
+        around = net_current(model, np.array([v - step, v, v + step]), light)[0]
+        assert around[0] * around[2] <= 0.0 or abs(around[1]) <= 1e-6 * np.abs(around).max(), seed
+    return len(found)
+
+
+def test_roots_of_random_triples_against_a_fine_scan():
+    counts = [assert_no_root_missed(seed) for seed in range(40)]
+    assert max(counts) >= 3
+
+
+@pytest.mark.slow
+@pytest.mark.timeout(7200)
+@pytest.mark.parametrize("block", range(20))
+def test_roots_of_two_thousand_triples(block: int):
+    for seed in range(1000 + 100 * block, 1100 + 100 * block):
+        assert_no_root_missed(seed)
