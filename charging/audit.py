@@ -54,6 +54,7 @@ def charge_audit(balance: ChargeBalance, member: int, path: Trajectory) -> Audit
     film = np.abs(flows.film_A_m2) * net.area_m2[net.film_surface]
     for i, node in enumerate(net.film_node):
         through[:, node] += film[:, i]
+    through[:, 0] += np.abs(flows.emitter_A).sum(axis=-1)
     total = (through.reshape(steps, POINTS, -1) * share).sum(axis=(0, 1))
     relative = float(np.max(np.abs(residual) / np.where(total > 0.0, total, 1.0)))
     return Audit(path.start_s + path.step_s, residual, relative)

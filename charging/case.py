@@ -15,19 +15,19 @@ from typing import TYPE_CHECKING, Any, TypeVar
 
 from pydantic import ValidationError
 
+from charging.case_checks import check_case
 from charging.case_errors import input_error, problems_of
+from charging.case_files import NO_FILES, CaseFiles, read_files
 from charging.case_library import Sources, find_material, find_plasma
+from charging.case_modes import Emitter, Mode
+from charging.case_orbit import Attitude, OrbitFile, OrbitFixed, OrbitKepler
 from charging.case_tables import (
-    Attitude,
     Body,
     Case,
     Emission,
     Limit,
     Link,
     MarginPolicy,
-    Mode,
-    OrbitFixed,
-    OrbitKepler,
     PlasmaEvent,
     PlasmaTable,
     Review,
@@ -50,12 +50,15 @@ __all__ = [
     "Attitude",
     "Body",
     "Case",
+    "CaseFiles",
     "Emission",
+    "Emitter",
     "Limit",
     "Link",
     "LoadedCase",
     "MarginPolicy",
     "Mode",
+    "OrbitFile",
     "OrbitFixed",
     "OrbitKepler",
     "PlasmaEvent",
@@ -91,6 +94,8 @@ class LoadedCase:
         names, the materials whose curves the surface states need.
     material_texts, plasma_texts : mapping
         Their TOML texts by the same keys: with them the case can be run again.
+    files : CaseFiles
+        Contents and texts of the data files.
     """
 
     case: Case
@@ -101,9 +106,12 @@ class LoadedCase:
     material_texts: Mapping[str, str]
     plasmas: Mapping[str, Plasma]
     plasma_texts: Mapping[str, str]
+    files: CaseFiles = NO_FILES
 
 
-def load_case(path: str | Path, *, allow_outside: bool = False) -> LoadedCase:
+def load_case(
+    path: str | Path, *, allow_outside: bool = False, orbit_only: bool = False
+) -> LoadedCase:
     """Read a case file and the materials and plasmas it names.
 
     Parameters
@@ -112,6 +120,9 @@ def load_case(path: str | Path, *, allow_outside: bool = False) -> LoadedCase:
         The case file, up to 1 MB of UTF-8 TOML.
     allow_outside : bool, optional
         Whether the case may name files outside its own folder (links are followed first).
+    orbit_only : bool, optional
+        The case is for its orbit alone: the bounds on length and output times of a run do not
+        hold.
 
     Returns
     -------
@@ -124,7 +135,7 @@ def load_case(path: str | Path, *, allow_outside: bool = False) -> LoadedCase:
         Anything that cannot be used, with file, line, key, value and what is allowed.
     """
     path = Path(path)
-    return _loaded(read_toml(path), path, Sources(path, allow_outside))
+    return _loaded(read_toml(path), path, Sources(path, allow_outside), orbit_only)
 
 
 def load_case_text(
@@ -133,6 +144,8 @@ def load_case_text(
     file: str = "case.toml",
     material_texts: Mapping[str, str] | None = None,
     plasma_texts: Mapping[str, str] | None = None,
+    file_texts: Mapping[str, str] | None = None,
+    file_sha256: Mapping[str, str] | None = None,
 ) -> LoadedCase:
     """Return a case from its text, as a result file keeps it.
 
@@ -144,13 +157,20 @@ def load_case_text(
         How messages call it.
     material_texts, plasma_texts : mapping, optional
         TOML texts by the text that names them in the case; what is not in them is a library name.
+    file_texts, file_sha256 : mapping, optional
+        Texts of the data files by name, and the SHA-256 of all of them.
 
     Raises
     ------
     InputError
         As `load_case`; also when the case names a file that is not among the texts.
     """
-    sources = Sources(material_texts=material_texts or {}, plasma_texts=plasma_texts or {})
+    sources = Sources(
+        material_texts=material_texts or {},
+        plasma_texts=plasma_texts or {},
+        file_texts=file_texts or {},
+        file_sha256=file_sha256 or {},
+    )
     return _loaded(parse_toml(text, file=file), Path(file), sources)
 
 
@@ -165,9 +185,15 @@ def case_schema() -> dict[str, Any]:
     return Case.model_json_schema()
 
 
-def _loaded(toml: TomlFile, path: Path, sources: Sources) -> LoadedCase:
-    case, origin = _checked(toml)
-    problems: list[Problem] = []
+def _loaded(toml: TomlFile, path: Path, sources: Sources, orbit_only: bool = False) -> LoadedCase:
+    case, origin = _checked(toml, orbit_only)
+    files = NO_FILES
+    try:
+        case, files, problems = read_files(case, sources)
+        if not problems:
+            check_case(case, orbit_only=orbit_only)
+    except ProblemsFound as error:
+        problems = list(error.problems)
     materials = _found(_materials_named(case), find_material, sources, problems)
     plasmas = _found(_plasmas_named(case), find_plasma, sources, problems)
     if not problems:
@@ -196,6 +222,7 @@ def _loaded(toml: TomlFile, path: Path, sources: Sources) -> LoadedCase:
         material_texts=MappingProxyType({name: found[1] for name, found in materials.items()}),
         plasmas=MappingProxyType({name: found[0] for name, found in plasmas.items()}),
         plasma_texts=MappingProxyType({name: found[1] for name, found in plasmas.items()}),
+        files=files,
     )
 
 
@@ -217,13 +244,13 @@ def _found(
     return found
 
 
-def _checked(toml: TomlFile) -> tuple[Case, Mapping[KeyPath, KeyPath]]:
+def _checked(toml: TomlFile, orbit_only: bool) -> tuple[Case, Mapping[KeyPath, KeyPath]]:
     """Return the case of a document, and which of its keys stand in the file as bare ones."""
     rewritten = rewrite_quantities(toml.document, case_bare_keys())
     problems = list(rewritten.problems)
     case = None
     try:
-        case = Case.model_validate(rewritten.document)
+        case = Case.model_validate(rewritten.document, context={"orbit_only": orbit_only})
     except ValidationError as error:
         problems += [
             problem

@@ -11,22 +11,23 @@ from collections.abc import Iterable, Iterator, Sequence
 from datetime import timedelta
 from typing import TYPE_CHECKING
 
+from charging.case_mode_checks import emitter_problems, mode_problems
 from charging.case_values import nearest_name, quoted
 from charging.errors import KeyPath, Problem, ProblemsFound
 
 if TYPE_CHECKING:
+    from charging.case_orbit import OrbitKepler
     from charging.case_tables import (
         Case,
         Limit,
         Link,
-        Mode,
-        OrbitKepler,
         PlasmaEvent,
         Surface,
     )
 
 STRUCTURE = "structure"
 MOST_OUTPUT_TIMES = 200_000
+LONGEST_RUN_H = 24.0 * 366.0
 MOST_PROBLEMS = 50  # a search for the nearest name belongs to each
 
 
@@ -104,7 +105,7 @@ def _surface_problems(surface: Surface) -> Iterator[Problem]:
         yield _missing(
             "temperature_K",
             "is missing; the conductivity of a surface with thickness_m depends on it",
-            "a number [K], or {sunlit_K, eclipse_K, time_constant_min}",
+            "a number [K], {sunlit_K, eclipse_K, time_constant_min}, or a .csv file",
         )
     if surface.attached_to == surface.name != STRUCTURE:
         yield Problem(("attached_to",), "is the surface itself", value=surface.attached_to)
@@ -124,14 +125,6 @@ def check_link(link: Link) -> None:
     if link.between[0] == link.between[1]:
         message = "joins a conductor with itself"
         raise ProblemsFound([Problem(("between",), message, value=list(link.between))])
-
-
-def check_mode(mode: Mode) -> None:
-    """Refuse a mode that changes nothing."""
-    changes = (mode.illumination, mode.sun_direction, mode.plasma, mode.f107)
-    if mode.events and all(change is None for change in changes):
-        allowed = "illumination, sun_direction, plasma, f107, events = false"
-        raise ProblemsFound([Problem((), "changes nothing", sentence=True, allowed=allowed)])
 
 
 def _limit_problems(limit: Limit) -> Iterator[Problem]:
@@ -163,31 +156,44 @@ def _list_problems(key: KeyPath, names: Sequence[str]) -> Iterator[Problem]:
 # from table to table -----------------------------------------------------------------------------
 
 
-def check_case(case: Case) -> None:
-    """Refuse what one table says against another: names, times, kinds of orbit."""
+def check_case(case: Case, *, orbit_only: bool = False) -> None:
+    """Refuse what one table says against another: names, times, kinds of orbit.
+
+    `orbit_only` lifts the bounds on length and output times that hold for a run.
+    """
     if not case.surface:
         raise ProblemsFound([_missing("surface", allowed="at least one [[surface]]")])
     found = itertools.chain(
-        _time_problems(case),
+        _time_problems(case, orbit_only),
         _sun_problems(case),
         _event_problems(case),
         _name_problems(case),
         _attachment_problems(case),
-        _mode_problems(case),
+        mode_problems(case),
+        emitter_problems(case),
         _list_problems(("review", "ages"), case.review.ages),
         _list_problems(("review", "plasmas"), case.review.plasmas),
     )
     _raise(itertools.islice(found, MOST_PROBLEMS))
 
 
-def _time_problems(case: Case) -> Iterator[Problem]:
+def _time_problems(case: Case, orbit_only: bool) -> Iterator[Problem]:
+    if not case.resolved:  # asked again once the file of the orbit is read
+        return
     fixed_h = case.orbit.duration_h if case.orbit.kind == "fixed" else None
     if fixed_h is not None and case.time.duration_h is not None:
         message = "stands in [orbit] too; give it once"
         yield Problem(("time", "duration_h"), message, value=case.time.duration_h)
     elif fixed_h is None and case.time.duration_h is None:
         yield Problem(("time", "duration_h"), "is missing", missing=True, allowed="hours above 0")
-    elif case.output_times > MOST_OUTPUT_TIMES:
+    elif case.duration_s > 3600.0 * LONGEST_RUN_H and not orbit_only:
+        yield Problem(
+            ("time", "duration_h"),
+            "is out of range",
+            value=case.time.duration_h,
+            allowed=f"at most {LONGEST_RUN_H:.10g} for a run; halflit orbit takes 20 times as much",
+        )
+    elif case.output_times > MOST_OUTPUT_TIMES and not orbit_only:
         least = case.duration_s / MOST_OUTPUT_TIMES
         yield Problem(
             ("time", "output_step_s"),
@@ -204,10 +210,28 @@ def _sun_problems(case: Case) -> Iterator[Problem]:
             "goes only with a fixed orbit; here it follows from the date",
             value=case.sun.distance_au,
         )
+    if case.orbit.kind == "kepler":
+        perigee_km = case.orbit.semi_major_axis_km * (1.0 - case.orbit.eccentricity)
+        lowest_km = perigee_km - 6378.137
+        if lowest_km <= case.sun.absorbing_height_km:
+            yield too_low(case.sun.absorbing_height_km, lowest_km)
+
+
+def too_low(height_km: float, lowest_km: float) -> Problem:
+    """Return the fault of an orbit that leads through the absorbing air."""
+    return Problem(
+        ("sun", "absorbing_height_km"),
+        f"is not below the orbit, which comes down to {lowest_km:.0f} km",
+        value=height_km,
+        missing=height_km == 0.0,  # then it need not stand in the file
+        allowed=f"below {lowest_km:.6g}",
+    )
 
 
 def _event_problems(case: Case) -> Iterator[Problem]:
     if case.time.duration_h is None and getattr(case.orbit, "duration_h", None) is None:
+        return
+    if not case.resolved:
         return
     onsets = case.event_onset_s
     spans = []
@@ -237,7 +261,11 @@ def _event_problems(case: Case) -> Iterator[Problem]:
 
 def _name_problems(case: Case) -> Iterator[Problem]:
     names = case.names
-    for key, entries in (("surface", names), ("mode", [mode.name for mode in case.mode])):
+    for key, entries in (
+        ("surface", names),
+        ("mode", [mode.name for mode in case.mode]),
+        ("emitter", [emitter.name for emitter in case.emitter]),
+    ):
         for index, name in enumerate(entries):
             if name in entries[:index]:
                 first = entries.index(name) + 1
@@ -320,15 +348,3 @@ def _returns(start: str, surfaces: dict[str, Surface]) -> bool:
         seen.add(name)
         name = surfaces[name].attached_to
     return False
-
-
-def _mode_problems(case: Case) -> Iterator[Problem]:
-    for index, mode in enumerate(case.mode):
-        if case.orbit.kind != "fixed":
-            for key in ("illumination", "sun_direction"):
-                if getattr(mode, key) is not None:
-                    yield Problem(
-                        ("mode", index, key),
-                        "goes only with a fixed orbit; here it follows from orbit and attitude",
-                        value=getattr(mode, key),
-                    )

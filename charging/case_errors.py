@@ -17,6 +17,8 @@ from typing import Any
 from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
 
+from charging import case_modes as modes
+from charging import case_orbit as orbits
 from charging import case_tables as tables
 from charging.case_values import nearest_name, quoted
 from charging.errors import InputError, KeyPath, Problem, ProblemsFound, printable
@@ -24,14 +26,17 @@ from charging.toml_lines import line_of
 from charging.units import TableName, case_bare_keys
 
 ORBIT_KINDS: Mapping[str, type[BaseModel]] = {
-    "kepler": tables.OrbitKepler,
-    "fixed": tables.OrbitFixed,
+    "kepler": orbits.OrbitKepler,
+    "oem": orbits.OrbitFile,
+    "tle": orbits.OrbitFile,
+    "table": orbits.OrbitFile,
+    "fixed": orbits.OrbitFixed,
 }
 _MODELS: Mapping[TableName, type[BaseModel]] = {
     (): tables.Case,
     ("time",): tables.Time,
     ("sun",): tables.Sun,
-    ("attitude",): tables.Attitude,
+    ("attitude",): orbits.Attitude,
     ("plasma",): tables.PlasmaTable,
     ("plasma", "event"): tables.PlasmaEvent,
     ("body",): tables.Body,
@@ -39,25 +44,21 @@ _MODELS: Mapping[TableName, type[BaseModel]] = {
     ("surface",): tables.Surface,
     ("surface", "temperature_K"): tables.SunlitEclipse,
     ("link",): tables.Link,
-    ("mode",): tables.Mode,
+    ("mode",): modes.Mode,
+    ("mode", "attitude"): orbits.Attitude,
+    ("emitter",): modes.Emitter,
     ("limit",): tables.Limit,
     ("limit", "margin_policy"): tables.MarginPolicy,
     ("review",): tables.Review,
 }
 _ARRAYS: Sequence[TableName] = (
-    ("plasma", "event"), ("surface",), ("link",), ("mode",), ("limit",),
+    ("plasma", "event"), ("surface",), ("link",), ("mode",), ("emitter",), ("limit",),
     ("population",),  # of a plasma file
 )  # fmt: skip
 # What the design foresees and this release does not read yet, with what to write instead.
 _KEYS_NOT_YET = {
-    ("mode", "from"): "alternative = true, a whole run of its own",
-    ("mode", "to"): "alternative = true, a whole run of its own",
     ("plasma", "file"): 'use = "…", a name (halflit plasmas) or a plasma file',
     ("plasma", "model"): 'use = "…", a name (halflit plasmas) or a plasma file',
-}
-_VALUES_NOT_YET = {
-    ("orbit", "kind"): ("oem", "tle", "table"),
-    ("attitude", "law"): ("sun", "inertial", "spin", "quaternions", "yaw steering"),
 }
 _MOST_GUESSES = 200
 
@@ -237,7 +238,7 @@ def _place(location: tuple[int | str, ...], document: Mapping[str, Any]) -> KeyP
     key = list(location)
     if len(key) > 1 and key[0] == "orbit" and key[1] in ORBIT_KINDS:
         del key[1]
-    if len(key) > 3 and key[2] == "temperature_K" and key[3] in ("number", "table"):
+    if len(key) > 3 and key[2] == "temperature_K" and key[3] in ("number", "table", "file"):
         del key[3]
     return tuple(key)
 
@@ -247,8 +248,6 @@ def _missing(key: KeyPath) -> Problem:
     if len(key) == 1:
         allowed = f"[[{key[0]}]]" if key in _ARRAYS else f"[{key[0]}]"
         allowed = None if key == ("title",) else f"a table {allowed}"
-    elif _names(key) == ("mode", "alternative"):
-        allowed = "alternative = true, a whole run of its own"
     return Problem(key, "is missing", missing=True, allowed=allowed)
 
 
@@ -264,11 +263,6 @@ def _wrong_length(key: KeyPath, document: Mapping[str, Any], most: object = None
 
 def _choice(key: KeyPath, value: object, choices: Iterable[str]) -> Problem:
     names = list(choices)
-    later = _VALUES_NOT_YET.get(_names(key)[-2:], ())  # type: ignore[arg-type]
-    if key and key[-1] == "alternative":
-        return Problem(key, "is not available yet", value=value, allowed="true")
-    if isinstance(value, str) and value in later:
-        return Problem(key, "is not available yet", value=value, allowed=quoted(names))
     near = nearest_name(value, names) if isinstance(value, str) else None
     return Problem(key, "is unknown", value=value, allowed=quoted(names), nearest=near)
 
@@ -282,7 +276,8 @@ def _unknown_key(key: KeyPath, document: Mapping[str, Any]) -> Problem:
     model = _MODELS.get(names[:-1])
     if names[:-1] == ("orbit",):
         model = ORBIT_KINDS[str(_value_at(document, ("orbit", "kind")))]
-    known = list(model.model_fields) if model is not None else []
+    fields = model.model_fields if model is not None else {}
+    known = [field.alias or name for name, field in fields.items()]
     near = nearest_name(str(key[-1]), [*known, *case_bare_keys().get(names[:-1], ())])
     return Problem(
         key, f'key "{name}" is unknown', sentence=True, allowed=", ".join(known), nearest=near

@@ -33,12 +33,18 @@ class Sources:
         Whether a file may lie outside that folder.
     material_texts, plasma_texts : mapping
         TOML texts that come before library and files.
+    file_texts : mapping
+        Texts of data files that come before files.
+    file_sha256 : mapping
+        SHA-256 of data files, also of those whose content was not kept.
     """
 
     case_file: Path | None = None
     allow_outside: bool = False
     material_texts: Mapping[str, str] = field(default_factory=dict)
     plasma_texts: Mapping[str, str] = field(default_factory=dict)
+    file_texts: Mapping[str, str] = field(default_factory=dict)
+    file_sha256: Mapping[str, str] = field(default_factory=dict)
 
 
 def find_material(name: str, sources: Sources) -> tuple[Material, str]:
@@ -124,6 +130,18 @@ def _toml(kind: str, name: str, sources: Sources, kept: Mapping[str, str]) -> To
         return parse_toml(kept[name], file=f'{kind} "{name}"')
     if not is_file(name):
         return None
+    real, path = located(name, sources)
+    return read_toml(real, file=str(path))
+
+
+def located(name: str, sources: Sources) -> tuple[Path, Path]:
+    """Return the file that a case names: as it is on the disk, and as a message calls it.
+
+    Raises
+    ------
+    ProblemsFound
+        There is no such file, or it lies outside the folder of the case.
+    """
     if sources.case_file is None:
         raise ProblemsFound([Problem((), "is a file whose text was not kept")])
     path = sources.case_file.parent / name
@@ -146,7 +164,7 @@ def _toml(kind: str, name: str, sources: Sources, kept: Mapping[str, str]) -> To
         )
     if not found:
         raise ProblemsFound([Problem((), "is a file that does not exist")])
-    return read_toml(real, file=str(path))
+    return real, path
 
 
 def _unknown(nearest: str | None, next_step: str) -> ProblemsFound:

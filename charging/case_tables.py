@@ -8,49 +8,36 @@ is in :mod:`charging.case_checks`, which :class:`Case` runs. Read a file with
 from __future__ import annotations
 
 import math
-from datetime import UTC, datetime, timedelta
+from datetime import datetime
 from typing import Annotated, ClassVar, Literal, Self, TypeAlias
 
-from pydantic import (
-    AfterValidator,
-    BaseModel,
-    ConfigDict,
-    Discriminator,
-    Field,
-    StringConstraints,
-    Tag,
-    model_validator,
-)
+from pydantic import Discriminator, Field, Tag, ValidationInfo, model_validator
 
 from charging.case_checks import (
+    LONGEST_RUN_H,
     check_case,
     check_event,
-    check_kepler,
     check_limit,
     check_link,
-    check_mode,
     check_surface,
 )
-from charging.case_values import NAME_PATTERN, direction, free_text, reference, utc_time
+from charging.case_modes import Emitter, Mode
+from charging.case_orbit import Attitude, Orbit, OrbitFile, OrbitFixed
+from charging.case_types import (
+    LONGEST_ORBIT_H,
+    MOST_ENTRIES,
+    CsvFile,
+    Direction,
+    FreeText,
+    Moment,
+    Name,
+    Positive,
+    Reference,
+    SolarActivity,
+    Table,
+    Temperature,
+)
 
-EARTH_EQUATORIAL_RADIUS_KM = 6378.137  # WGS-84 defining constant
-LONGEST_RUN_H = 24.0 * 366.0
-MOST_ENTRIES = 1000  # of one array; far beyond use
-
-Name: TypeAlias = Annotated[str, StringConstraints(pattern=NAME_PATTERN)]
-"""Name of a surface, mode, material or plasma; never used as a path."""
-FreeText: TypeAlias = Annotated[str, AfterValidator(free_text)]
-Reference: TypeAlias = Annotated[str, AfterValidator(reference)]
-"""Library name, or a file when it ends in .toml or holds a slash."""
-Moment: TypeAlias = Annotated[datetime, AfterValidator(utc_time)]
-"""Moment in UTC; the file must say Z or an offset."""
-Direction: TypeAlias = Annotated[tuple[float, float, float], AfterValidator(direction)]
-"""Unit vector along what was written; any length but zero is accepted."""
-Positive: TypeAlias = Annotated[float, Field(gt=0.0)]
-Share: TypeAlias = Annotated[float, Field(ge=0.0, le=1.0)]
-Angle: TypeAlias = Annotated[float, Field(ge=-360.0, le=360.0)]
-Temperature: TypeAlias = Annotated[float, Field(ge=50.0, le=2000.0)]
-"""Of a surface [K]; below 50 K the conduction law is refused."""
 SolarBand: TypeAlias = Literal[
     "X-ray",
     "EUV",
@@ -62,54 +49,16 @@ SolarBand: TypeAlias = Literal[
 ]
 """Bands of `environments.spectrum.BANDS`, which needs numpy and cannot be read here."""
 BandFactor: TypeAlias = Annotated[float, Field(ge=0.0, le=1e6)]
-SolarActivity: TypeAlias = Annotated[float, Field(ge=50.0, le=500.0)]
-
-
-class Table(BaseModel):
-    """Common manner of every table: strict types, no unknown keys, no nan or inf, frozen."""
-
-    model_config = ConfigDict(strict=True, frozen=True, extra="forbid", allow_inf_nan=False)
-
-
-class OrbitKepler(Table):
-    """Mean Kepler elements about the Earth at `epoch`, which is the start of the run."""
-
-    kind: Literal["kepler"]
-    center: Literal["earth"] = Field(default="earth", description="central body")
-    epoch: Moment = Field(description="start of the run, UTC with Z")
-    semi_major_axis_km: float = Field(gt=EARTH_EQUATORIAL_RADIUS_KM, le=1e6)
-    eccentricity: float = Field(ge=0.0, lt=1.0)
-    inclination_deg: float = Field(ge=0.0, le=180.0)
-    raan_deg: Angle = Field(description="right ascension of the ascending node")
-    argument_of_perigee_deg: Angle
-    mean_anomaly_deg: Angle = Field(description="mean anomaly at epoch")
-
-    @model_validator(mode="after")
-    def _consistent(self) -> Self:
-        check_kepler(self, EARTH_EQUATORIAL_RADIUS_KM)
-        return self
-
-
-class OrbitFixed(Table):
-    """No orbit: the same sun and plasma for the whole run, the standards' own analysis."""
-
-    kind: Literal["fixed"]
-    illumination: Share = Field(description="share of the solar disc in view, 0 to 1")
-    sun_direction: Direction = Field(description="towards the Sun, body axes")
-    epoch: Moment = Field(default=datetime(2000, 1, 1, tzinfo=UTC), description="start, UTC with Z")
-    duration_h: float | None = Field(
-        default=None, gt=0.0, le=LONGEST_RUN_H, description="length of the run, here or in [time]"
-    )
-
-
-Orbit: TypeAlias = Annotated[OrbitKepler | OrbitFixed, Field(discriminator="kind")]
 
 
 class Time(Table):
     """Length of the run, output grid and starting state."""
 
     duration_h: float | None = Field(
-        default=None, gt=0.0, le=LONGEST_RUN_H, description="length of run"
+        default=None,
+        gt=0.0,
+        le=LONGEST_ORBIT_H,
+        description="length of run; default for a file of an orbit: to its end",
     )
     output_step_s: float = Field(default=60.0, ge=1e-3, description="spacing of the output times")
     start: Literal["uncharged", "equilibrium"] = Field(
@@ -138,12 +87,7 @@ class Sun(Table):
     absorbing_height_km: float = Field(
         default=0.0, ge=0.0, le=1000.0, description="added to the Earth's radius for the shadow"
     )
-
-
-class Attitude(Table):
-    """How the body axes point: +z to nadir, +x along velocity, +y = z × x."""
-
-    law: Literal["nadir"] = "nadir"
+    moon: bool = Field(default=False, description="also look for eclipses by the Moon")
 
 
 class PlasmaEvent(Table):
@@ -179,6 +123,9 @@ class Body(Table):
 
     radius_m: float = Field(gt=0.0, le=1000.0, description="radius of the equivalent sphere")
     collection: Literal["auto", "sphere", "plane", "cylinder"] = "auto"
+    shadow: CsvFile | None = Field(
+        default=None, description="table of lit shares of surfaces by direction of the Sun"
+    )
 
 
 class Emission(Table):
@@ -202,11 +149,15 @@ class SunlitEclipse(Table):
 
 
 def _number_or_table(value: object) -> str:
+    if isinstance(value, str) and value.endswith(".csv"):
+        return "file"
     return "table" if isinstance(value, dict | SunlitEclipse) else "number"
 
 
 SurfaceTemperature: TypeAlias = Annotated[
-    Annotated[Temperature, Tag("number")] | Annotated[SunlitEclipse, Tag("table")],
+    Annotated[Temperature, Tag("number")]
+    | Annotated[SunlitEclipse, Tag("table")]
+    | Annotated[CsvFile, Tag("file")],
     Discriminator(_number_or_table),
 ]
 
@@ -231,6 +182,9 @@ class Surface(Table):
     )
     neighbours: tuple[Name, ...] = Field(default=(), max_length=MOST_ENTRIES)
     temperature_K: SurfaceTemperature | None = None
+    shadow: CsvFile | None = Field(
+        default=None, description="table of lit shares, before that of [body]"
+    )
 
     @model_validator(mode="after")
     def _consistent(self) -> Self:
@@ -247,23 +201,6 @@ class Link(Table):
     @model_validator(mode="after")
     def _consistent(self) -> Self:
         check_link(self)
-        return self
-
-
-class Mode(Table):
-    """A whole run of its own that differs in what is given here."""
-
-    name: Name
-    alternative: Literal[True]
-    illumination: Share | None = Field(default=None, description="fixed orbits only")
-    sun_direction: Direction | None = Field(default=None, description="fixed orbits only")
-    plasma: Reference | None = None
-    f107: SolarActivity | None = None
-    events: bool = Field(default=True, description="false drops the plasma events")
-
-    @model_validator(mode="after")
-    def _consistent(self) -> Self:
-        check_mode(self)
         return self
 
 
@@ -318,15 +255,39 @@ class Case(Table):
     surface: tuple[Surface, ...] = Field(max_length=MOST_ENTRIES)
     link: tuple[Link, ...] = Field(default=(), max_length=MOST_ENTRIES)
     mode: tuple[Mode, ...] = Field(default=(), max_length=MOST_ENTRIES)
+    emitter: tuple[Emitter, ...] = Field(default=(), max_length=MOST_ENTRIES)
     limit: tuple[Limit, ...] = Field(default=(), max_length=MOST_ENTRIES)
     review: Review = Field(default_factory=Review)
 
     STRUCTURE: ClassVar[str] = "structure"
 
     @model_validator(mode="after")
-    def _consistent(self) -> Self:
-        check_case(self)
+    def _consistent(self, info: ValidationInfo) -> Self:
+        check_case(self, orbit_only=bool(info.context and info.context.get("orbit_only")))
         return self
+
+    @property
+    def resolved(self) -> bool:
+        """Whether start and length of the run are known, without the file of the orbit."""
+        return not isinstance(self.orbit, OrbitFile) or (
+            self.orbit.start is not None and self.time.duration_h is not None
+        )
+
+    @property
+    def alternatives(self) -> tuple[Mode, ...]:
+        """Modes that are runs of their own."""
+        return tuple(mode for mode in self.mode if mode.alternative)
+
+    def seconds_to(self, moment: datetime) -> float:
+        """True seconds from the start to a moment, leap seconds counted."""
+        import numpy as np  # loads here, not for the schema
+
+        from environments.timescales import elapsed_s
+
+        first, last = (
+            np.datetime64(when.replace(tzinfo=None), "ns") for when in (self.epoch, moment)
+        )
+        return float(elapsed_s(first, last))
 
     @property
     def epoch(self) -> datetime:
@@ -348,7 +309,7 @@ class Case(Table):
         return tuple(
             3600.0 * event.onset_h
             if event.onset_h is not None
-            else ((event.onset or self.epoch) - self.epoch) / timedelta(seconds=1)
+            else self.seconds_to(event.onset or self.epoch)
             for event in self.plasma.event
         )
 

@@ -90,6 +90,20 @@ def reference(text: str) -> str:
     return text
 
 
+def data_file(text: str) -> str:
+    """Return the name of a data file; what cannot be one is refused."""
+    if not text.strip() or "\0" in text or len(text) > 1000:
+        raise _refuse("cannot be a file name", "a path inside the folder of the case")
+    return text
+
+
+def csv_name(text: str) -> str:
+    """Return the name of a CSV file; other endings are refused."""
+    if not data_file(text).endswith(".csv"):
+        raise _refuse("is no CSV file", "a file ending in .csv")
+    return text
+
+
 def utc_time(moment: datetime) -> datetime:
     """Return a moment in UTC; one without Z or offset, or far off, is refused."""
     if moment.tzinfo is None:

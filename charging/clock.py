@@ -2,19 +2,28 @@
 
 from __future__ import annotations
 
-from datetime import datetime, timedelta
+from datetime import datetime
 
 
 def iso_time(epoch: datetime, seconds: float) -> str:
-    """Return a UTC time in ISO form with Z, to the second.
+    """Return a UTC time in ISO form with Z, to the second; leap seconds are counted.
 
     Examples
     --------
     >>> iso_time(datetime(2031, 3, 20), 3600.4)
     '2031-03-20T01:00:00Z'
+    >>> [iso_time(datetime(2016, 12, 31, 23, 59, 59), t) for t in (0.0, 1.0, 2.0)]
+    ['2016-12-31T23:59:59Z', '2016-12-31T23:59:60Z', '2017-01-01T00:00:00Z']
     """
-    moment = epoch.replace(tzinfo=None) + timedelta(seconds=round(seconds))
-    return moment.isoformat(timespec="seconds") + "Z"
+    import numpy as np  # loads here, not with the command line
+
+    from environments.timescales import tai_from_utc, write_tai
+
+    # a fraction of a second in the epoch is kept until the sum is rounded
+    moment = tai_from_utc(np.datetime64(epoch.replace(tzinfo=None), "ns"))
+    ns = moment.astype(np.int64) + round(seconds * 1e9) + 500_000_000
+    whole = (ns // 1_000_000_000 * 1_000_000_000).astype("datetime64[ns]")
+    return write_tai(whole, "UTC")[0][:19] + "Z"
 
 
 def span(seconds: float) -> str:

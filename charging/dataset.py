@@ -16,14 +16,15 @@ from numpy.typing import NDArray
 
 from charging import __version__
 from charging.audit import charge_audit
-from charging.case import LoadedCase, OrbitKepler
+from charging.case import LoadedCase
 from charging.currents.surface import MECHANISMS, electron_sheath
 from charging.errors import InputError
+from charging.flight import moments
 from charging.orbit_run import TOLERANCE, CaseRun, ModeRun
 from charging.review.limits import requirements
 from charging.spacecraft import surface_materials
 from charging.summary import peak_times_s
-from charging.surroundings import epoch64, event_strength, seconds64
+from charging.surroundings import event_strength, named_times
 from environments.orbit import EARTH_RADIUS_M
 
 Array = NDArray[np.float64]
@@ -31,7 +32,7 @@ Array = NDArray[np.float64]
 ALL_MECHANISMS = (*MECHANISMS, "conduction", "bias_or_emitter")
 PLASMA_SHEET_FROM_KM = 25000.0
 KILOVOLT, STRONGLY_POSITIVE_V = 1000.0, 100.0
-REGION_MASKS = {"penumbra": 1, "umbra": 2, "plasma_event": 4}
+REGION_MASKS = {"penumbra": 1, "umbra": 2, "plasma_event": 4, "mode_interval": 8}
 
 
 class Variable(NamedTuple):
@@ -54,6 +55,9 @@ VARIABLES: Mapping[str, Variable] = {
         "A m-2",
         "current density per exposed area, positive charge arriving",
     ),
+    "emitter_current": Variable(
+        ("time",), "A", "current of all emitters onto structure, positive charge arriving"
+    ),
     "charge_residual": Variable(
         ("node", "time"), "C", "charge arrived by independent quadrature minus charge stored"
     ),
@@ -67,7 +71,7 @@ VARIABLES: Mapping[str, Variable] = {
     "sun_direction": Variable(
         ("axis", "time"), "1", "unit vector to the Sun, inertial (fixed case: body axes)"
     ),
-    "region": Variable(("time",), None, "light and plasma event"),
+    "region": Variable(("time",), None, "light, plasma event and mode"),
     "population_density": Variable(("population", "time"), "m-3", "number density"),
     "population_temperature": Variable(("population",), "eV", "temperature"),
     "population_current_density": Variable(
@@ -97,12 +101,12 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
     net, path = mode.net, mode.trajectories[member]
     # the moments of the extremes belong to the file; times are kept to the nanosecond
     times = np.union1d(mode.times_s, peak_times_s(mode, member))
-    times = np.unique(np.rint(times * 1e9)) / 1e9
+    times = named_times(run.loaded.case, np.unique(np.rint(times * 1e9)) / 1e9)
     state = path(times)
     node_potential = net.potentials(state)
     surface = node_potential[:, net.surface_node].T
     shot = mode.way.snapshot(times)
-    light = (shot.illumination * shot.incidence_cosine).T
+    light = shot.light.T
     flows = mode.balance.flows(member, times, state, light, shot.illumination[:, None])
     setting, temperature = mode.around.at(times)
 
@@ -110,6 +114,11 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
     by_mechanism[: len(MECHANISMS)] = np.moveaxis(flows.surface_A_m2, 0, -1).transpose(1, 0, 2)
     conduction = by_mechanism[ALL_MECHANISMS.index("conduction")]
     conduction[net.film_surface] = flows.film_A_m2.T
+    emitted = flows.emitter_A.sum(axis=-1)
+    bonded = net.surface_node == 0
+    if bonded.any():  # structure's current, over the faces that are structure
+        emitter = by_mechanism[ALL_MECHANISMS.index("bias_or_emitter")]
+        emitter[bonded] = emitted / net.area_m2[bonded].sum()
     field = np.zeros_like(surface)
     field[net.film_surface] = (state[:, net.film_node] / net.film_thickness_m).T
 
@@ -128,9 +137,10 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
         "differential_potential": surface - node_potential[:, 0],
         "electric_field": field,
         "current_density": by_mechanism,
+        "emitter_current": emitted,
         "charge_residual": residual,
         "illumination": shot.illumination,
-        "illuminated_fraction": np.ones_like(surface),
+        "illuminated_fraction": shot.lit_share,
         "incidence_cosine": shot.incidence_cosine,
         "surface_temperature": temperature.T,
         "position": shot.position_m,
@@ -145,7 +155,7 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
     dataset = xr.Dataset(
         {name: (VARIABLES[name].dims, value) for name, value in values.items()},
         coords={
-            "time": epoch64(run.loaded.case) + seconds64(times),
+            "time": moments(run.loaded.case, times),
             "surface_name": ("surface", list(run.loaded.case.names)),
             "mechanism_name": ("mechanism", list(ALL_MECHANISMS)),
             "node_name": ("node", list(net.node_names)),
@@ -221,6 +231,13 @@ def attributes(
         "case_sha256": loaded.sha256,
         **_texts("material", loaded.material_texts),
         **_texts("plasma", loaded.plasma_texts),
+        "file_texts": json.dumps(dict(loaded.files.texts), ensure_ascii=False, sort_keys=True),
+        "file_sha256": json.dumps(dict(loaded.files.sha256), ensure_ascii=False, sort_keys=True),
+        "file_comment": _kept(loaded),
+        "orbit_source": "fixed light"
+        if mode.way.trajectory is None
+        else mode.way.trajectory.source,
+        "attitude": "; ".join(dict.fromkeys(leg.attitude.law for leg in mode.way.legs)),
         "seeds": "none",
         "march_method": "RODAS, order 4(3), dense output",
         "march_absolute_tolerance_V": TOLERANCE.absolute,
@@ -274,6 +291,13 @@ def _texts(kind: str, texts: Mapping[str, str]) -> dict[str, object]:
     }
 
 
+def _kept(loaded: LoadedCase) -> str:
+    absent = sorted(set(loaded.files.sha256) - set(loaded.files.texts))
+    if not absent:
+        return "this file holds all that a rerun needs"
+    return f"a rerun also needs {', '.join(absent)}, binary or very long: not held here"
+
+
 def population_labels(mode: ModeRun) -> list[str]:
     """Names of all populations, electrons first, in the order of the kernel."""
     labels = []
@@ -296,9 +320,13 @@ def warnings_of(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
         for plasma in dict.fromkeys(mode.plasmas)
         if plasma.basis == "assumed"
     ]
-    orbit = loaded.case.orbit
-    if isinstance(orbit, OrbitKepler):
-        perigee = orbit.semi_major_axis_km * (1.0 - orbit.eccentricity)
+    if loaded.case.orbit.kind == "tle":
+        found.append(
+            "orbit from two-line elements: good to about 1 km at their epoch, and 1 to 3 km a day "
+            "worse from there in low orbit"
+        )
+    if mode.way.trajectory is not None:
+        perigee = mode.way.lowest_m() / 1e3
         if perigee < PLASMA_SHEET_FROM_KM:
             found.append(
                 f'plasma "{mode.plasmas[0].name}" is used along the whole orbit, down to '
@@ -332,6 +360,8 @@ def _region(mode: ModeRun, times: Array, light: Array) -> NDArray[np.int8]:
     for event in mode.around.episodes:
         # below 1 % of its strength an event is over
         flags[event_strength(times, event) > 0.01] |= REGION_MASKS["plasma_event"]
+    within = np.array([bool(leg.modes) for leg in mode.way.legs])
+    flags[within[mode.around.leg(times)]] |= REGION_MASKS["mode_interval"]
     return flags
 
 

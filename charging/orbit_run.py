@@ -6,26 +6,19 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.case import Case, LoadedCase, Mode, OrbitFixed
+from charging.case import Case, LoadedCase, Mode
 from charging.currents.emission import SECONDARY_LAWS
 from charging.currents.lookup import net_currents
 from charging.currents.surface import Setting, surface_models
 from charging.errors import NoSolutionError
+from charging.flight import Path, path, revolution_s, sun_distance_au
 from charging.network.charge_balance import Around, ChargeBalance
+from charging.network.emitters import Emitters
 from charging.network.march import Tolerance, Trajectory, march
 from charging.network.nodes import Network
+from charging.schedule import plasma_names
 from charging.spacecraft import spacecraft_network, surface_materials
-from charging.surroundings import (
-    Episode,
-    Path,
-    Surroundings,
-    kepler,
-    output_times,
-    path,
-    sun_distance_au,
-    surroundings,
-)
-from environments.orbit import period_s
+from charging.surroundings import Episode, Surroundings, output_times, surroundings
 from environments.plasma import Plasma
 from environments.spectrum import SolarSpectrum, solar_spectrum
 from materials.secondary import YieldLaw
@@ -57,7 +50,7 @@ class ModeRun:
     around : Surroundings
     way : Path
     plasmas : tuple of Plasma
-        Base plasma first, then one per event.
+        Base plasma first, then one per event, then those of interval modes.
     spectrum : SolarSpectrum
     times_s : ndarray [T]
         Output times after the start.
@@ -111,7 +104,7 @@ def run_case(loaded: LoadedCase) -> CaseRun:
     NoSolutionError
         The march found no step.
     """
-    alternatives: Sequence[Mode | None] = [None, *loaded.case.mode]
+    alternatives: Sequence[Mode | None] = [None, *loaded.case.alternatives]
     return CaseRun(loaded, tuple(solve_mode(loaded, mode) for mode in alternatives))
 
 
@@ -135,14 +128,6 @@ def spectrum_of(loaded: LoadedCase, mode: Mode | None = None) -> SolarSpectrum:
     )
 
 
-def plasma_names(loaded: LoadedCase, mode: Mode | None) -> tuple[str, ...]:
-    """Plasmas of a mode as the case names them: base, then one per event."""
-    table = loaded.case.plasma
-    base = table.use if mode is None or mode.plasma is None else mode.plasma
-    with_events = mode is None or mode.events
-    return (base, *(event.use for event in table.event if with_events))
-
-
 def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
     """Solve one mode of a case for all its emission laws.
 
@@ -152,13 +137,15 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
         The march found no step; the message names mode and time.
     """
     case = loaded.case
-    names = plasma_names(loaded, mode)
+    names = plasma_names(case, mode)
     plasmas = tuple(loaded.plasmas[name] for name in names)
     episodes = [
         Episode(onset, 60.0 * e.rise_min, 60.0 * e.hold_min, 60.0 * e.decay_min, 1 + i)
         for i, (onset, e) in enumerate(zip(case.event_onset_s, case.plasma.event, strict=True))
     ]
-    around = surroundings(case, mode, episodes[: len(plasmas) - 1])
+    if mode is not None and not mode.events:
+        episodes = []
+    around = surroundings(case, mode, episodes, loaded.files)
     spectrum = spectrum_of(loaded, mode)
     net = spacecraft_network(case, loaded.materials)
     laws = laws_of(loaded)
@@ -172,7 +159,8 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
         collection=case.body.collection,
         photo_geometry=case.emission.photo_escape,
     )
-    balance = ChargeBalance(models, net_currents(models), net, around, net.mass)
+    balance = ChargeBalance(models, net_currents(models), net, around, net.mass, emitters_of(case))
+    way = path(case, mode, loaded.files)
     name = "base" if mode is None else mode.name
     start = np.zeros((len(laws), len(net.node_names)))
     try:
@@ -185,7 +173,7 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
             breaks_s=around.breaks_s,
             tolerance=TOLERANCE,
             first_step_s=FIRST_STEP_S,
-            largest_step_s=_largest_step_s(case),
+            largest_step_s=_largest_step_s(way),
         )
     except NoSolutionError as error:
         raise NoSolutionError(f"mode {name!r}: {error}") from error
@@ -194,7 +182,7 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
         laws=laws,
         balance=balance,
         around=around,
-        way=path(case, mode),
+        way=way,
         plasmas=plasmas,
         spectrum=spectrum,
         times_s=output_times(case, around),
@@ -202,10 +190,23 @@ def solve_mode(loaded: LoadedCase, mode: Mode | None = None) -> ModeRun:
     )
 
 
-def _largest_step_s(case: Case) -> float:
-    if isinstance(case.orbit, OrbitFixed):
+def emitters_of(case: Case) -> Emitters:
+    """Emitters of a case, for the charge balance."""
+    return Emitters(
+        tuple(one.name for one in case.emitter),
+        np.array([one.current_A for one in case.emitter]),
+        np.array([one.energy_eV for one in case.emitter]),
+    )
+
+
+def _largest_step_s(way: Path) -> float:
+    if way.trajectory is None:
         return np.inf
-    return LARGEST_TURN * period_s(kepler(case.orbit))
+    step = LARGEST_TURN * revolution_s(way.trajectory, way.case.duration_s)
+    for leg in way.legs:
+        if leg.attitude.resolved and leg.attitude.period_s is not None:
+            step = min(step, LARGEST_TURN * leg.attitude.period_s)
+    return step
 
 
 @dataclass(frozen=True, slots=True)
@@ -217,11 +218,19 @@ class _Frozen:
     def at(self, time_s: Array) -> tuple[Setting, Array]:
         return self.around.at(np.zeros_like(time_s))
 
+    def emitting(self, time_s: Array) -> Array:
+        return self.around.emitting(np.zeros_like(time_s))
+
 
 def settled(balance: ChargeBalance, start: Array) -> Array:
     """State [M, n] reached from `start` when the first moment lasts for ever."""
     still = ChargeBalance(
-        balance.models, balance.table, balance.net, _Frozen(balance.around), balance.mass
+        balance.models,
+        balance.table,
+        balance.net,
+        _Frozen(balance.around),
+        balance.mass,
+        balance.emitters,
     )
     reached = march(
         still,

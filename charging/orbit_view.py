@@ -3,34 +3,30 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+import tempfile
+from collections.abc import Iterator
 from dataclasses import asdict, dataclass
 from datetime import datetime
 from pathlib import Path
 
 import numpy as np
 import xarray as xr
-from numpy.typing import NDArray
 
 from charging import __version__
 from charging.case import LoadedCase
-from charging.case_tables import OrbitKepler
 from charging.errors import InputError
-from charging.surroundings import (
-    eclipses_of,
-    epoch64,
-    kepler,
-    output_times,
-    path,
-    seconds64,
-    surroundings,
-)
+from charging.flight import eclipses_of, revolution_s, trajectory_of
 from charging.written_file import written_file
 from environments.eclipse import Eclipse
-from environments.orbit import period_s, position_velocity
-from environments.sun import beta_angle_deg, distance_au, sun_position_m
+from environments.ephemeris_table import write_orbit_netcdf
+from environments.moon import MOON_RADIUS_M, moon_path
+from environments.sun import illumination
+from environments.timescales import utc_at
+from environments.trajectory import Geometry, Trajectory, geometry, geometry_blocks
 
-Array = NDArray[np.float64]
+MOST_ECLIPSES_KEPT = 5000
+"""More are found and printed, and not kept in the attributes of the file."""
+_DIPOLE_YEARS = ("1995-01-01", "2040-01-01")
 
 
 @dataclass(frozen=True, slots=True)
@@ -44,11 +40,16 @@ class OrbitReport:
         Start, UTC.
     duration_s : float
     kind : str
-        "kepler" or "fixed".
+        "kepler", "oem", "tle", "table" or "fixed".
+    source : str
+        One line: what the orbit rests on.
     period_s : float or None
-        Time of one revolution [s]; None for a fixed case.
+        Time of one revolution [s]; for orbits from files, of the mean turn within the run. None
+        for a fixed case.
     eclipses : tuple of Eclipse
         Contacts in seconds after the start, None where the run does not hold them.
+    moon : bool
+        Whether eclipses by the Moon were looked for.
     beta_angle_deg, beta_angle_end_deg : float or None
         Sun above the orbit plane [deg] at start and end, positive on the side of r × v; None
         for a fixed case.
@@ -58,8 +59,10 @@ class OrbitReport:
     epoch: datetime
     duration_s: float
     kind: str
+    source: str
     period_s: float | None
     eclipses: tuple[Eclipse, ...]
+    moon: bool
     beta_angle_deg: float | None
     beta_angle_end_deg: float | None
 
@@ -78,40 +81,37 @@ def orbit_report(loaded: LoadedCase) -> OrbitReport:
         A fixed case has no eclipses and no beta angle.
     """
     case = loaded.case
-    orbit = case.orbit
-    if not isinstance(orbit, OrbitKepler):
+    trajectory = trajectory_of(case, loaded.files)
+    if trajectory is None:
         return OrbitReport(
-            case.title, case.epoch, case.duration_s, orbit.kind, None, (), None, None
+            case.title,
+            case.epoch,
+            case.duration_s,
+            case.orbit.kind,
+            "fixed light",
+            None,
+            (),
+            False,
+            None,
+            None,
         )
-    ends = np.array([0.0, case.duration_s])
-    position, velocity = position_velocity(kepler(orbit), ends)
-    sun = sun_position_m(epoch64(case) + seconds64(ends))
-    first, last = (float(angle) for angle in beta_angle_deg(position, velocity, sun))
+    ends = geometry(trajectory, np.array([0.0, case.duration_s])).beta_angle_deg
     return OrbitReport(
         title=case.title,
         epoch=case.epoch,
         duration_s=case.duration_s,
-        kind=orbit.kind,
-        period_s=period_s(kepler(orbit)),
-        eclipses=eclipses_of(case),
-        beta_angle_deg=first,
-        beta_angle_end_deg=last,
+        kind=case.orbit.kind,
+        source=trajectory.source,
+        period_s=revolution_s(trajectory, case.duration_s),
+        eclipses=eclipses_of(case, loaded.files),
+        moon=case.sun.moon,
+        beta_angle_deg=float(ends[0]),
+        beta_angle_end_deg=float(ends[1]),
     )
 
 
-VARIABLES: Mapping[str, tuple[tuple[str, ...], str, str]] = {
-    "position": (("axis", "time"), "m", "position from the Earth's centre, inertial"),
-    "velocity": (("axis", "time"), "m s-1", "velocity, inertial"),
-    "sun_direction": (("axis", "time"), "1", "unit vector to the Sun, inertial"),
-    "sun_distance": (("time",), "m", "distance of the Earth from the Sun"),
-    "illumination": (("time",), "1", "share of the solar disc in view"),
-    "beta_angle": (("time",), "degree", "angle of the Sun above the orbit plane"),
-}
-"""Dimensions, unit and meaning of every variable of `orbit_dataset`."""
-
-
 def orbit_dataset(loaded: LoadedCase) -> xr.Dataset:
-    """Evaluate the orbit of a case on its output times.
+    """Evaluate the orbit of a case on its output steps, in memory.
 
     Parameters
     ----------
@@ -121,88 +121,110 @@ def orbit_dataset(loaded: LoadedCase) -> xr.Dataset:
     Returns
     -------
     xarray.Dataset
-        Variables of `VARIABLES` over time and axis, CF-1.11.
+        What `write_orbit` writes: position, velocity, sun_direction, sun_distance, illumination,
+        beta_angle, and the place in the Earth's dipole field within its years; CF-1.11.
 
     Raises
     ------
     InputError
         The case is fixed: it has no orbit.
     """
+    with tempfile.TemporaryDirectory(prefix="halflit-") as folder:
+        file = Path(folder) / "orbit.nc"
+        write_orbit(loaded, file)
+        with xr.open_dataset(file, engine="netcdf4") as dataset:
+            return dataset.load()
+
+
+def write_orbit(loaded: LoadedCase, target: Path, *, option: str = "file") -> OrbitReport:
+    """Write the orbit of a case as NetCDF-4, whole or not at all.
+
+    Parameters
+    ----------
+    loaded : LoadedCase
+        A case with an orbit.
+    target : Path
+        File ending in .nc.
+    option : str, optional
+        What the person called it, for messages.
+
+    Returns
+    -------
+    OrbitReport
+        Written block by block, so memory does not grow with the run. ``kind = "table"`` reads
+        it back.
+
+    Raises
+    ------
+    InputError
+        The name does not end in .nc, the place cannot be written, or the case is fixed.
+    """
     case = loaded.case
-    if not isinstance(case.orbit, OrbitKepler):
+    if target.suffix != ".nc":
+        raise InputError(
+            f"{option} {target}: is no NetCDF name", value=target, allowed="a file ending in .nc"
+        )
+    trajectory = trajectory_of(case, loaded.files)
+    if trajectory is None:
         raise InputError(
             'orbit.kind = "fixed": there is no orbit to write',
             file=str(loaded.path),
             key=("orbit", "kind"),
             value="fixed",
-            allowed='a case with kind = "kepler"',
+            allowed='a case with kind = "kepler", "oem", "tle" or "table"',
         )
-    times = output_times(case, surroundings(case, None, ()))
-    position, velocity = position_velocity(kepler(case.orbit), times)
-    moments = epoch64(case) + seconds64(times)
-    sun = sun_position_m(moments)
-    shot = path(case).snapshot(times)
-    values: dict[str, Array] = {
-        "position": position,
-        "velocity": velocity,
-        "sun_direction": shot.sun_direction,
-        "sun_distance": np.sqrt((sun**2).sum(axis=0)),
-        "illumination": shot.illumination,
-        "beta_angle": beta_angle_deg(position, velocity, sun),
-    }
-    dataset = xr.Dataset(
-        {
-            name: (VARIABLES[name][0], value, {"units": unit, "long_name": meaning})
-            for (name, value), (_, unit, meaning) in zip(
-                values.items(), VARIABLES.values(), strict=True
-            )
-        },
-        coords={"time": moments, "axis_name": ("axis", ["x", "y", "z"])},
-    )
     report = orbit_report(loaded)
-    dataset.attrs = {
-        "Conventions": "CF-1.11",
-        "title": f"Orbit of: {case.title}",
-        "source": f"halflit {__version__}: mean Kepler elements with secular J2 drift; "
-        "Sun by low-precision formulae; spherical Earth",
-        "comment": f"mean distance from the Sun {float(distance_au(sun).mean()):.5f} AU",
+    with written_file(target, option=option) as scratch:
+        write_orbit_netcdf(
+            scratch,
+            trajectory,
+            _blocks(loaded, trajectory),
+            _attributes(loaded, trajectory, report),
+            magnetic=_dipole_known(trajectory, case.duration_s),
+        )
+    return report
+
+
+def _blocks(loaded: LoadedCase, trajectory: Trajectory) -> Iterator[Geometry]:
+    case = loaded.case
+    for shot in geometry_blocks(
+        trajectory,
+        case.duration_s,
+        case.time.output_step_s,
+        absorbing_height_m=1e3 * case.sun.absorbing_height_km,
+    ):
+        if not case.sun.moon:
+            yield shot
+            continue
+        moon = moon_path(trajectory.epoch)(shot.seconds)
+        sun = shot.position_m + shot.sun_distance_m * shot.sun_direction
+        free = illumination(shot.position_m - moon, sun - moon, MOON_RADIUS_M)
+        yield shot._replace(illumination=shot.illumination * free)
+
+
+def _dipole_known(trajectory: Trajectory, end_s: float) -> bool:
+    first, last = utc_at(trajectory.epoch, [0.0, end_s])
+    return bool(np.datetime64(_DIPOLE_YEARS[0]) <= first and last < np.datetime64(_DIPOLE_YEARS[1]))
+
+
+def _attributes(loaded: LoadedCase, trajectory: Trajectory, report: OrbitReport) -> dict[str, str]:
+    eclipses = [asdict(eclipse) for eclipse in report.eclipses]
+    kept = len(eclipses) <= MOST_ECLIPSES_KEPT
+    return {
+        "title": f"Orbit of: {loaded.case.title}",
+        "source": f"halflit {__version__}: {trajectory.source}; Sun by a shortened series, within "
+        "0.001 deg; flattened Earth" + ("; Moon within 20 arcsec" if report.moon else ""),
+        # without a date: the same case gives the same file
+        "history": f"computed by halflit {__version__} from {loaded.path.name}",
+        "institution": "not stated",
+        "references": "see the docstrings of halflit's modules in `environments`",
+        "comment": "sunlight behind the Earth and the Moon where asked for; light scattered by the "
+        "Earth is not modelled",
         "halflit_version": __version__,
         "case_file": loaded.path.name,
         "case_text": loaded.text,
         "case_sha256": loaded.sha256,
-        "eclipses": json.dumps([asdict(eclipse) for eclipse in report.eclipses]),
+        "file_sha256": json.dumps(dict(loaded.files.sha256), sort_keys=True),
+        "eclipses": json.dumps(eclipses) if kept else "not kept: too many",
         "eclipses_comment": "contacts in seconds after the first time",
     }
-    for name in dataset.variables:
-        dataset[name].encoding = {"_FillValue": None}
-    dataset["axis_name"].attrs = {"long_name": "name of the axis"}
-    dataset["time"].attrs = {
-        "standard_name": "time",
-        "long_name": "UTC",
-        "axis": "T",
-        "units_metadata": "leap_seconds: none",
-    }
-    first = np.datetime_as_string(moments[0], unit="s").replace("T", " ")
-    dataset["time"].encoding = {
-        "units": f"seconds since {first}",
-        "calendar": "standard",
-        "dtype": "float64",
-        "_FillValue": None,
-    }
-    return dataset
-
-
-def write_orbit(dataset: xr.Dataset, target: Path, *, option: str = "file") -> None:
-    """Write `orbit_dataset` as NetCDF-4, whole or not at all.
-
-    Raises
-    ------
-    InputError
-        The name does not end in .nc, or the place cannot be written.
-    """
-    if target.suffix != ".nc":
-        raise InputError(
-            f"{option} {target}: is no NetCDF name", value=target, allowed="a file ending in .nc"
-        )
-    with written_file(target, option=option) as scratch:
-        dataset.to_netcdf(scratch, engine="netcdf4", format="NETCDF4")

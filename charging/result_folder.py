@@ -71,7 +71,7 @@ def result_folder(target: Path) -> Iterator[Path]:
         if target.exists():
             target.rename(previous)
         partial.rename(target)
-    except (OSError, RuntimeError) as error:  # the HDF library reports a full disk as RuntimeError
+    except OSError as error:
         raise _unwritable(target, error) from error
     finally:
         shutil.rmtree(partial, ignore_errors=True)
@@ -106,7 +106,6 @@ def _is_ours(mark: Path) -> bool:
     return isinstance(document, dict) and PROGRAM in document
 
 
-def _unwritable(target: Path, error: OSError | RuntimeError) -> InputError:
-    code = getattr(error, "errno", None)
-    reason = os.strerror(code) if code else str(error)
+def _unwritable(target: Path, error: OSError) -> InputError:
+    reason = os.strerror(error.errno) if error.errno else str(error)
     return InputError(f"--out {target}: cannot be written ({reason})", allowed="a writable place")

@@ -10,6 +10,8 @@ from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import Any
 
+import xarray as xr
+
 from charging import __version__
 from charging.case import LoadedCase
 from charging.clock import iso_time
@@ -204,7 +206,7 @@ def write_results(run: CaseRun, target: Path, *, plots: bool = True) -> dict[str
                 dataset = mode_dataset(run, mode, member)
                 found.append(float(dataset.attrs["charge_audit_relative"]))
                 name = result_name(i, law if member else None)
-                dataset.to_netcdf(folder / name, engine="netcdf4", format="NETCDF4")
+                _save(dataset, folder / name)
                 if plots and member == 0:
                     plot_all(dataset, folder if i == 0 else folder / Path(name).stem)
             audits.append(max(found))
@@ -214,6 +216,13 @@ def write_results(run: CaseRun, target: Path, *, plots: bool = True) -> dict[str
         (folder / "summary.json").write_text(text, encoding="utf-8")
         _flush(folder.rglob("*"))
     return document
+
+
+def _save(dataset: xr.Dataset, path: Path) -> None:
+    try:
+        dataset.to_netcdf(path, engine="netcdf4", format="NETCDF4")
+    except RuntimeError as error:  # how the HDF library reports a full disk
+        raise OSError(str(error)) from error
 
 
 def _flush(files: Iterable[Path]) -> None:

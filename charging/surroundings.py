@@ -1,8 +1,8 @@
-"""What surrounds the spacecraft along its orbit: light, temperature, plasma, position.
+"""What surrounds the spacecraft along its orbit: light, temperature, plasma, emitters.
 
 Geometry is evaluated once per case on knots dense enough that linear interpolation
-errs by less than 1e-5 in an incidence cosine or an illumination; a march then only
-interpolates.
+errs by less than 2e-5 in an incidence cosine or an illumination; a march then only
+interpolates. Where a mode begins or ends, two knots stand at one time: before and after.
 """
 
 from collections.abc import Sequence
@@ -12,38 +12,36 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.case_tables import Case, Mode, OrbitFixed, OrbitKepler, SunlitEclipse, Surface
+from charging.case_files import NO_FILES, CaseFiles
+from charging.case_modes import Mode
+from charging.case_tables import Case
 from charging.currents.surface import Setting
-from environments.attitude import nadir_axes, to_body, tracking_cosine
-from environments.eclipse import Eclipse, find_eclipses
-from environments.orbit import EARTH_RADIUS_M, KeplerOrbit, period_s, position_velocity
-from environments.sun import distance_au, illumination, sun_path, sun_position_m
+from charging.errors import InputError
+from charging.flight import (
+    Path,
+    angular_speed_rad_s,
+    contacts,
+    eclipses_of,
+    moments,
+    path,
+)
+from charging.schedule import Leg, plasma_names
+from charging.temperatures import surface_temperatures
+from environments.eclipse import Eclipse
+from environments.trajectory import Trajectory
 
 Array = NDArray[np.float64]
 
 LARGEST_TURN_RAD = np.radians(0.25)  # between knots: cosines err by 0.25²/8 (rad) = 2.4e-6
 LONGEST_KNOT_S = 60.0
+KNOTS_A_TURN = 360  # of a spin that is followed: cosines err by 4e-5 before refinement
 PENUMBRA_KNOTS = 240  # illumination errs by 1e-5
+LARGEST_LIGHT_ERROR = 1e-5
+MOST_KNOTS, MOST_REFINED = 2_000_000, 200_000
 FINE_STEP_S, FINE_MARGIN_S, FINE_LONGEST_S = 1.0, 60.0, 900.0
+MOST_FINE = 100_000
 FIRST_OUTPUT_S = 1e-3
-
-
-class Snapshot(NamedTuple):
-    """Geometry at N times for S surfaces.
-
-    position_m, sun_direction : ndarray [3, N], inertial (a fixed case: zeros, body axes);
-    illumination [N]; signed_cosine [S, N] of the incidence, negative on the dark side.
-    """
-
-    position_m: Array
-    sun_direction: Array
-    illumination: Array
-    signed_cosine: Array
-
-    @property
-    def incidence_cosine(self) -> Array:
-        """Cosine of incidence 0…1 [S, N], 0 on the dark side."""
-        return np.maximum(self.signed_cosine, 0.0)
+_APART_S = 1e-6  # breaks nearer to each other than this are one
 
 
 class Episode(NamedTuple):
@@ -54,6 +52,14 @@ class Episode(NamedTuple):
     hold_s: float
     decay_s: float
     plasma: int
+
+
+class LegState(NamedTuple):
+    """What a leg of the run switches: base plasma by index, plasma events, emitters."""
+
+    plasma: int = 0
+    events: bool = True
+    emitting: tuple[bool, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,9 +75,14 @@ class Surroundings:
     episodes : tuple of Episode
     plasma_count : int
     breaks_s : tuple of float
-        Kinks: contacts of eclipses, edges of events, terminator crossings of surfaces.
+        Kinks and jumps: contacts of eclipses, edges of events, modes and emitters, terminator
+        crossings of surfaces.
     eclipses : tuple of Eclipse
         Times in seconds after the start.
+    edges_s : tuple of float
+        Where one leg of the run ends and the next begins.
+    states : tuple of LegState
+        One per leg.
     """
 
     knots_s: Array
@@ -80,6 +91,8 @@ class Surroundings:
     plasma_count: int
     breaks_s: tuple[float, ...]
     eclipses: tuple[Eclipse, ...]
+    edges_s: tuple[float, ...] = ()
+    states: tuple[LegState, ...] = (LegState(),)
 
     def _blend(self, time_s: Array) -> Array:
         k = np.searchsorted(self.knots_s, time_s, side="right") - 1
@@ -96,6 +109,16 @@ class Surroundings:
         setting = Setting(self.strength(time_s), both[..., :surfaces], both[..., -1:])
         return setting, both[..., surfaces:-1]
 
+    def leg(self, time_s: Array) -> NDArray[np.intp]:
+        """Number of the leg at times [m]; at an edge, the one that begins."""
+        return np.searchsorted(self.edges_s, time_s, side="right")
+
+    def emitting(self, time_s: Array) -> Array:
+        """1 for emitters [m, E] that work, 0 for the others."""
+        return np.array([state.emitting for state in self.states], dtype=np.float64)[
+            self.leg(time_s)
+        ]
+
     def strength(self, time_s: Array) -> Array:
         """Share of each plasma [m, P] at times [m], adding to 1.
 
@@ -103,9 +126,17 @@ class Surroundings:
         for the hold, and decays as exp(-t/decay). A later event acts on what it finds.
         """
         share = np.zeros((*time_s.shape, self.plasma_count))
-        share[..., 0] = 1.0
+        counts: Array | float = 1.0
+        if not self.edges_s:
+            share[..., self.states[0].plasma] = 1.0
+            counts = float(self.states[0].events)
+        else:
+            leg = self.leg(time_s)
+            base = np.array([state.plasma for state in self.states])[leg]
+            np.put_along_axis(share, base[..., None], 1.0, axis=-1)
+            counts = np.array([state.events for state in self.states], dtype=np.float64)[leg]
         for event in self.episodes:
-            s = event_strength(time_s, event)
+            s = event_strength(time_s, event) * counts
             share *= 1.0 - s[..., None]
             share[..., event.plasma] += s
         return share
@@ -119,200 +150,210 @@ def event_strength(time_s: Array, event: Episode) -> Array:
     return np.where(since < 0.0, 0.0, rise * np.exp(-late / event.decay_s))
 
 
-@dataclass(frozen=True, slots=True)
-class Path:
-    """The way of the spacecraft, evaluated at any time [s] after the start."""
-
-    case: Case
-    illumination: float
-    sun_direction: tuple[float, float, float]
-
-    def snapshot(self, time_s: Array) -> Snapshot:
-        """Geometry at times [N]."""
-        orbit = self.case.orbit
-        if isinstance(orbit, OrbitFixed):
-            count = (len(time_s),)
-            sun = np.broadcast_to(np.array(self.sun_direction)[:, None], (3, *count))
-            return Snapshot(
-                np.zeros((3, *count)),
-                sun,
-                np.full(count, self.illumination),
-                _cosines(self.case.surface, sun),
-            )
-        position, velocity = position_velocity(kepler(orbit), time_s)
-        sun = sun_position_m(epoch64(self.case) + seconds64(time_s))
-        toward = sun - position
-        toward = toward / np.sqrt((toward**2).sum(axis=0))
-        body = to_body(nadir_axes(position, velocity), toward)
-        shade = EARTH_RADIUS_M + 1e3 * self.case.sun.absorbing_height_km
-        return Snapshot(
-            position,
-            toward,
-            illumination(position, sun, shade),
-            _cosines(self.case.surface, body),
-        )
-
-
-def path(case: Case, mode: Mode | None = None) -> Path:
-    """Return the way flown in a mode of a case."""
-    light, direction = 1.0, (1.0, 0.0, 0.0)
-    if isinstance(case.orbit, OrbitFixed):
-        light, direction = case.orbit.illumination, case.orbit.sun_direction
-    if mode is not None and mode.illumination is not None:
-        light = mode.illumination
-    if mode is not None and mode.sun_direction is not None:
-        direction = mode.sun_direction
-    return Path(case, light, direction)
-
-
-def kepler(orbit: OrbitKepler) -> KeplerOrbit:
-    """Translate the table of a case file."""
-    return KeplerOrbit(
-        epoch=np.datetime64(orbit.epoch.replace(tzinfo=None), "ns"),
-        semi_major_axis_km=orbit.semi_major_axis_km,
-        eccentricity=orbit.eccentricity,
-        inclination_deg=orbit.inclination_deg,
-        raan_deg=orbit.raan_deg,
-        argument_of_perigee_deg=orbit.argument_of_perigee_deg,
-        mean_anomaly_deg=orbit.mean_anomaly_deg,
-    )
-
-
-def epoch64(case: Case) -> np.datetime64:
-    """Start of a case in numpy's time."""
-    return np.datetime64(case.epoch.replace(tzinfo=None), "ns")
-
-
-def seconds64(time_s: Array) -> NDArray[np.timedelta64]:
-    """Seconds as numpy time differences, rounded to the nanosecond."""
-    return np.rint(np.asarray(time_s) * 1e9).astype("timedelta64[ns]")
-
-
-def sun_distance_au(case: Case) -> float:
-    """Distance from the Sun [AU] at the middle of the run; it moves by < 3e-4 a day."""
-    if isinstance(case.orbit, OrbitFixed):
-        return 1.0 if case.sun.distance_au is None else case.sun.distance_au
-    middle = epoch64(case) + seconds64(np.array([case.duration_s / 2.0]))
-    return float(distance_au(sun_position_m(middle))[0])
-
-
-def _cosines(surfaces: Sequence[Surface], sun_body: Array) -> Array:
-    """Signed incidence cosines [S, N]; a tracker's dark side has -1."""
-    rows = []
-    for surface in surfaces:
-        if surface.tracks_sun:
-            front = tracking_cosine(sun_body)
-            rows.append(front if surface.side == "front" else -front)
-        else:
-            rows.append((np.array(surface.normal)[:, None] * sun_body).sum(axis=0))
-    return np.array(rows)
-
-
-def surroundings(case: Case, mode: Mode | None, episodes: Sequence[Episode]) -> Surroundings:
+def surroundings(
+    case: Case, mode: Mode | None, episodes: Sequence[Episode], files: CaseFiles = NO_FILES
+) -> Surroundings:
     """Tabulate the surroundings of one mode of a case.
 
     Parameters
     ----------
     case : Case
     mode : Mode or None
-        None: the case as it stands.
+        An alternative; None: the case as it stands.
     episodes : sequence of Episode
         Plasma events; plasma 0 is the base.
+    files : CaseFiles, optional
+        Data files of the case.
+
+    Raises
+    ------
+    InputError
+        A spin that is followed turn by turn takes too many knots.
     """
-    way = path(case, mode)
+    way = path(case, mode, files)
     end = case.duration_s
-    eclipses: tuple[Eclipse, ...] = ()
-    knots = np.array([0.0, end])
-    if isinstance(case.orbit, OrbitKepler):
-        eclipses = eclipses_of(case)
-        e = case.orbit.eccentricity
-        at_perigee = (1.0 + e) ** 2 / (1.0 - e**2) ** 1.5  # over the mean motion
-        slowest = period_s(kepler(case.orbit)) / at_perigee
-        step = min(LONGEST_KNOT_S, LARGEST_TURN_RAD / (2.0 * np.pi) * slowest)
-        knots = np.linspace(0.0, end, int(np.ceil(end / step)) + 1)
-        for first, last in _penumbrae(eclipses):
-            knots = np.union1d(knots, np.clip(np.linspace(first, last, PENUMBRA_KNOTS), 0.0, end))
-    shot = way.snapshot(knots)
-    crossings = _sign_changes(knots, shot.signed_cosine)
-    if crossings.size:
-        knots = np.union1d(knots, crossings)
-        shot = way.snapshot(knots)
-    light = (shot.illumination * shot.incidence_cosine).T
-    breaks = {t for e in eclipses for t in _contacts(e)}
-    breaks |= set(crossings.tolist())
+    eclipses = eclipses_of(case, files)
+    knots = _knots(way, eclipses, end)
+    rows = [
+        np.unique(files.temperatures[surface.temperature_K].times_s)
+        for surface in case.surface
+        if isinstance(surface.temperature_K, str)
+    ]
+    if rows:
+        knots = np.union1d(knots, np.concatenate(rows))
+        knots = knots[(knots >= 0.0) & (knots <= end)]
+    breaks = {t for e in eclipses for t in contacts(e)}
+    times, light, lit_body = [], [], []
+    for number, leg in enumerate(way.legs):
+        own = knots[(knots > leg.start_s) & (knots < leg.end_s)]
+        own = np.concatenate([[leg.start_s], own, [leg.end_s]])
+        own, crossings, on_faces, on_body = _tabulated(way, number, own)
+        breaks |= set(crossings.tolist())
+        times.append(own)
+        light.append(on_faces)
+        lit_body.append(on_body)
     for event in episodes:
         rise_end = event.onset_s + event.rise_s
         breaks |= {event.onset_s, rise_end, rise_end + event.hold_s}
+    edges = tuple(leg.start_s for leg in way.legs[1:])
+    knots = np.concatenate(times)
+    states = _states(case, mode, way.legs)
     return Surroundings(
         knots_s=knots,
         table=np.hstack(
             [
-                light,
-                _temperatures(case.surface, knots, shot.illumination),
-                shot.illumination[:, None],
+                np.concatenate(light, axis=1).T,
+                surface_temperatures(
+                    case.surface, files.temperatures, knots, np.concatenate(lit_body)
+                ),
+                np.concatenate(lit_body)[:, None],
             ]
         ),
         episodes=tuple(episodes),
-        plasma_count=1 + max((event.plasma for event in episodes), default=0),
-        breaks_s=tuple(sorted(t for t in breaks if 0.0 < t < end)),
+        plasma_count=1
+        + max(*(event.plasma for event in episodes), *(state.plasma for state in states), 0, 0),
+        breaks_s=_breaks(breaks, edges, end),
         eclipses=eclipses,
+        edges_s=edges,
+        states=states,
     )
 
 
+def _states(case: Case, mode: Mode | None, legs: Sequence[Leg]) -> tuple[LegState, ...]:
+    names = plasma_names(case, mode)
+    fixed = 1 + (len(case.plasma.event) if mode is None or mode.events else 0)
+    return tuple(
+        LegState(
+            0 if leg.plasma == names[0] else fixed + names[fixed:].index(leg.plasma),
+            leg.events,
+            leg.emitting,
+        )
+        for leg in legs
+    )
+
+
+def _knots(way: Path, eclipses: Sequence[Eclipse], end: float) -> Array:
+    """Knots [K] from 0 to `end`: motion, spin and penumbrae."""
+    if way.trajectory is None:
+        return np.array([0.0, end])
+    knots = np.union1d(_motion_knots(way.trajectory, end), [0.0, end])
+    for leg in way.legs:
+        spin = leg.attitude
+        if spin.law == "spin" and spin.resolved and spin.period_s is not None:
+            count = (leg.end_s - leg.start_s) / spin.period_s * KNOTS_A_TURN
+            if count > MOST_KNOTS:
+                raise InputError(
+                    f"attitude.resolved: {count:.3g} steps would follow every turn of "
+                    f"{spin.period_s:g} s",
+                    key=("attitude", "resolved"),
+                    value=True,
+                    allowed=f"{MOST_KNOTS} steps; resolved = false takes the mean of a turn",
+                )
+            knots = np.union1d(knots, np.linspace(leg.start_s, leg.end_s, int(count) + 2))
+    for first, last in penumbrae(eclipses):
+        knots = np.union1d(knots, np.clip(np.linspace(first, last, PENUMBRA_KNOTS), 0.0, end))
+    return knots
+
+
+def _motion_knots(trajectory: Trajectory, end: float) -> Array:
+    """Times at most a minute and a quarter of a degree of motion apart."""
+    coarse = np.linspace(0.0, end, int(np.ceil(end / (0.98 * LONGEST_KNOT_S))) + 1)
+    step = coarse[1] - coarse[0]
+    turn = angular_speed_rad_s(trajectory, coarse)
+    # 2 %: what the turn can gain between two neighbours of a minute
+    parts = np.ceil(1.02 * np.maximum(turn[1:], turn[:-1]) * step / LARGEST_TURN_RAD)
+    parts = np.where(parts <= 1.0, 1, parts).astype(np.intp)
+    if parts.max() == 1:
+        return coarse
+    first = np.repeat(coarse[:-1], parts)
+    number = np.arange(first.size) - np.repeat(np.cumsum(parts) - parts, parts)
+    return np.append(first + number * (step / np.repeat(parts, parts)), end)
+
+
+def _tabulated(way: Path, number: int, knots: Array) -> tuple[Array, Array, Array, Array]:
+    """Knots of a leg with terminator crossings and refinement, crossings, light, illumination."""
+    shot = way.in_leg(number, knots)
+    crossings = _sign_changes(knots, shot.signed_cosine)
+    if crossings.size:
+        knots = np.union1d(knots, crossings)
+        shot = way.in_leg(number, knots)
+    light, body = shot.light, shot.illumination
+    if way.trajectory is None or knots.size > MOST_REFINED:
+        return knots, crossings, light, body
+    # kinks of attitude files, shadow tables, yaw steering, eclipses by the Moon
+    open_ = np.arange(knots.size - 1)
+    for _ in range(12):
+        middle = 0.5 * (knots[open_] + knots[open_ + 1])
+        between = way.in_leg(number, middle)
+        error = np.abs(between.light - 0.5 * (light[:, open_] + light[:, open_ + 1])).max(axis=0)
+        error = np.maximum(
+            error, np.abs(between.illumination - 0.5 * (body[open_] + body[open_ + 1]))
+        )
+        coarse = (error > LARGEST_LIGHT_ERROR) & (knots[open_ + 1] - knots[open_] > 1e-3)
+        if not coarse.any() or knots.size > MOST_REFINED:
+            break
+        at = open_[coarse] + 1
+        knots = np.insert(knots, at, middle[coarse])
+        light = np.insert(light, at, between.light[:, coarse], axis=1)
+        body = np.insert(body, at, between.illumination[coarse])
+        left = at - 1 + np.arange(at.size)
+        open_ = np.sort(np.concatenate([left, left + 1]))
+    return knots, crossings, light, body
+
+
+def _breaks(found: set[float], edges: Sequence[float], end: float) -> tuple[float, ...]:
+    """Breaks within the run; what lies beside the edge of a leg is that edge."""
+    kept: list[float] = []
+    for t in sorted(t for t in found if 0.0 < t < end):
+        beside = any(abs(t - edge) < _APART_S for edge in edges)
+        if not beside and not (kept and t - kept[-1] < _APART_S):
+            kept.append(t)
+    return tuple(sorted((*kept, *edges)))
+
+
 def output_times(case: Case, around: Surroundings) -> Array:
-    """Output grid [s]: start + k·step and the end, 1 s steps around eclipse contacts.
+    """Output grid [s]: start + k·step and the end, 1 s steps around eclipses and mode edges.
 
     After an uncharged start the first step is refined from a millisecond on, twenty times
-    a decade: it holds the charging of structure.
+    a decade: it holds the charging of structure. Of times within a leap second, which UTC
+    cannot tell apart, only the first is kept.
     """
     end, step = case.duration_s, case.time.output_step_s
     grid = np.append(np.arange(case.output_times - 1) * step, end)
     if case.time.start == "uncharged" and step > FIRST_OUTPUT_S:
         decades = np.log10(step / FIRST_OUTPUT_S)
         grid = np.union1d(grid, np.geomspace(FIRST_OUTPUT_S, step, round(20 * decades) + 1))
+    spans = [span for span in penumbrae(around.eclipses) if span[1] - span[0] <= FINE_LONGEST_S]
+    spans += [(edge, edge) for edge in around.edges_s]
     fine = [
         np.arange(np.ceil(first - FINE_MARGIN_S), last + FINE_MARGIN_S, FINE_STEP_S)
-        for first, last in _penumbrae(around.eclipses)
-        if last - first <= FINE_LONGEST_S and step > FINE_STEP_S
+        for first, last in spans
+        if step > FINE_STEP_S
     ]
-    times = np.union1d(grid, np.concatenate(fine)) if fine else grid
-    return times[(times >= 0.0) & (times <= end)]
+    if sum(part.size for part in fine) > MOST_FINE:
+        fine = []
+    times = np.union1d(grid, np.concatenate([*fine, around.edges_s])) if spans else grid
+    times = times[(times >= 0.0) & (times <= end)]
+    return named_times(case, times)
 
 
-def eclipses_of(case: Case) -> tuple[Eclipse, ...]:
-    """Eclipses within a case [s after the start]; none for a fixed case."""
-    if not isinstance(case.orbit, OrbitKepler):
-        return ()
-    orbit = kepler(case.orbit)
-    return find_eclipses(
-        lambda t: position_velocity(orbit, t)[0],
-        sun_path(orbit.epoch),
-        0.0,
-        case.duration_s,
-        body_radius_m=EARTH_RADIUS_M + 1e3 * case.sun.absorbing_height_km,
-    )
+def named_times(case: Case, time_s: Array) -> Array:
+    """Those of increasing times [s] that UTC tells apart: of a leap second, the first."""
+    labels = moments(case, time_s)
+    return np.asarray(time_s[np.append(True, labels[1:] > labels[:-1])])
 
 
-def _contacts(eclipse: Eclipse) -> list[float]:
-    contacts = (
-        eclipse.penumbra_start,
-        eclipse.umbra_start,
-        eclipse.umbra_end,
-        eclipse.penumbra_end,
-    )
-    return [t for t in contacts if t is not None]
-
-
-def _penumbrae(eclipses: Sequence[Eclipse]) -> list[tuple[float, float]]:
+def penumbrae(eclipses: Sequence[Eclipse]) -> list[tuple[float, float]]:
+    """Spans [s] within which the illumination changes."""
     spans = []
     for eclipse in eclipses:
-        times = _contacts(eclipse)
-        if eclipse.umbra_start is None or eclipse.umbra_end is None:
+        times = contacts(eclipse)
+        if eclipse.umbra_s <= 0.0 and times:
             spans.append((times[0], times[-1]))
             continue
-        if eclipse.penumbra_start is not None:
+        if eclipse.penumbra_start is not None and eclipse.umbra_start is not None:
             spans.append((eclipse.penumbra_start, eclipse.umbra_start))
-        if eclipse.penumbra_end is not None:
+        if eclipse.penumbra_end is not None and eclipse.umbra_end is not None:
             spans.append((eclipse.umbra_end, eclipse.penumbra_end))
     return spans
 
@@ -322,28 +363,3 @@ def _sign_changes(time_s: Array, values: Array) -> Array:
     row, k = np.nonzero(values[:, :-1] * values[:, 1:] < 0.0)
     before, after = values[row, k], values[row, k + 1]
     return np.unique(time_s[k] + (time_s[k + 1] - time_s[k]) * before / (before - after))
-
-
-def _temperatures(surfaces: Sequence[Surface], knots: Array, light: Array) -> Array:
-    """Temperature [K, S] on the knots; conductors without one get the reference 298.15 K.
-
-    A sun/eclipse pair relaxes towards a target that is linear in the illumination; the
-    relaxation is exact for a target constant over a knot interval.
-    """
-    columns = []
-    for surface in surfaces:
-        given = surface.temperature_K
-        if isinstance(given, SunlitEclipse):
-            target = given.eclipse_K + light * (given.sunlit_K - given.eclipse_K)
-            keep = np.exp(-np.diff(knots) / (60.0 * given.time_constant_min))
-            value = target[0]
-            column = [value]
-            for k, share in enumerate(keep):
-                middle = 0.5 * (target[k] + target[k + 1])
-                value = middle + (value - middle) * share
-                column.append(value)
-            columns.append(np.array(column))
-        else:
-            # a bonded conductor has no film whose conduction could depend on it
-            columns.append(np.full(len(knots), 298.15 if given is None else given))
-    return np.stack(columns, axis=1)

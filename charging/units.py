@@ -153,6 +153,12 @@ def _angle(*names: str) -> dict[str, tuple[Bare, ...]]:
     return {name: (Bare(f"{name}_deg", "angle", "deg"),) for name in names}
 
 
+_ATTITUDE: Mapping[str, tuple[Bare, ...]] = {
+    "period": (Bare("period_s", "time", "s"),),
+    **_angle("phase"),
+}
+
+
 @cache
 def case_bare_keys() -> BareKeys:
     """Return the bare keys of a case file, by table."""
@@ -185,6 +191,10 @@ def case_bare_keys() -> BareKeys:
             "eclipse": (Bare("eclipse_K", "temperature", "K"),),
             "time_constant": (Bare("time_constant_min", "time", "min"),),
         },
+        ("attitude",): _ATTITUDE,
+        ("mode", "attitude"): _ATTITUDE,
+        ("mode",): _angle("parked_sun_angle"),
+        ("emitter",): {"energy": (Bare("energy_eV", "energy", "eV"),)},
         ("link",): {"resistance": (Bare("resistance_ohm", "resistance", "ohm"),)},
         ("limit",): {
             "allowed": (

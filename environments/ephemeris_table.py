@@ -21,6 +21,7 @@ from environments.ephemeris import (
 )
 from environments.errors import EnvironmentDataError
 from environments.interpolation import Method
+from environments.magnetosphere import magnetic_place
 from environments.text_table import TextTable, number, read_table
 from environments.timescales import TIME_SCALES, read_tai, tai_from_utc, utc_at
 from environments.trajectory import Geometry, Trajectory
@@ -142,6 +143,8 @@ def write_orbit_netcdf(
     trajectory: Trajectory,
     blocks: Iterable[Geometry],
     attributes: Mapping[str, str] | None = None,
+    *,
+    magnetic: bool = False,
 ) -> int:
     """Write geometry to NetCDF as it comes, block by block.
 
@@ -155,6 +158,9 @@ def write_orbit_netcdf(
         From `environments.trajectory.geometry_blocks`.
     attributes : mapping, optional
         Further global attributes.
+    magnetic : bool, optional
+        Also dipole latitude, L and magnetic local time, see
+        `environments.magnetosphere.magnetic_place`; only for times within its years.
 
     Returns
     -------
@@ -174,7 +180,7 @@ def write_orbit_netcdf(
     count = 0
     try:
         with netCDF4.Dataset(str(temporary), "w") as dataset:
-            _define(dataset, trajectory, attributes or {})
+            _define(dataset, trajectory, attributes or {}, magnetic)
             for shot in blocks:
                 here = slice(count, count + shot.seconds.size)
                 utc = utc_at(trajectory.epoch, shot.seconds)
@@ -185,6 +191,12 @@ def write_orbit_netcdf(
                 dataset.variables["sun_direction"][:, here] = shot.sun_direction
                 dataset.variables["illumination"][here] = shot.illumination
                 dataset.variables["beta_angle"][here] = shot.beta_angle_deg
+                dataset.variables["sun_distance"][here] = shot.sun_distance_m
+                if magnetic:
+                    sun = shot.position_m + shot.sun_distance_m * shot.sun_direction
+                    place = magnetic_place(shot.position_m, sun, utc)
+                    for name, values in zip(_MAGNETIC, place, strict=True):
+                        dataset.variables[name][here] = values
                 dataset.sync()
                 count += shot.seconds.size
         with temporary.open("rb+") as written:
@@ -196,7 +208,16 @@ def write_orbit_netcdf(
     return count
 
 
-def _define(dataset: Any, trajectory: Trajectory, attributes: Mapping[str, str]) -> None:
+_MAGNETIC: Final = {
+    "dipole_latitude": ("degree", "latitude about the axis of the Earth's centred dipole"),
+    "l_shell": ("1", "McIlwain L of the centred dipole, in units of 6371.2 km"),
+    "magnetic_local_time": ("hour", "magnetic local time, 12 under the Sun"),
+}
+
+
+def _define(
+    dataset: Any, trajectory: Trajectory, attributes: Mapping[str, str], magnetic: bool
+) -> None:
     dataset.createDimension("axis", 3)
     dataset.createDimension("time", None)
     fixed = {
@@ -212,24 +233,33 @@ def _define(dataset: Any, trajectory: Trajectory, attributes: Mapping[str, str])
     for key, value in {**fixed, **attributes}.items():
         dataset.setncattr(key, value)
     epoch = np.datetime_as_string(trajectory.epoch, unit="ns").replace("T", " ")
+    axis = dataset.createVariable("axis_name", str, ("axis",))
+    axis.setncattr("long_name", "name of the axis")
+    axis[:] = np.array(["x", "y", "z"], dtype=object)
+    along, everywhere = ("time",), ("axis", "time")
     for name, shape, units, meaning in (
-        ("time", ("time",), f"seconds since {epoch}", "time, UTC"),
-        ("position", ("axis", "time"), "m", "position from the Earth's centre"),
-        ("velocity", ("axis", "time"), "m s-1", "velocity"),
-        ("sun_direction", ("axis", "time"), "1", "unit vector from the spacecraft to the Sun"),
-        ("illumination", ("time",), "1", "share of the Sun's disc that the Earth leaves free"),
-        ("beta_angle", ("time",), "degree", "Sun above the orbit plane"),
+        ("time", along, f"seconds since {epoch}", "time, UTC"),
+        ("position", everywhere, "m", "position from the Earth's centre, inertial"),
+        ("velocity", everywhere, "m s-1", "velocity, inertial"),
+        ("sun_direction", everywhere, "1", "unit vector from the spacecraft to the Sun, inertial"),
+        ("sun_distance", along, "m", "distance of the spacecraft from the Sun"),
+        ("illumination", along, "1", "share of the Sun's disc in view"),
+        ("beta_angle", along, "degree", "Sun above the orbit plane"),
+        *((name, along, *rest) for name, rest in (_MAGNETIC.items() if magnetic else ())),
     ):
-        chunks = (3, 8192) if len(shape) == 2 else (8192,)
+        chunks = (3, 8192) if shape is everywhere else (8192,)
         variable = dataset.createVariable(
             name, "f8", shape, chunksizes=chunks, fill_value=None if name == "time" else np.nan
         )
         variable.set_var_chunk_cache(size=1 << 20)  # the default, 64 MB each, would fill up
         variable.setncatts({"units": units, "long_name": meaning})
+        if shape is everywhere:
+            variable.setncattr("coordinates", "axis_name")
         if name == "time":
             variable.setncatts(
                 {
                     "standard_name": "time",
+                    "axis": "T",
                     "calendar": "standard",
                     "units_metadata": "leap_seconds: none",
                 }

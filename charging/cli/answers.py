@@ -116,6 +116,7 @@ def orbit_document(found: OrbitReport) -> dict[str, object]:
         "kind": found.kind,
         "start": moment(0.0),
         "end": moment(found.duration_s),
+        "source": found.source,
         "period_s": found.period_s,
         "eclipses": [
             {
@@ -136,7 +137,7 @@ def orbit_document(found: OrbitReport) -> dict[str, object]:
 def print_orbit(found: OrbitReport, document: dict[str, object]) -> None:
     """Print the answer of `orbit_report`."""
     print(found.title)
-    print(f"{document['start']} to {document['end']}")
+    print(f"{document['start']} to {document['end']}: {found.source}")
     if found.period_s is None or found.beta_angle_deg is None:
         print("fixed case: the same light for the whole run, no orbit, no eclipses")
         return
@@ -168,5 +169,8 @@ def print_orbit(found: OrbitReport, document: dict[str, object]) -> None:
             "lllllr",
         )
     else:
-        print("no eclipse by the Earth")
-    print("Spherical Earth, Sun to 0.01 deg; eclipses by the Moon are not looked for.")
+        print("no eclipse")
+    print(
+        "Flattened Earth, Sun within 0.001 deg; eclipses by the Moon "
+        + ("within some 15 s." if found.moon else "are not looked for ([sun] moon = true).")
+    )

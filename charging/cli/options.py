@@ -88,6 +88,8 @@ def as_factors(given: list[str] | None) -> dict[str, float]:
         band, equals, factor = text.partition("=")
         try:
             factors[band.strip()] = float(factor)
+            if not 0.0 <= float(factor) <= 1e6:
+                equals = ""
         except ValueError:
             equals = ""
         if not equals:
@@ -95,7 +97,7 @@ def as_factors(given: list[str] | None) -> dict[str, float]:
                 f'--flare "{printable(text)}": is no BAND=FACTOR',
                 key=("flare",),
                 value=text,
-                allowed="a band of 'halflit spectrum', an equals sign and a number",
+                allowed="a band of 'halflit spectrum', an equals sign and a number, 0 to 1e6",
             )
     return factors
 

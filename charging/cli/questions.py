@@ -117,12 +117,13 @@ def orbit(
 ) -> None:
     """Eclipses and beta angle along the orbit of a case, without charging."""
     from charging.case import load_case
-    from charging.orbit_view import orbit_dataset, orbit_report, write_orbit
+    from charging.orbit_view import orbit_report, write_orbit
 
-    loaded = load_case(case, allow_outside=allow_outside)
-    found = orbit_report(loaded)
-    if out is not None:
-        write_orbit(orbit_dataset(loaded), out, option="--out")
+    loaded = load_case(case, allow_outside=allow_outside, orbit_only=True)
+    if out is None:
+        found = orbit_report(loaded)
+    else:
+        found = write_orbit(loaded, out, option="--out")
         wrote(out)
     document = orbit_document(found)
     if json:

@@ -38,6 +38,9 @@ AllowOutside = Annotated[
 ]
 Json = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
 
+MOST_ECLIPSES = 20
+"""More are counted, not printed."""
+
 SLOW_S = 2.0
 """A run that lasts longer says so, on a terminal only."""
 
@@ -69,7 +72,7 @@ def run(
     check_target(target)
     began = time.monotonic()
     modes = []
-    for mode in (None, *loaded.case.mode):
+    for mode in (None, *loaded.case.alternatives):
         modes.append(solve_mode(loaded, mode))
         if time.monotonic() - began > SLOW_S and sys.stderr.isatty():
             print(f"solved mode {modes[-1].name!r}", file=sys.stderr)
@@ -196,7 +199,8 @@ def _clock(result: CaseRun) -> Callable[[str], str]:
     if case.orbit.kind == "fixed":
 
         def elapsed(text: str) -> str:
-            whole = round((datetime.fromisoformat(text) - case.epoch).total_seconds())
+            at = text.replace(":60Z", ":59Z")  # a leap second is not shown
+            whole = round((datetime.fromisoformat(at) - case.epoch).total_seconds())
             return f"{whole // 3600}:{whole // 60 % 60:02d}:{whole % 60:02d}"
 
         return elapsed
@@ -254,12 +258,19 @@ def _print_mode(mode: dict[str, Any], clock: Callable[[str], str]) -> None:
         f"structure: {volts(structure['lowest_V'])} V at {clock(structure['lowest_time'])} to "
         f"{volts(structure['highest_V'])} V at {clock(structure['highest_time'])}"
     )
-    for eclipse in mode["eclipses"]:
+    for eclipse in mode["eclipses"][:MOST_ECLIPSES]:
+        if not eclipse["umbra_s"] and eclipse["penumbra_start"] and eclipse["penumbra_end"]:
+            print(
+                f"partial eclipse by the {eclipse['body']} {clock(eclipse['penumbra_start'])} to "
+                f"{clock(eclipse['penumbra_end'])} UTC"
+            )
         if eclipse["umbra_start"] and eclipse["umbra_end"]:
             print(
                 f"umbra {clock(eclipse['umbra_start'])} to {clock(eclipse['umbra_end'])} UTC "
                 f"({eclipse['umbra_s'] / 60.0:.1f} min)"
             )
+    if len(mode["eclipses"]) > MOST_ECLIPSES:
+        print(f"and {len(mode['eclipses']) - MOST_ECLIPSES} further eclipses: see summary.json")
     if not mode["eclipses"]:
         steady = mode["steady_after_s"]
         print(

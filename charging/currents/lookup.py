@@ -34,7 +34,7 @@ from charging.currents.tables import knots
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
-SCALE_V, SPACING = 0.05, 0.008
+SCALE_V, SPACING = 0.05, 0.0065
 NOT_GRADED = 10.0  # spacing of knots below a break that needs no grading
 SPECTRUM_DEGREE = 5  # the kinks of spectra ask for more
 DEGREE = 3  # a quintic on fewer knots costs a march a fifth more

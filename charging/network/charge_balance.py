@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from charging.currents.lookup import NetCurrents
 from charging.currents.surface import Setting, SurfaceModel, surface_currents
 from charging.currents.tables import REACH_V
+from charging.network.emitters import NO_EMITTERS, Emitters
 from charging.network.nodes import Network
 from materials.conduction import (
     LARGEST_FIELD_V_m,
@@ -28,18 +29,24 @@ class Around(Protocol):
         """Return plasma shares [m, P] and light [m, S], and surface temperatures [K, m, S]."""
         ...
 
+    def emitting(self, time_s: Array) -> Array:
+        """Return 1 for emitters [m, E] that work and 0 for the others."""
+        ...
+
 
 class Flows(NamedTuple):
     """Currents of one evaluation by the direct path, at times [m].
 
     surface_A_m2 : ndarray [m, S, 6], order of `surface.MECHANISMS`;
     film_A_m2 : ndarray [m, F], conduction arriving at the outer face;
-    link_A : ndarray [m, L], from the first to the second end (positive lowers the first).
+    link_A : ndarray [m, L], from the first to the second end (positive lowers the first);
+    emitter_A : ndarray [m, E], arriving on structure.
     """
 
     surface_A_m2: Array
     film_A_m2: Array
     link_A: Array
+    emitter_A: Array
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,6 +62,7 @@ class ChargeBalance:
     net : Network
     around : Around
     mass : ndarray [n, n]
+    emitters : Emitters
     """
 
     models: tuple[SurfaceModel, ...]
@@ -62,13 +70,17 @@ class ChargeBalance:
     net: Network
     around: Around
     mass: Array
+    emitters: Emitters = NO_EMITTERS
 
     def rhs(self, member: Index, time_s: Array, y: Array) -> Array:
         """Charge rates [A] of the state variables [m, n]."""
         setting, temperature = self.around.at(time_s)
         potential = self.net.potentials(y)[:, self.net.surface_node]
         current = self.table.current(member, potential, setting)
-        return self._rates(current, self._film_current(temperature, y), y)
+        rate = self._rates(current, self._film_current(temperature, y), y)
+        if self.emitters.names:
+            rate[:, 0] += self._emitted(time_s, y)[0].sum(axis=-1)
+        return rate
 
     def rhs_and_jacobian(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array]:
         """Charge rates [A] of the state variables [m, n] and derivatives [A/V, m, n, n]."""
@@ -81,7 +93,19 @@ class ChargeBalance:
         jacobian = ((moves * (net.area_m2 * slope)[:, None, :])[:, :, None, :] * moves).sum(axis=-1)
         jacobian[:, net.film_node, net.film_node] += film_slope * net.area_m2[net.film_surface]
         jacobian -= net.link_stiffness_S
-        return self._rates(current, film, y), jacobian
+        rate = self._rates(current, film, y)
+        if self.emitters.names:
+            arriving, by_structure = self._emitted(time_s, y)
+            rate[:, 0] += arriving.sum(axis=-1)
+            jacobian[:, 0, 0] += by_structure.sum(axis=-1)
+        return rate, jacobian
+
+    def _emitted(self, time_s: Array, y: Array) -> tuple[Array, Array]:
+        """Currents of the emitters onto structure [A, m, E], and slopes by y[:, 0]."""
+        if not self.emitters.names:
+            none = np.zeros((len(time_s), 0))
+            return none, none
+        return self.emitters.arriving(y[:, 0], self.around.emitting(time_s))
 
     def _rates(self, current: Array, film: Array, y: Array) -> Array:
         """Charge rates [m, n] from current densities of surfaces [m, S] and films [m, F]."""
@@ -133,7 +157,8 @@ class ChargeBalance:
                 light=light, illumination=1.0 if illumination is None else illumination
             )
         by_mechanism = surface_currents(self.models[member], potential, setting).by_mechanism
-        return Flows(by_mechanism, self._film_current(temperature, y), self._links(y))
+        film = self._film_current(temperature, y)
+        return Flows(by_mechanism, film, self._links(y), self._emitted(time_s, y)[0])
 
     def node_currents(self, flows: Flows) -> Array:
         """Net current into every node [A, m, n], conduction and links included."""
@@ -146,6 +171,7 @@ class ChargeBalance:
         for i, (face, below) in enumerate(zip(net.film_node, net.film_parent, strict=True)):
             into[:, face] += film[:, i]
             into[:, below] -= film[:, i]
+        into[:, 0] += flows.emitter_A.sum(axis=-1)
         for row, ends in enumerate(net.link_nodes):
             into[:, ends[0]] -= flows.link_A[:, row]
             into[:, ends[1]] += flows.link_A[:, row]

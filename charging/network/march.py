@@ -180,7 +180,11 @@ def march(
         lands = h[active] >= room * (1.0 - 1e-12)
         # two even steps rather than a full one and a sliver
         step = np.where(lands, room, np.where(h[active] > 0.5 * room, 0.5 * room, h[active]))
-        y1, error, c2, c3 = _rodas_step(system, active, t[active], y[active], step, tolerance)
+        # what holds before a jump holds up to it: no stage of a step that ends there looks over
+        latest = np.nextafter(stops[goal[active]], -np.inf)
+        y1, error, c2, c3 = _rodas_step(
+            system, active, t[active], y[active], step, latest, tolerance
+        )
         tried[active] += 1
         good = error <= 1.0
         factor = SAFETY * np.maximum(error, 1e-8) ** -0.25
@@ -214,7 +218,13 @@ def march(
 
 
 def _rodas_step(
-    system: System, member: Index, t: Array, y: Array, h: Array, tolerance: Tolerance
+    system: System,
+    member: Index,
+    t: Array,
+    y: Array,
+    h: Array,
+    latest: Array,
+    tolerance: Tolerance,
 ) -> tuple[Array, Array, Array, Array]:
     """Try one step; return y1, error norm (inf where a stage left the domain), c2, c3."""
     f0, jacobian = system.rhs_and_jacobian(member, t, y)
@@ -233,7 +243,7 @@ def _rodas_step(
                 state += a * stage
             inside &= system.admissible(state)
             state = np.where(inside[:, None], state, y)  # rejected below
-            f = system.rhs(member, t + ALPHA[i] * h, state)
+            f = system.rhs(member, np.minimum(t + ALPHA[i] * h, latest), state)
         right = f
         if GAMMA_T[i]:
             right = right + (GAMMA_T[i] * h)[:, None] * f_t

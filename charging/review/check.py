@@ -42,7 +42,7 @@ def review_case(loaded: LoadedCase) -> Review:
     rows: list[dict[str, Any]] = []
     said: list[str] = []
     verdicts: list[Verdict] = []
-    for mode in (None, *loaded.case.mode, *extra):
+    for mode in (None, *loaded.case.alternatives, *extra):
         solved = solve_mode(loaded, mode)
         summary = mode_summary(loaded, solved)
         verdicts.append(summary.verdict)
@@ -71,4 +71,6 @@ def load_case_or_result(path: Path, *, allow_outside: bool = False) -> LoadedCas
         file=f"{path}: case_text",
         material_texts=json.loads(attributes["material_texts"]),
         plasma_texts=json.loads(attributes["plasma_texts"]),
+        file_texts=json.loads(attributes.get("file_texts", "{}")),
+        file_sha256=json.loads(attributes.get("file_sha256", "{}")),
     )

@@ -56,6 +56,10 @@ def _when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
         text += f", {span(round(time_s) - round(last.onset_s))} after the onset of '{name}'"
     if not mode.around.episodes and not mode.around.eclipses:
         text = f"{span(time_s)} after the start in mode '{mode.name}'"
+    # a peak at the edge of a mode was reached before it
+    leg = mode.way.legs[int(mode.around.leg(np.array(np.nextafter(time_s, 0.0))))]
+    if leg.modes:
+        text += f", in mode {' and '.join(repr(name) for name in leg.modes)}"
     return text
 
 
@@ -64,7 +68,8 @@ def _driver(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
     member = mode.laws.index(judgement.peak.law)
     time = np.array([judgement.peak.time_s])
     state = mode.trajectories[member](time)
-    flows = mode.balance.flows(member, time, state).surface_A_m2[0]
+    arriving = mode.balance.flows(member, time, state)
+    flows = arriving.surface_A_m2[0]
     names = loaded.case.names
     own = flows[names.index(judgement.surface)]
     up, down = int(np.argmax(own)), int(np.argmin(own))
@@ -78,6 +83,9 @@ def _driver(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
         pulls = on_structure[int(np.argmin(net))]
         if net.min() < 0.0:
             text += f"; structure is drawn down by '{names[pulls]}' ({1e6 * net.min():+.2g} µA)"
+    for name, current in zip(mode.balance.emitters.names, arriving.emitter_A[0], strict=True):
+        if current > 0.0:
+            text += f"; emitter '{name}' gives structure {1e6 * current:+.3g} µA"
     return text + "."
 
 

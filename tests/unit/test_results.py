@@ -18,7 +18,7 @@ from charging.case import load_case_text
 from charging.dataset import ALL_MECHANISMS, VARIABLES, mode_dataset, read_result
 from charging.errors import InputError
 from charging.orbit_run import CaseRun, run_case
-from charging.result_folder import result_folder
+from charging.result_folder import check_target, result_folder
 from charging.results import write_results
 from charging.review.check import load_case_or_result
 from charging.summary import case_summaries
@@ -158,8 +158,13 @@ def test_values_hang_together(demo_folder: Path, demo_day: CaseRun) -> None:
     assert radius == pytest.approx(np.full_like(radius, 4.2164e7), rel=1e-3)
     assert (dataset["illuminated_fraction"].values == 1.0).all()
     flags = dataset["region"]
-    assert flags.attrs["flag_meanings"].split() == ["penumbra", "umbra", "plasma_event"]
-    assert flags.attrs["flag_masks"].tolist() == [1, 2, 4]
+    assert flags.attrs["flag_meanings"].split() == [
+        "penumbra",
+        "umbra",
+        "plasma_event",
+        "mode_interval",
+    ]
+    assert flags.attrs["flag_masks"].tolist() == [1, 2, 4, 8]
     light = dataset["illumination"].values
     assert np.array_equal(flags.values & 2 > 0, light == 0.0)
     assert np.array_equal(flags.values & 1 > 0, (light > 0.0) & (light < 1.0))
@@ -287,7 +292,9 @@ def test_summary_has_the_keys_of_the_contract(demo_folder: Path, demo_day: CaseR
         assert set(row) >= SURFACE_KEYS
         assert row["lowest_V"] <= row["highest_V"]
         assert row["worst_normal_V"] <= 0.0 <= row["worst_inverted_V"]
-        assert row["worst_normal_time"].endswith("Z")
+        for side in ("normal", "inverted"):
+            time = row[f"worst_{side}_time"]
+            assert time.endswith("Z") if row[f"worst_{side}_V"] else time is None
         for limit in row["limits"]:
             assert set(limit) >= LIMIT_KEYS
             assert limit["verdict"] in {"within", "exceeded", "not assessable"}
@@ -311,9 +318,13 @@ def test_alternative_modes_have_a_file_each(static_folder: Path, static_case: Ca
         ("eclipse", "result_01.nc"),
     ]
     for mode in found["modes"]:
-        attrs = read_result(static_folder / mode["result"]).attrs
-        assert attrs["mode"] == mode["mode"]
-        assert attrs["charge_audit_relative"] == pytest.approx(mode["charge_audit_relative"])
+        assert mode["results_by_law"]["sanders_inouye_1979"] == mode["result"]
+        audits = []
+        for law, name in mode["results_by_law"].items():
+            attrs = read_result(static_folder / name).attrs
+            assert (attrs["mode"], attrs["secondary_law"]) == (mode["mode"], law)
+            audits.append(attrs["charge_audit_relative"])
+        assert max(audits) == pytest.approx(mode["charge_audit_relative"], abs=0.0)
     with (static_folder / "surfaces.csv").open(encoding="utf-8", newline="") as file:
         rows = list(csv.DictReader(file))
     assert len(rows) == 2 * len(static_case.loaded.case.surface)
@@ -340,9 +351,15 @@ def test_peaks_do_not_depend_on_the_output_grid() -> None:
         assert one.surfaces == other.surfaces
         assert one.structure_lowest == other.structure_lowest
     # and they are really beyond what the coarse grid sees
-    seen = mode_dataset(coarse, coarse.modes[1])["potential"].values
-    peaks = case_summaries(coarse)[1].surfaces
+    mode, peaks = coarse.modes[1], case_summaries(coarse)[1].surfaces
+    grid = np.arange(0.0, coarse.loaded.case.duration_s, 450.0)
+    seen = mode.net.potentials(mode.trajectories[0](grid))[:, mode.net.surface_node].T
     assert max(seen[i].min() - p.lowest.value for i, p in enumerate(peaks)) > 10.0
+    # the file holds the moments of the extremes, so its own extremes are the peaks
+    held = mode_dataset(coarse, mode)["potential"].values
+    for i, p in enumerate(peaks):
+        if p.lowest.law == mode.laws[0]:
+            assert held[i].min() == pytest.approx(p.lowest.value, abs=1e-9)
 
 
 def test_peaks_bound_what_the_output_grid_shows(demo_day: CaseRun) -> None:
@@ -390,7 +407,12 @@ def test_reading_what_is_no_result(tmp_path: Path, what: str) -> None:
 
 
 def fill(folder: Path, text: str) -> None:
-    (folder / "summary.json").write_text(text, encoding="utf-8")
+    summary = json.dumps({"halflit_version": text})
+    (folder / "summary.json").write_text(summary, encoding="utf-8")
+
+
+def filled(folder: Path) -> str:
+    return str(json.loads((folder / "summary.json").read_text(encoding="utf-8"))["halflit_version"])
 
 
 def hidden(parent: Path) -> list[str]:
@@ -405,8 +427,8 @@ def test_old_result_is_replaced_as_a_whole(tmp_path: Path) -> None:
         assert not target.exists()
     with result_folder(target) as folder:
         fill(folder, "two")
-        assert (target / "summary.json").read_text(encoding="utf-8") == "one"
-    assert (target / "summary.json").read_text(encoding="utf-8") == "two"
+        assert filled(target) == "one"
+    assert filled(target) == "two"
     assert not (target / "old.png").exists()
     assert hidden(tmp_path) == []
 
@@ -415,9 +437,40 @@ def test_foreign_folder_is_refused_untouched(tmp_path: Path) -> None:
     target = tmp_path / "thesis"
     target.mkdir()
     (target / "chapter.txt").write_text("mine", encoding="utf-8")
-    with pytest.raises(InputError, match="not a result folder"), result_folder(target):
+    with pytest.raises(InputError, match=r"holds chapter.txt"), result_folder(target):
         pytest.fail("entered")
     assert (target / "chapter.txt").read_text(encoding="utf-8") == "mine"
+    assert hidden(tmp_path) == []
+
+
+def test_result_with_a_note_added_is_not_thrown_away(tmp_path: Path) -> None:
+    target = tmp_path / "day"
+    with result_folder(target) as folder:
+        fill(folder, "one")
+    (target / "notes.txt").write_text("mine", encoding="utf-8")
+    for use in (check_target, lambda t: result_folder(t).__enter__()):
+        with pytest.raises(InputError, match=r"holds notes.txt"):
+            use(target)
+    assert filled(target) == "one"
+
+
+def test_summary_of_another_program_is_not_ours(tmp_path: Path) -> None:
+    target = tmp_path / "day"
+    target.mkdir()
+    (target / "summary.json").write_text("{}", encoding="utf-8")
+    with pytest.raises(InputError, match="of this program"):
+        check_target(target)
+
+
+def test_link_stays_a_link_to_the_new_result(tmp_path: Path) -> None:
+    target, link = tmp_path / "day", tmp_path / "link"
+    with result_folder(target) as folder:
+        fill(folder, "one")
+    link.symlink_to(target)
+    with result_folder(link) as folder:
+        fill(folder, "two")
+    assert link.is_symlink()
+    assert filled(target) == "two"
     assert hidden(tmp_path) == []
 
 
@@ -460,7 +513,7 @@ def test_result_caught_between_the_renames_is_put_back(tmp_path: Path) -> None:
 
     with pytest.raises(RuntimeError):
         fails()
-    assert (target / "summary.json").read_text(encoding="utf-8") == "kept"
+    assert filled(target) == "kept"
     assert hidden(tmp_path) == []
 
 
@@ -481,7 +534,7 @@ def test_nothing_half_written_on_an_exception(tmp_path: Path, before: bool) -> N
     assert hidden(tmp_path) == []
     assert target.exists() is before
     if before:
-        assert (target / "summary.json").read_text(encoding="utf-8") == "one"
+        assert filled(target) == "one"
 
 
 def test_writing_that_fails_leaves_the_old_result(

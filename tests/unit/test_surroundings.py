@@ -10,16 +10,13 @@ from numpy.typing import NDArray
 from scipy.integrate import solve_ivp
 
 from charging.case import LoadedCase, load_case_text
+from charging.flight import Path, eclipses_of, path, sun_distance_au
 from charging.orbit_run import CaseRun
 from charging.surroundings import (
     Episode,
-    Path,
     Surroundings,
-    eclipses_of,
     event_strength,
     output_times,
-    path,
-    sun_distance_au,
     surroundings,
 )
 from environments.eclipse import Eclipse

@@ -388,8 +388,10 @@ def main(count: int) -> None:
         seeds.setdefault(*row)
     for seed, error in seeds.items():
         d = draw(seed)
-        print(f"    {seed}: {error.values},  # {d.spectrum}, {d.law}, {d.geometry}: "
-              f"{error.direct:.1e}, {error.table:.1e}")  # fmt: skip
+        print(
+            f"    # {d.spectrum}, {d.law}, {d.geometry}: {error.direct:.1e}, {error.table:.1e}\n"
+            f"    {seed}: {error.values},"
+        )
 
 
 if __name__ == "__main__":
