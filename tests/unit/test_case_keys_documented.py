@@ -1,0 +1,44 @@
+"""Every key of a case file and every command stands in the documentation."""
+
+import re
+from pathlib import Path
+
+import pytest
+
+from charging.case_tables import Case
+from charging.cli import app
+
+ROOT = Path(__file__).parents[2]
+KEYS = (ROOT / "cases" / "README.md").read_text(encoding="utf-8").split("## Keys of a case file")[1]
+DOCUMENTED = set(re.findall(r"`\[{0,2}([A-Za-z0-9_.]+)\]{0,2}(?: = [^`]*)?`", KEYS))
+TABLES = {
+    name: set(table["properties"])
+    for name, table in Case.model_json_schema()["$defs"].items()
+    if "properties" in table
+}
+
+
+@pytest.mark.parametrize("table", sorted(TABLES))
+def test_keys_of_a_table_are_documented(table: str) -> None:
+    written = DOCUMENTED | {"kind", "event"}  # in [orbit] kind = …, [[plasma.event]]
+    assert TABLES[table] <= written, TABLES[table] - written
+
+
+def test_tables_are_documented() -> None:
+    top = set(Case.model_json_schema()["properties"])
+    assert top <= DOCUMENTED, top - DOCUMENTED
+
+
+def test_no_documented_key_is_unknown() -> None:
+    known = {key for keys in TABLES.values() for key in keys} | set(
+        Case.model_json_schema()["properties"]
+    )
+    stray = set(re.findall(r"`([a-z][a-z0-9_]*(?:_[A-Za-z0-9]+)+)`", KEYS)) - known
+    assert stray == set()
+
+
+def test_every_command_is_in_the_readme() -> None:
+    readme = (ROOT / "README.md").read_text(encoding="utf-8")
+    for command in app.registered_commands:
+        name = command.name or command.callback.__name__  # type: ignore[union-attr]
+        assert f"halflit {name}" in readme, name
