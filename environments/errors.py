@@ -102,7 +102,8 @@ def _path_text(key: tuple[str | int, ...]) -> str:
     text = ""
     for part in key:
         text += f"[{part}]" if isinstance(part, int) else f".{part}" if text else part
-    return text
+    # one line, whatever the file held
+    return "".join(c if c.isprintable() else repr(c)[1:-1] for c in text)
 
 
 def _value_text(value: object) -> str:

@@ -153,7 +153,6 @@ def test_no_floating_potential_exits_with_3(halflit, tmp_path):
 PICTURES = [
     ("point", "--material", "gold", "--plasma", QUIET, "--sunlit"),
     ("photoyield", "gold", "bare collector", "PTFE"),
-    ("photoyield", "bare collector"),
     ("spectrum",),
 ]
 
@@ -226,6 +225,14 @@ def test_photoyield_of_the_whole_library(halflit):
     code, out, _ = halflit("photoyield", *material_names())
     assert code == 0
     assert "calibration" in out
+
+
+def test_nothing_to_draw_is_refused(halflit, tmp_path):
+    picture = tmp_path / "curve.png"
+    code, _, err = halflit("photoyield", "bare collector", "--plot", picture)
+    assert code == 2
+    assert err.startswith("error: ")
+    assert not picture.exists()
 
 
 def test_photoyield_refuses(halflit):
