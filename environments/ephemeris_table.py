@@ -355,6 +355,9 @@ def _netcdf_times(variable: Any, file: str) -> NDArray[np.datetime64]:
     values = _finite(variable, file)
     text = origin.strip().removesuffix("Z").removesuffix(" UTC").replace(" ", "T")
     try:
+        # numpy would read an offset such as +02:00, with a warning: only UTC is meant here
+        if len(text) > 10 and any(sign in text[10:] for sign in "+-"):
+            raise ValueError(text)
         start = np.datetime64(text, "ns")
     except ValueError as error:
         raise EnvironmentDataError("is no time", value=origin, file=file) from error
@@ -385,7 +388,9 @@ def _vectors(variable: Any, count: int, units: Mapping[str, float], file: str) -
 def _finite(variable: Any, file: str) -> Array:
     values = np.ma.filled(np.ma.asarray(variable[...], dtype=np.float64), np.nan)
     if not bool(np.isfinite(values).all()):
-        at = int(np.argwhere(~np.isfinite(values))[0][-1 if variable.ndim == 1 else 0])
+        # the index along time: vectors may stand as (axis, time) or (time, axis)
+        along = list(variable.dimensions).index("time") if "time" in variable.dimensions else 0
+        at = int(np.argwhere(~np.isfinite(values))[:, along].min())
         raise EnvironmentDataError(
             f"{variable.name} is missing or not finite, first at index {at}", file=file
         )

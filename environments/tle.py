@@ -142,8 +142,28 @@ def tle_trajectory(
         raise EnvironmentDataError(f"cannot be read: {error}", key=("TLE",)) from error
     if satellite.error:
         raise EnvironmentDataError(f"cannot be used: {_reason(int(satellite.error))}", key=("TLE",))
+    _check_elements(satellite)
     epoch = _epoch(line1)
     return TleTrajectory(name or f"object {line1[2:7].strip()}", epoch, longest_days, satellite)
+
+
+def _check_elements(satellite: Any) -> None:
+    """Refuse elements that are no numbers or out of range: the checksum does not see them."""
+    half, whole = 180.0, 360.0
+    for name, value, high in (
+        ("inclination", np.degrees(satellite.inclo), half),
+        ("right ascension of the node", np.degrees(satellite.nodeo), whole),
+        ("eccentricity", satellite.ecco, 1.0),
+        ("argument of perigee", np.degrees(satellite.argpo), whole),
+        ("mean anomaly", np.degrees(satellite.mo), whole),
+        ("mean motion", 1440.0 * satellite.no_kozai / (2.0 * np.pi), 20.0),
+    ):
+        if not 0.0 <= value <= high * (1.0 + 1e-12):  # false for nan too
+            raise EnvironmentDataError(
+                f"{name} is {value:g}", key=("TLE line 2",), allowed=f"0 to {high:g}"
+            )
+    if not np.isfinite(satellite.bstar):
+        raise EnvironmentDataError("drag term is no number", key=("TLE line 1",))
 
 
 def read_tle(

@@ -145,3 +145,29 @@ def test_errors_name_their_place_also_below_a_key():
     assert str(error) == "f.csv:3: a = 1 is odd"
     assert str(error.below("orbit")) == "f.csv:3: orbit.a = 1 is odd"
     assert str(EnvironmentDataError("is odd", line=3)) == "line 3: is odd"
+
+
+@pytest.mark.parametrize("jump_m", [5e3, -50e3])
+@pytest.mark.parametrize("rows", [slice(40, 41), slice(60, None)])
+def test_a_row_that_jumps_against_its_velocities_is_refused(jump_m, rows):
+    """One outlier or a step from one row on: the median of a gravity test cannot see it."""
+    seconds = np.arange(100) * 60.0
+    position, velocity = POLAR.position_velocity(seconds)
+    tai = tai_from_utc(EPOCH) + (seconds * 1e9).astype("timedelta64[ns]")
+    sampled_trajectory([Segment(tai, position.T, velocity.T)], "clean")
+    bent = position.T.copy()
+    bent[rows, 0] += jump_m
+    row = rows.start + 1
+    with pytest.raises(EnvironmentDataError, match=rf"jumps by .* row {row} of a segment"):
+        sampled_trajectory([Segment(tai, bent, velocity.T)], "bent", file="bent.oem")
+
+
+def test_thrust_of_some_metres_a_second_is_no_jump():
+    seconds = np.arange(100) * 60.0
+    position, velocity = POLAR.position_velocity(seconds)
+    tai = tai_from_utc(EPOCH) + (seconds * 1e9).astype("timedelta64[ns]")
+    burn = np.array([3.0, 0.0, 0.0])
+    after = seconds > 3000.0
+    position = position.T + np.where(after[:, None], (seconds - 3000.0)[:, None] * burn, 0.0)
+    velocity = velocity.T + np.where(after[:, None], burn, 0.0)
+    assert sampled_trajectory([Segment(tai, position, velocity)], "burn").span_s[1] == 5940.0

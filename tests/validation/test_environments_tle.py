@@ -138,3 +138,20 @@ def test_without_the_package(monkeypatch):
     monkeypatch.setitem(sys.modules, "sgp4.api", None)
     with pytest.raises(EnvironmentDataError, match="extra `tle`"):
         tle_trajectory(*VANGUARD)
+
+
+@pytest.mark.parametrize(
+    ("field", "text", "problem"),
+    [
+        (slice(8, 16), "     nan", "inclination is nan"),
+        (slice(8, 16), "251.6416", "inclination is 251.642"),
+        (slice(17, 25), "     nan", "node is nan"),
+    ],
+)
+def test_elements_that_a_checksum_does_not_refuse(field, text, problem):
+    """A number that is none, or out of range, with a checksum that fits."""
+    line1, line2 = VANGUARD[-2:]
+    bad = line2[: field.start] + text + line2[field.stop : 68]
+    digits = sum(int(c) if c.isdigit() else c == "-" for c in bad)
+    with pytest.raises(EnvironmentDataError, match=problem):
+        tle_trajectory(line1, bad + str(digits % 10))
