@@ -9,7 +9,8 @@ from charging.case_tables import Case
 from charging.cli import app
 
 ROOT = Path(__file__).parents[2]
-KEYS = (ROOT / "cases" / "README.md").read_text(encoding="utf-8").split("## Keys of a case file")[1]
+README = (ROOT / "cases" / "README.md").read_text(encoding="utf-8")
+KEYS = README.split("## Keys of a case file")[1].split("## Plasma and material files")[0]
 DOCUMENTED = set(re.findall(r"`\[{0,2}([A-Za-z0-9_.]+)\]{0,2}(?: = [^`]*)?`", KEYS))
 TABLES = {
     name: set(table["properties"])
