@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 from charging import __version__
 from charging.audit import charge_audit
 from charging.case import LoadedCase
+from charging.case_mode_checks import span_s
 from charging.currents.surface import MECHANISMS, electron_sheath
 from charging.errors import InputError
 from charging.flight import moments
@@ -238,6 +239,15 @@ def attributes(
         if mode.way.trajectory is None
         else mode.way.trajectory.source,
         "attitude": "; ".join(dict.fromkeys(leg.attitude.law for leg in mode.way.legs)),
+        "mode_spans": json.dumps(
+            [
+                {"name": one.name, "start_s": start, "end_s": end}
+                for one in loaded.case.mode
+                if not one.alternative
+                for start, end in [span_s(loaded.case, one)]
+            ],
+            ensure_ascii=False,
+        ),
         "seeds": "none",
         "march_method": "RODAS, order 4(3), dense output",
         "march_absolute_tolerance_V": TOLERANCE.absolute,

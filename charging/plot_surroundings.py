@@ -27,31 +27,47 @@ from charging.plot_page import (
 )
 from charging.plot_time import DAY_S, Course, Stretch, utc
 
-STRIP_IN = 0.19
+STRIP_IN, STRIP_STEP_IN = 0.19, 0.24
 STRIPS_IN = 0.5
-"""Height of one strip, and room for both of them above a panel."""
+"""Height of one strip, from one to the next, and room for two of them above a panel."""
+SWITCHED, MODE, EMITTER = "#e9b0c4", "#cfd8b4", "#7a3fa0"
+"""Colours: another plasma by a mode, a mode, emission."""
+NAME_LENGTHS = (60, 40, 30, 24, 20, 16, 12)
+"""Characters of a name that are tried in turn until it fits."""
 LEAST_SHARE = 2e-3
 """Share of the strip that anything takes at least, two dots of the picture."""
 
 
+def strips_in(along: Course) -> float:
+    """Room for the strips above a panel [in]: a third one where a mode or an emitter works."""
+    further = _within(along.modes, along) or _within(along.emission, along)
+    return STRIPS_IN + (STRIP_STEP_IN if further else 0.0)
+
+
 def shade(axes: Axes, along: Course) -> None:
-    """Shade umbra, penumbra and plasma events over the height of a panel."""
+    """Shade umbra, penumbra and other plasmas than the base over the height of a panel."""
     umbra, penumbra = _dark(along)
     for parts, colour, strength in (
         (_within(along.events, along), EVENT, 0.25),
+        (_within(along.switched, along), SWITCHED, 0.25),
         (penumbra, UMBRA, 0.09),
         (umbra, UMBRA, 0.2),
     ):
-        if [(s.start_s, s.end_s) for s in parts] == [along.shown]:
-            continue  # the whole axis alike: the strip says it
+        if not parts or [(s.start_s, s.end_s) for s in parts] == [along.shown]:
+            continue  # nothing, or the whole axis alike: the strip says it
         bars = [(s.start_s, s.end_s - s.start_s) for s in parts]
         axes.broken_barh(bars, (0.0, 1.0), transform=axes.get_xaxis_transform(),
                          facecolor=colour, alpha=strength, linewidth=0.0, zorder=0.5)  # fmt: skip
 
 
 def strips(page: Page, along: Course, bottom: float) -> None:
-    """Draw two strips, sunlight and plasma, with names where they fit and a key beside."""
-    _light_strip(_strip(page, along, bottom + STRIP_IN + 0.05, "light", SUNLIT), along)
+    """Draw strips of sunlight, plasma and modes, with names where they fit and a key beside."""
+    modes, emission = _within(along.modes, along), _within(along.emission, along)
+    if modes or emission:
+        name = "modes" if modes else "emitter"
+        _mode_strip(_strip(page, along, bottom, name, CALM), along, modes, emission)
+        bottom += STRIP_STEP_IN
+    _light_strip(_strip(page, along, bottom + STRIP_STEP_IN, "light", SUNLIT), along)
     _plasma_strip(_strip(page, along, bottom, "plasma", CALM), along)
 
 
@@ -81,19 +97,53 @@ def _light_strip(axes: Axes, along: Course) -> None:
 
 
 def _plasma_strip(axes: Axes, along: Course) -> None:
-    low, high = along.shown
-    events = _within(along.events, along)
+    events, switched = _within(along.events, along), _within(along.switched, along)
     _fill(axes, along, events, EVENT)
-    free = []
-    begin = low
-    for i, s in enumerate(events):
-        free.append(Stretch(begin, s.start_s))
-        after = events[i + 1].start_s if i + 1 < len(events) else high
-        begin = _name(axes, s, (s.name,), INK, Stretch(s.end_s, after))
-    free.append(Stretch(begin, high))
+    _fill(axes, along, switched, SWITCHED)
+    free = _name_all(axes, along, sorted((*events, *switched), key=lambda s: s.start_s))
     calm = max(free, key=lambda s: _place(axes, s.end_s) - _place(axes, s.start_s))
     _name(axes, calm, (along.base_plasma,), INK)
-    _key(axes, [("plasma event", EVENT)] if events else [])
+    entries = [("plasma event", EVENT)] if events else []
+    _key(axes, [*entries, ("by mode", SWITCHED)] if switched else entries)
+
+
+def _mode_strip(axes: Axes, along: Course, modes: list[Stretch],
+                emission: list[Stretch]) -> None:  # fmt: skip
+    """Modes over the height of the strip, emission as a bar along its foot."""
+    _fill(axes, along, modes, MODE)
+    _fill(axes, along, emission, EMITTER, height=0.16)
+    _name_all(axes, along, modes, ahead=True)
+    entries = [("mode", MODE)] if modes else []
+    _key(axes, [*entries, ("emitter", EMITTER)] if emission else entries)
+
+
+def _name_all(axes: Axes, along: Course, parts: list[Stretch], *,
+              ahead: bool = False) -> list[Stretch]:  # fmt: skip
+    """Name stretches in or after themselves, or else ahead; return what is left free.
+
+    Stretches that touch are parted by a line.
+    """
+    begin, high = along.shown
+    free = []
+    for i, s in enumerate(parts):
+        after = parts[i + 1].start_s if i + 1 < len(parts) else high
+        start, end = _place(axes, s.start_s), _place(axes, s.end_s)
+        before, behind = start - _place(axes, begin), _place(axes, after) - end
+        within = max(behind, end - start + 0.1)
+        texts = [shortened(s.name, most) for most in NAME_LENGTHS]
+        widths = [text_width_in(printable_glyphs(t), SMALL_PT - 0.5) + 0.1 for t in texts]
+        k = next((k for k, wide in enumerate(widths) if wide < within), None)
+        j = next((j for j, wide in enumerate(widths) if wide < before), None)
+        if k is None and j is not None and ahead:
+            left = _moment(axes, start - widths[j])
+            free.append(Stretch(begin, left))
+            begin = _name(axes, s, (texts[j],), INK, Stretch(left, s.start_s))
+        else:
+            free.append(Stretch(begin, s.start_s))
+            begin = _name(axes, s, (texts[k or 0],), INK, Stretch(s.end_s, after))
+        if after == s.end_s < high:
+            axes.axvline(after, color=QUIET, linewidth=0.6, zorder=2.0)
+    return [*free, Stretch(begin, high)]
 
 
 def _dark(along: Course) -> tuple[list[Stretch], list[Stretch]]:
@@ -156,17 +206,24 @@ def _within(parts: Sequence[Stretch], along: Course) -> list[Stretch]:
     ]
 
 
-def _fill(axes: Axes, along: Course, parts: Sequence[Stretch], colour: str) -> None:
+def _fill(axes: Axes, along: Course, parts: Sequence[Stretch], colour: str, *,
+          height: float = 1.0) -> None:  # fmt: skip
     low, high = along.shown
     least = 0.0 if along.fixed else LEAST_SHARE * (high - low)
     bars = [(s.start_s, max(s.end_s - s.start_s, least)) for s in parts]
-    axes.broken_barh(bars, (0.0, 1.0), facecolor=colour, linewidth=0.0, zorder=1.0)
+    axes.broken_barh(bars, (0.0, height), facecolor=colour, linewidth=0.0, zorder=1.0)
 
 
 def _place(axes: Axes, seconds: float) -> float:
     """Distance of a time from the left end [in]."""
     to_axes = axes.transData + axes.transAxes.inverted()
     return float(to_axes.transform((seconds, 0.5))[0]) * size_in(axes)[0]
+
+
+def _moment(axes: Axes, place_in: float) -> float:
+    """Time at a distance from the left end [in]."""
+    to_data = axes.transAxes + axes.transData.inverted()
+    return float(to_data.transform((place_in / size_in(axes)[0], 0.5))[0])
 
 
 def _name(axes: Axes, s: Stretch, texts: Sequence[str], colour: str,
@@ -191,14 +248,13 @@ def _name(axes: Axes, s: Stretch, texts: Sequence[str], colour: str,
         return s.end_s
     low, high = _place(axes, free.start_s), _place(axes, free.end_s)
     wide = text_width_in(shown[0], size) + 0.1
-    if wide > high - low:
+    if wide > high - low + 1e-6:
         return s.end_s
     if free.end_s <= s.start_s:
         put(high - 0.05, shown[0], "right", INK)
         return s.end_s
     put(low + 0.05, shown[0], "left", INK)
-    to_data = axes.transAxes + axes.transData.inverted()
-    return float(to_data.transform(((low + wide) / width, 0.5))[0])
+    return _moment(axes, low + wide)
 
 
 def _key(axes: Axes, entries: Sequence[tuple[str, str]]) -> None:

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import json
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import numpy as np
 import xarray as xr
@@ -22,7 +23,7 @@ LONG_S = 10.0 * DAY_S
 """Longer runs are drawn as the lowest and highest value of each day."""
 LOG_START_S = 1.0
 EVENT_STRENGTH = 0.01
-"""Share of its greatest density below which the plasma of an event is not named."""
+"""Share of its greatest density below which a plasma other than the base is not named."""
 
 CLOCK_STEPS_S = (1, 2, 5, 10, 15, 30, 60, 120, 300, 600, 900, 1800, 3600, 7200, 10800, 21600,
                  43200, 86400, 172800, 432000, 864000, 1728000)  # fmt: skip
@@ -56,8 +57,13 @@ class Course:
         No orbit: the axis is the time since the start, logarithmic.
     shown : (float, float)
         Ends of the time axis [s].
-    umbra, penumbra, events : tuple of Stretch
+    umbra, penumbra : tuple of Stretch
+    events, switched : tuple of Stretch
+        Where another plasma than the base is present, by its name: in a plasma event, and by a
+        mode alone.
     base_plasma : str
+    modes, emission : tuple of Stretch
+        Interval modes, those that overlap joined by "+"; where emitters send electrons out.
     """
 
     seconds: Array
@@ -67,7 +73,10 @@ class Course:
     umbra: tuple[Stretch, ...]
     penumbra: tuple[Stretch, ...]
     events: tuple[Stretch, ...]
+    switched: tuple[Stretch, ...]
     base_plasma: str
+    modes: tuple[Stretch, ...]
+    emission: tuple[Stretch, ...]
 
     @property
     def long(self) -> bool:
@@ -115,14 +124,10 @@ def course(dataset: xr.Dataset) -> Course:
     if not start < end:
         fixed, end = False, start + 1.0  # too few times for a logarithmic axis
     names = [str(n).rpartition(":")[0] for n in dataset["population_name"].values]
-    density = np.asarray(dataset["population_density"].values, dtype=np.float64)
-    floor = EVENT_STRENGTH * density.max(axis=1, keepdims=True)
-    present = (density > floor) & (np.array(names) != names[0])[:, None]
-
-    def named(flags: Flags) -> str:
-        active = dict.fromkeys(n for n, p in zip(names, present, strict=True) if (p & flags).any())
-        return ", ".join(active) or "plasma event"
-
+    in_event = (region & masks["plasma_event"]) > 0
+    present = _present(dataset, names)
+    in_mode = (region & masks.get("mode_interval", 0)) > 0
+    emitted = np.asarray(dataset["emitter_current"].values, dtype=np.float64)
     return Course(
         seconds=seconds,
         epoch=time[0],
@@ -130,13 +135,50 @@ def course(dataset: xr.Dataset) -> Course:
         shown=(start, end),
         umbra=stretches(seconds, (region & masks["umbra"]) > 0),
         penumbra=stretches(seconds, (region & masks["penumbra"]) > 0),
-        events=stretches(seconds, (region & masks["plasma_event"]) > 0, named),
+        events=_named(seconds, present, in_event),
+        switched=_named(seconds, present, ~in_event),
         base_plasma=names[0],
+        modes=_modes(dataset, seconds, in_mode),
+        emission=stretches(seconds, emitted > 0.0, "emitter"),
     )
 
 
-def stretches(seconds: Array, flags: Flags,
-              name: Callable[[Flags], str] = lambda _: "") -> tuple[Stretch, ...]:  # fmt: skip
+def _present(dataset: xr.Dataset, names: list[str]) -> dict[str, Flags]:
+    """When each plasma other than the base [T] rules: the strongest one of those present."""
+    density = np.asarray(dataset["population_density"].values, dtype=np.float64)
+    others = [name for name in dict.fromkeys(names) if name != names[0]]
+    if not others:
+        return {}
+    whole = np.stack([density[[n == name for n in names]].sum(axis=0) for name in others])
+    greatest = whole.max(axis=1, keepdims=True)
+    strength = whole / np.where(greatest > 0.0, greatest, 1.0)
+    ruling = strength.argmax(axis=0)
+    seen = strength.max(axis=0) > EVENT_STRENGTH
+    return {name: seen & (ruling == k) for k, name in enumerate(others)}
+
+
+def _named(seconds: Array, present: dict[str, Flags], where: Flags) -> tuple[Stretch, ...]:
+    found = [s for name, flags in present.items() for s in stretches(seconds, flags & where, name)]
+    return tuple(sorted(found, key=lambda s: s.start_s))
+
+
+def _modes(dataset: xr.Dataset, seconds: Array, flags: Flags) -> tuple[Stretch, ...]:
+    """Interval modes from the attribute ``mode_spans``; unnamed without it."""
+    if not flags.any():
+        return ()
+    spans = json.loads(str(dataset.attrs.get("mode_spans", "[]")))
+    if not spans:
+        return stretches(seconds, flags, "mode")
+    edges = sorted({float(span[key]) for span in spans for key in ("start_s", "end_s")})
+    pieces = []
+    for start, end in pairwise(edges):
+        inside = [str(m["name"]) for m in spans if m["start_s"] <= start < m["end_s"]]
+        if inside:
+            pieces.append(Stretch(start, end, " + ".join(inside)))
+    return tuple(pieces)
+
+
+def stretches(seconds: Array, flags: Flags, name: str = "") -> tuple[Stretch, ...]:
     """Stretches of time where a flag is set; an edge lies half way between two outputs.
 
     Examples
@@ -149,12 +191,10 @@ def stretches(seconds: Array, flags: Flags,
         ([seconds[0]], (seconds[1:] + seconds[:-1]) / 2.0, [seconds[-1]]), dtype=np.float64
     )
     change = np.flatnonzero(np.diff(np.concatenate(([0], flags.astype(np.int8), [0]))))
-    found = []
-    for first, after in zip(change[::2].tolist(), change[1::2].tolist(), strict=True):
-        here = np.zeros_like(flags)
-        here[first:after] = True
-        found.append(Stretch(float(edges[first]), float(edges[after]), name(here)))
-    return tuple(found)
+    return tuple(
+        Stretch(float(edges[first]), float(edges[after]), name)
+        for first, after in zip(change[::2].tolist(), change[1::2].tolist(), strict=True)
+    )
 
 
 def utc(epoch: np.datetime64, seconds: float) -> str:

@@ -37,7 +37,7 @@ from charging.plot_page import (
     size_in,
     voltage_axis,
 )
-from charging.plot_surroundings import STRIPS_IN, shade, strips
+from charging.plot_surroundings import shade, strips, strips_in
 from charging.plot_time import Course, course, daily_extremes, time_axis
 
 Array = NDArray[np.float64]
@@ -111,9 +111,9 @@ def potentials_page(dataset: xr.Dataset) -> Page:
     page = _page(dataset, 5.4, f"Potentials against the plasma{_daily(along)}")
     _, own = _lines(dataset)
     bottom = 0.8
-    axes = page.panel(bottom, page.top_in - STRIPS_IN - bottom)
+    axes = page.panel(bottom, page.top_in - strips_in(along) - bottom)
     _draw(axes, along, [_structure_line(dataset), *own], ABSOLUTE_LINEAR_V, "potential")
-    strips(page, along, page.top_in - STRIPS_IN + 0.04)
+    strips(page, along, page.top_in - strips_in(along) + 0.04)
     return page
 
 
@@ -122,9 +122,9 @@ def differentials_page(dataset: xr.Dataset) -> Page:
     along = course(dataset)
     page = _page(dataset, 5.4, f"Surface minus structure{_daily(along)}")
     bottom = 0.8
-    axes = page.panel(bottom, page.top_in - STRIPS_IN - bottom)
+    axes = page.panel(bottom, page.top_in - strips_in(along) - bottom)
     _draw_differentials(axes, along, dataset)
-    strips(page, along, page.top_in - STRIPS_IN + 0.04)
+    strips(page, along, page.top_in - strips_in(along) + 0.04)
     return page
 
 
@@ -135,11 +135,11 @@ def detail_page(dataset: xr.Dataset) -> Page:
     what = "Detail: " + ("whole run" if zoom == along else "around the eclipse")
     page = _page(dataset, 7.2, what + _daily(zoom))
     bottom, low_in, gap = 0.8, 1.75, 0.25
-    high_in = page.top_in - STRIPS_IN - bottom - low_in - gap
+    high_in = page.top_in - strips_in(zoom) - bottom - low_in - gap
     _draw_differentials(page.panel(bottom + low_in + gap, high_in), zoom, dataset, timed=False)
     structure = page.panel(bottom, low_in)
     _draw(structure, zoom, [_structure_line(dataset)], ABSOLUTE_LINEAR_V, "structure")
-    strips(page, zoom, page.top_in - STRIPS_IN + 0.04)
+    strips(page, zoom, page.top_in - strips_in(zoom) + 0.04)
     return page
 
 

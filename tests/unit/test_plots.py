@@ -51,10 +51,15 @@ def result(
     differential=None,
     umbra=(),
     event=None,
+    modes=(),
+    emission=None,
     fixed=False,
     **attrs,
 ):
-    """Build a small result; differential(k, t) per film, umbra as (start, end) pairs [s]."""
+    """Build a small result; differential(k, t) per film, umbra as (start, end) pairs [s].
+
+    modes: (name, start, end) [s]; one named "storm" brings the plasma of the event.
+    """
     t = np.arange(0.0, 86401.0, 60.0) if seconds is None else np.asarray(seconds, dtype=float)
     base = np.full_like(t, 3.0) if structure is None else structure(t)
     own = [np.zeros_like(t) if differential is None else differential(k, t)
@@ -69,6 +74,13 @@ def result(
     if event is not None:
         active = (t >= event[0]) & (t <= event[1])
         region[active] |= REGION_MASKS["plasma_event"]
+    emitter = np.zeros(t.shape)
+    if emission is not None:
+        emitter[(t >= emission[0]) & (t < emission[1])] = 1e-4
+    for name, start, end in modes:
+        within = (t >= start) & (t < end)
+        region[within] |= REGION_MASKS["mode_interval"]
+        active |= within & (name == "storm")
     current = np.zeros((len(ALL_MECHANISMS), len(away), len(t)))
     current[ALL_MECHANISMS.index("electron_collection")] = -2e-6
     current[ALL_MECHANISMS.index("photoemission")] = 5e-6
@@ -79,6 +91,7 @@ def result(
             "differential_potential": (("surface", "time"), away),
             "current_density": (("mechanism", "surface", "time"), current),
             "region": ("time", region),
+            "emitter_current": ("time", emitter),
             "position": (("axis", "time"), np.full((3, len(t)), 0.0 if fixed else 4.2e7)),
             "population_density": (
                 ("population", "time"), np.array([1e6 * (1.0 - active), 1.5e6 * active]),
@@ -93,7 +106,9 @@ def result(
             "population_name": ("population", ["calm: electron 1", "storm, strong: electron 1"]),
         },
         attrs={"title": "A day of Sample-1", "mode": "base", "halflit_version": "0.1.0",
-               "secondary_law": "sanders_inouye_1979", "limits": json.dumps(LIMITS)} | attrs,
+               "secondary_law": "sanders_inouye_1979", "limits": json.dumps(LIMITS),
+               "mode_spans": json.dumps(
+                   [{"name": n, "start_s": a, "end_s": b} for n, a, b in modes])} | attrs,
     )  # fmt: skip
     dataset["region"].attrs = {
         "flag_masks": np.array(list(REGION_MASKS.values()), dtype=np.int8),
@@ -151,6 +166,11 @@ SCENES = {
         LONG_RUN, event=(42300.0, 72300.0), differential=lambda k, t: storm(k, t) + k,
         umbra=[(86400.0 * k + 40920.0, 86400.0 * k + 44880.0) for k in range(22)],
     ),
+    "modes": lambda: day(modes=[("storm", 21600.0, 25200.0), ("safe", 14400.0, 18000.0)],
+                         emission=(7200.0, 10800.0)),
+    "modes, fixed": lambda: result(np.arange(0.0, 7201.0, 1.0), fixed=True,
+                                   modes=[("storm", 60.0, 600.0)]),
+    "modes in a year": lambda: result(LONG_RUN, modes=[("storm", 8.64e5, 9e5)]),
     "odd title": lambda: day(title="100 $ of 衛星 \\alpha $x_$ " + "very long title " * 30),
     "no attributes": lambda: day().drop_attrs(deep=False),
 }  # fmt: skip
@@ -339,6 +359,35 @@ def test_eclipse_and_event_are_found_named_and_shaded():
     assert has(quiet, "sunlit")
     assert not has(quiet, "umbra")
     assert not has(quiet, "event")
+
+
+def test_plasma_of_a_mode_modes_and_emission_are_shown():
+    hour = 3600.0
+    dataset = day(
+        modes=[("storm", 6.0 * hour, 7.0 * hour), ("safe", 4.0 * hour, 5.0 * hour)],
+        emission=(2.0 * hour, 3.0 * hour),
+    )
+    along = course(dataset)
+    changed = [(s.start_s, s.end_s, s.name) for s in along.switched]
+    assert changed == [(6.0 * hour - 30.0, 7.0 * hour - 30.0, "storm, strong")]
+    assert [s.start_s for s in along.events] == [42270.0]
+    page = potentials_page(dataset)
+    by_name = {t.get_text(): a for a in page.figure.axes for t in a.texts}
+    assert by_name["modes"] is by_name["storm"] is by_name["safe"] is by_name["emitter"]
+    drawn = [c.get_paths()[0].get_extents() for c in by_name["modes"].collections]
+    assert (7170.0, 10770.0) in [(box.x0, box.x1) for box in drawn]
+    assert (14400.0, 18000.0) in [(box.x0, box.x1) for box in drawn]
+    plasma = [c.get_paths()[0].get_extents() for c in by_name["plasma"].collections]
+    assert (21570.0, 25170.0) in [(box.x0, box.x1) for box in plasma]
+    assert not has(potentials_page(day()), "modes")
+    assert len(potentials_page(day()).figure.axes) == len(page.figure.axes) - 1
+
+
+def test_modes_that_overlap_are_named_together():
+    dataset = day(modes=[("safe", 0.0, 7200.0), ("storm", 3600.0, 7200.0)])
+    assert [s.name for s in course(dataset).modes] == ["safe", "safe + storm"]
+    del dataset.attrs["mode_spans"]
+    assert [s.name for s in course(dataset).modes] == ["mode"]
 
 
 @pytest.mark.parametrize(("step", "start"), [(0.5, 1.0), (1.0, 1.0), (60.0, 60.0)])
