@@ -7,6 +7,7 @@ from typing import ClassVar
 import numpy as np
 from scipy.constants import e
 
+from environments.energy_panels import E_FOLDS
 from environments.errors import EnvironmentDataError
 from environments.isotropic import (
     DENSITY_RANGE_M3,
@@ -109,6 +110,19 @@ class Fontheim:
         return (self.low_cutoff_eV, *inside, self.high_cutoff_eV)
 
     @property
+    def edges_eV(self) -> tuple[float, ...]:
+        """Where W or the flank of a beam is short against the energy at a cut-off."""
+        low, high = self.low_cutoff_eV, self.high_cutoff_eV
+        beam, width = self.gaussian_energy_eV, self.gaussian_width_eV
+        edges = [low + n * self.maxwellian_energy_eV for n in E_FOLDS]
+        # outside the cut-offs only a flank remains, of slope 2 (E - E_g)/D^2
+        if beam < low:
+            edges += [low + n * width**2 / (2.0 * (low - beam)) for n in E_FOLDS]
+        if beam > high:
+            edges += [high - n * width**2 / (2.0 * (beam - high)) for n in E_FOLDS]
+        return tuple(x for x in edges if low < x < high)
+
+    @property
     def cutoff_eV(self) -> float:
         """The upper cut-off."""
         return self.high_cutoff_eV
@@ -176,6 +190,11 @@ class FlatAndMaxwellian:
     def marks_eV(self) -> tuple[float, ...]:
         """E0, where the branches meet."""
         return (self.flat_up_to_eV,)
+
+    @property
+    def edges_eV(self) -> tuple[float, ...]:
+        """E0 and some T0, however small T0 is against E0."""
+        return tuple(self.flat_up_to_eV + n * self.maxwellian_temperature_eV for n in E_FOLDS)
 
     @property
     def cutoff_eV(self) -> float:

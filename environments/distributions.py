@@ -15,6 +15,7 @@ from scipy.constants import e
 from scipy.special import gammaln
 
 from environments.auroral import FlatAndMaxwellian, Fontheim
+from environments.energy_panels import E_FOLDS
 from environments.errors import EnvironmentDataError
 from environments.isotropic import (
     DENSITY_RANGE_M3,
@@ -55,6 +56,11 @@ class Maxwellian:
     @property
     def marks_eV(self) -> tuple[float, ...]:
         """None: the law is smooth."""
+        return ()
+
+    @property
+    def edges_eV(self) -> tuple[float, ...]:
+        """None: T is the scale everywhere."""
         return ()
 
     @property
@@ -116,6 +122,11 @@ class Kappa:
         return ()
 
     @property
+    def edges_eV(self) -> tuple[float, ...]:
+        """None: T is the scale everywhere."""
+        return ()
+
+    @property
     def cutoff_eV(self) -> float:
         """No end."""
         return np.inf
@@ -166,15 +177,19 @@ class Tabulated:
             raise EnvironmentDataError(
                 "is no spectrum", key=("energy_eV",), value=len(energy), allowed="3 to 2000 values"
             )
-        if not (np.isfinite(energy).all() and energy[0] > 0.0 and (np.diff(energy) > 0.0).all()):
+        for key, values in (("energy_eV", energy), ("flux_m2_s_sr_eV", flux)):
+            low, high = self.arrays[key]
+            out = values[~((values >= low) & (values <= high))]  # nan is out of range too
+            if out.size:
+                raise EnvironmentDataError(
+                    "is out of range",
+                    key=(key,),
+                    value=float(out[0]),
+                    allowed=f"numbers from {low:g} to {high:g}; leave empty channels out",
+                )
+        if not (np.diff(energy) > 0.0).all():
             raise EnvironmentDataError(
                 "does not rise", key=("energy_eV",), allowed="rising energies above 0"
-            )
-        if not (np.isfinite(flux).all() and (flux > 0.0).all()):
-            raise EnvironmentDataError(
-                "is not positive everywhere",
-                key=("flux_m2_s_sr_eV",),
-                allowed="values > 0; leave empty channels out",
             )
 
     def flux(self, energy_eV: Array, mass_kg: float) -> Array:
@@ -189,6 +204,17 @@ class Tabulated:
     def marks_eV(self) -> tuple[float, ...]:
         """The channels."""
         return self.energy_eV
+
+    @property
+    def edges_eV(self) -> tuple[float, ...]:
+        """Within segments over which the flux changes by more than a few e-folds."""
+        x, y = np.log(self.energy_eV), np.log(self.flux_m2_s_sr_eV)
+        slope = np.diff(y) / np.maximum(np.diff(x), 1e-300)
+        # counted from the end of a segment that holds the particles
+        start = np.where(slope < 0.0, x[:-1], x[1:])
+        found = start[:, None] - np.array(E_FOLDS) / np.where(slope, slope, 1e-300)[:, None]
+        inside = (found > x[:-1, None]) & (found < x[1:, None])
+        return tuple(float(edge) for edge in np.exp(found[inside]))
 
     @property
     def cutoff_eV(self) -> float:

@@ -10,6 +10,8 @@ Array = NDArray[np.float64]
 
 RATIO = 1.8  # of neighbouring panel edges; ten nodes then integrate powers of E to 1e-13
 NODES = 10
+# e-folds behind a steep edge at which panels end; ten nodes then integrate the decay to 1e-14
+E_FOLDS = (2.0, 3.6, 6.5, 11.7, 21.0, 37.8)
 
 
 def energy_nodes(
@@ -24,7 +26,8 @@ def energy_nodes(
     top_eV : float
         End of the integrals [eV].
     marks_eV : sequence of float
-        Energies E at which the integrand has a kink; panels end at x = E - shift.
+        Energies E at which the integrand has a kink, and those at which panels must end
+        because it falls steeply behind one; panels end at x = E - shift.
     shift_eV : ndarray [K]
 
     Returns

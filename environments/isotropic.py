@@ -27,6 +27,8 @@ ENERGY_RANGE_EV: Final = (1e-3, 1e7)
 FLUX_RANGE: Final = (0.0, 1e30)
 REACH_EV: Final = 4e5
 """Retarding potentials up to this leave the integrals over a spectrum accurate."""
+EMPTY_M3: Final = 1e-40
+"""Density below which a spectrum holds nothing; the least of tables in range has more."""
 
 
 class Distribution(Protocol):
@@ -47,6 +49,14 @@ class Distribution(Protocol):
     @property
     def marks_eV(self) -> tuple[float, ...]:
         """Energies with kinks, and those that a narrow beam needs as panel edges [eV]."""
+        ...
+
+    @property
+    def edges_eV(self) -> tuple[float, ...]:
+        """Energies besides the marks at which panels of integrals must end [eV].
+
+        Needed where the spectrum changes over less than the energy above a mark.
+        """
         ...
 
     @property
@@ -84,12 +94,22 @@ def lowest_panel_eV(distribution: Distribution) -> float:
     return 1e-6 * min(distribution.scale_eV, 10.0)
 
 
+def panel_marks_eV(distribution: Distribution) -> tuple[float, ...]:
+    """Energies at which panels of integrals over a spectrum must end [eV]."""
+    return (*distribution.marks_eV, *distribution.edges_eV)
+
+
 def distribution_moments(distribution: Distribution, mass_kg: float) -> Moments:
     r"""Integrate the moments of a distribution.
 
     Number density :math:`4\pi\int j/v\,dE`, one-sided number flux :math:`\pi\int j\,dE`;
     the energy that takes the place of T in the Debye length is :math:`1/\langle
     1/(2E)\rangle`, the linear response of an isotropic f (T for a Maxwellian).
+
+    Raises
+    ------
+    EnvironmentDataError
+        The spectrum holds no particles.
 
     Examples
     --------
@@ -101,12 +121,15 @@ def distribution_moments(distribution: Distribution, mass_kg: float) -> Moments:
     """
     # the root singularity of <1/E> at E = 0 needs a lowest panel that holds 1e-12 of it
     lowest = 1e-18 * lowest_panel_eV(distribution)
-    energy, weight = energy_nodes(lowest, distribution.top_eV, distribution.marks_eV, np.zeros(1))
+    marks = panel_marks_eV(distribution)
+    energy, weight = energy_nodes(lowest, distribution.top_eV, marks, np.zeros(1))
     E, dE = energy[0], weight[0]
     flux = distribution.flux(E, mass_kg) * dE
     speed = np.sqrt(2.0 * e * E / mass_kg)
     number = 4.0 * np.pi * flux / speed
     density = float(number.sum())
+    if density < EMPTY_M3:
+        raise EnvironmentDataError("holds no particles", key=("law",), value=distribution.law)
     found = Moments(
         density,
         float(np.pi * flux.sum()),

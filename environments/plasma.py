@@ -374,7 +374,7 @@ def electron_to_ion_current_ratio(plasma: Plasma) -> float:
     Raises
     ------
     EnvironmentDataError
-        The plasma holds no ions.
+        The plasma holds no electrons or no positive ions.
 
     Examples
     --------
@@ -382,9 +382,11 @@ def electron_to_ion_current_ratio(plasma: Plasma) -> float:
     >>> round(electron_to_ion_current_ratio(Plasma("a", "a", "x", "assumed", None, "", both)), 2)
     42.85
     """
-    currents = [population_current(p) for p in plasma.populations]
-    ion = sum(j for j in currents if j > 0.0)
-    electron = -sum(j for j in currents if j < 0.0)
+    currents = [(p.species, population_current(p)) for p in plasma.populations]
+    ion = sum(j for _, j in currents if j > 0.0)
+    electron = -sum(j for species, j in currents if species == ELECTRON)
     if ion <= 0.0:
         raise EnvironmentDataError("holds no positive ions", key=("population",))
+    if electron <= 0.0:
+        raise EnvironmentDataError("holds no electrons", key=("population",))
     return electron / ion

@@ -23,7 +23,8 @@ from charging.errors import NoSolutionError
 Array = NDArray[np.float64]
 
 SEARCH_V = 2e5
-SCAN_POINTS = 12_001
+SCAN_POINTS = 24_001
+AROUND_A_KINK = (0.0, 1e-5, 1e-4, 4e-4)  # of its potential: further points of the scan
 TOUCHING = 1e-9  # of the current at the ends of the interval: a double root
 
 
@@ -73,10 +74,10 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
 
     Notes
     -----
-    The scan carries the analytic slope. Two roots inside one interval (0.2 % of the
-    potential) have an extremum between them: the slope turns towards zero current at one
-    end and away at the other. Where the tangents of both ends leave room for a crossing,
-    the extremum is located as the root of the slope.
+    The scan has further points at the kinks of spectra and carries the analytic slope. Two
+    roots inside one interval (0.1 % of the potential) have an extremum between them: the
+    slope turns towards zero current at one end and away at the other. Where the tangent of
+    either end leaves room for a crossing, the extremum is located as the root of the slope.
     """
 
     def current(v: float) -> float:
@@ -85,7 +86,7 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
     def slope(v: float) -> float:
         return float(net_current(model, np.array([v]), light)[1][0])
 
-    grid = np.sinh(np.linspace(-1.0, 1.0, SCAN_POINTS) * np.arcsinh(SEARCH_V))
+    grid = _scan(model)
     values, slopes = net_current(model, grid, light)
     # a zero between zeros is an exponential that underflowed, not a balance
     hit = (values[1:-1] == 0.0) & (values[:-2] != 0.0) & (values[2:] != 0.0)
@@ -97,13 +98,25 @@ def floating_potentials(model: SurfaceModel, light: float) -> FloatingPotentials
     if not found:
         raise NoSolutionError(
             f"no floating potential within ±{SEARCH_V / 1e3:.0f} kV: the net current keeps the "
-            f"sign of {values[SCAN_POINTS // 2]:+.3g} A m-2"
+            f"sign of {current(0.0):+.3g} A m-2"
         )
     roots = []
     for v in sorted(found):
         step = 1e-6 * max(1.0, abs(v))
         roots.append(Root(v, current(v - step) > 0.0 > current(v + step)))
     return FloatingPotentials(tuple(roots), _reached(roots, current(0.0)))
+
+
+def _scan(model: SurfaceModel) -> Array:
+    """Potentials uniform in asinh, denser where a spectrum begins or ends to be repelled."""
+    uniform = np.sinh(np.linspace(-1.0, 1.0, SCAN_POINTS) * np.arcsinh(SEARCH_V))
+    kinks = np.array(
+        [-b for s in model.electron_spectra for b in s.breaks_V]
+        + [b for s in model.ion_spectra for b in s.breaks_V]
+    )
+    near = np.array([sign * d for d in AROUND_A_KINK for sign in (-1.0, 1.0)])
+    further = (kinks[:, None] * (1.0 + near)).ravel()
+    return np.unique(np.concatenate([uniform, further[np.abs(further) < SEARCH_V]]))
 
 
 def _dips(grid: Array, values: Array, slopes: Array) -> Iterable[int]:
@@ -113,12 +126,9 @@ def _dips(grid: Array, values: Array, slopes: Array) -> Iterable[int]:
     low, high = sign * values[:-1], sign * values[1:]
     turns = (sign * values[1:] > 0.0) & (falls < 0.0) & (rises > 0.0)
     width = np.diff(grid)
-    # where the tangents meet: the lowest a convex curve can reach
-    with np.errstate(divide="ignore", invalid="ignore"):
-        meet = (low - high + rises * width) / (rises - falls)
-    bottom = low + falls * np.clip(meet, 0.0, width)
-    # a curve that is not convex may go lower still: twice the drop is allowed for
-    deep = bottom - np.minimum(low, high) < -0.5 * np.minimum(low, high)
+    # a curve with a kink, where a spectrum ends, may fall far below where the tangents meet:
+    # it is enough that one of them alone gets halfway to zero inside the interval
+    deep = (-falls * width > 0.5 * low) | (rises * width > 0.5 * high)
     return (int(k) for k in np.flatnonzero(turns & deep))
 
 
@@ -133,6 +143,8 @@ def _close_pair(
     high: float,
 ) -> list[float]:
     """Roots around the extremum between `low` and `high`, where the slope changes sign."""
+    if slope(low) * slope(high) >= 0.0:  # one of them is rounding
+        return []
     best = float(brentq(slope, low, high, xtol=1e-12, rtol=1e-14))
     bottom, at_low, at_high = current(best), current(low), current(high)
     if bottom == 0.0:

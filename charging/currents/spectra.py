@@ -21,7 +21,12 @@ from charging.currents.collection import PLANE, Geometry
 from charging.currents.splines import graded_knots, polynomial_and_slope, segmented_spline
 from charging.currents.tables import REACH_V, SPACING, Yield, knots
 from environments.energy_panels import energy_nodes
-from environments.isotropic import Distribution, distribution_moments, lowest_panel_eV
+from environments.isotropic import (
+    Distribution,
+    distribution_moments,
+    lowest_panel_eV,
+    panel_marks_eV,
+)
 from environments.plasma import Population, population_current
 
 Array = NDArray[np.float64]
@@ -46,7 +51,7 @@ def repelled_averages(
         Particles that arrive and what they release, per particle that arrives at 0 V.
     """
     energy, weight = energy_nodes(
-        lowest_panel_eV(distribution), distribution.top_eV, distribution.marks_eV, lost_eV
+        lowest_panel_eV(distribution), distribution.top_eV, panel_marks_eV(distribution), lost_eV
     )
     # impact energy x: j(x + lost) (1 - lost/(x + lost)) dx
     whole = energy + lost_eV[:, None]
@@ -68,7 +73,10 @@ def attracted_averages(
     As `repelled_averages`; `gained_eV` >= 0 is the energy that a particle gains.
     """
     energy, weight = energy_nodes(
-        lowest_panel_eV(distribution), distribution.top_eV, distribution.marks_eV, np.zeros(1)
+        lowest_panel_eV(distribution),
+        distribution.top_eV,
+        panel_marks_eV(distribution),
+        np.zeros(1),
     )
     flux = distribution_moments(distribution, mass_kg).number_flux_m2_s
     far = np.pi * distribution.flux(energy, mass_kg) * weight / flux

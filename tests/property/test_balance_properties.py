@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from itertools import pairwise
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
@@ -172,7 +173,8 @@ def solve(monkeypatch: pytest.MonkeyPatch, current: Callable[[Array], Array]) ->
         return current(potential), (current(potential + h) - current(potential - h)) / (2.0 * h)
 
     monkeypatch.setattr(balance, "net_current", net)
-    return floating_potentials(None, 0.0)  # type: ignore[arg-type]
+    model = SimpleNamespace(electron_spectra=(), ion_spectra=())
+    return floating_potentials(model, 0.0)  # type: ignore[arg-type]
 
 
 @pytest.mark.parametrize("touch", [-12345.678, -150.03, -0.7, 3.3, 77.7, 1234.5])

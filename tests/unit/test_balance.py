@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
+from charging.currents import balance
 from charging.currents.balance import floating_potentials, net_current
 from charging.currents.folds import fold_points, with_density
 from charging.currents.surface import SurfaceModel, surface_model
@@ -20,6 +21,7 @@ from environments.plasma import (
     OXYGEN_ION,
     Plasma,
     Population,
+    Species,
     population_of,
 )
 from environments.spectrum import solar_spectrum
@@ -92,6 +94,33 @@ def test_double_roots_built_by_adding_a_constant_current():
             assert max(abs(r.potential_V - at) for r in near) < 2e-3 * abs(at)
 
 
+@pytest.mark.parametrize("points", [12_001, 24_001])
+@pytest.mark.parametrize("refined", [True, False])
+def test_pair_of_roots_behind_the_end_of_a_plateau(monkeypatch, points, refined):
+    """Roots 26 V apart at -27.5 kV: the current is flat up to a kink, dips, and rises again."""
+    around = plasma(
+        population_of(ELECTRON, FlatAndMaxwellian(
+            4.2767610561439504e-20, 27476.774153545146, 37921310.9067521, 0.18723639195144887)),
+        population_of(ELECTRON, Fontheim(
+            151767206171.4093, 2.486108463759705, 2345520.6618107036, 1563.3094712481413,
+            1427671332.3007057, 15.47426080792752, 0.2184705597913562,
+            5.671134682142192, 130.78210173771473)),
+        maxwellian(OXYGEN_ION, 1885078.9134427314, 27991.375753566987),
+    )  # fmt: skip
+    model = model_of("anodised aluminium", around, collection="plane", radius_m=0.1617416355)
+    light = 0.010641045496759977
+    volts = np.linspace(-27600.0, -27400.0, 20_001)
+    value = net_current(model, volts, light)[0]
+    changes = np.flatnonzero(value[:-1] * value[1:] < 0.0)
+    assert len(changes) == 2
+    monkeypatch.setattr(balance, "SCAN_POINTS", points)
+    if not refined:  # neither may the slopes alone miss them
+        monkeypatch.setattr(balance, "AROUND_A_KINK", ())
+    found = [r.potential_V for r in floating_potentials(model, light).roots]
+    for k in changes:
+        assert any(volts[k] <= v <= volts[k + 1] for v in found), volts[k]
+
+
 def test_folds_in_density_bracket_the_triple_region():
     around = triple_root_plasma(hot_m3=1e6)
     model = model_of("polyimide film", around)
@@ -133,6 +162,15 @@ def test_a_plasma_of_one_sign_is_refused(species):
     alone = plasma(maxwellian(species, 1e6, 100.0))
     with pytest.raises(InputError, match="holds no"):
         model_of("gold", alone)
+
+
+def test_negative_ions_are_refused():
+    oxygen = Species("O-", OXYGEN_ION.mass_kg, -1)
+    negative, ions = maxwellian(oxygen, 1e6, 100.0), maxwellian(HYDROGEN_ION, 1e6, 100.0)
+    with pytest.raises(InputError, match="negative ions are not modelled"):
+        model_of("gold", plasma(maxwellian(ELECTRON, 1e6, 100.0), negative, ions))
+    with pytest.raises(InputError, match=r"no electrons and .*negative ions"):
+        model_of("gold", plasma(negative, ions))
 
 
 # --- random triples against a fine scan ---------------------------------------------------

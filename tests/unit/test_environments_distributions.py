@@ -11,8 +11,9 @@ from scipy.constants import e, epsilon_0, m_e, m_p
 from environments.auroral import FlatAndMaxwellian, Fontheim
 from environments.catalogue import load_plasma, read_plasma
 from environments.distributions import DISTRIBUTIONS, Kappa, Maxwellian, Tabulated
+from environments.energy_panels import energy_nodes
 from environments.errors import EnvironmentDataError
-from environments.isotropic import distribution_moments
+from environments.isotropic import distribution_moments, panel_marks_eV
 from environments.plasma import (
     ELECTRON,
     HYDROGEN_ION,
@@ -132,6 +133,67 @@ def test_beam_a_thousandth_of_its_energy_wide():
     assert distribution_moments(narrow, m_e).number_flux_m2_s == pytest.approx(exact, rel=1e-11)
 
 
+def test_flanks_at_a_cutoff_against_mpmath():
+    """Only the flank of a beam, or of a Maxwellian, lies between the cut-offs."""
+    mp.dps = 25
+    beams = ((1e4, 9e3, 200.0, 5e4), (100.0, 60.0, 12.0, 4e4))
+    for low, centre, width, high in beams:
+        found = distribution_moments(
+            Fontheim(0.0, 1.0, 0.0, 1.0, 1e20, centre, width, low, high), m_e
+        )
+        far = mp.erfc((mp.mpf(low) - centre) / width)
+        exact = mp.pi * mp.mpf("1e20") * width * mp.sqrt(mp.pi) / 2 * far
+        assert found.number_flux_m2_s == pytest.approx(float(exact), rel=1e-10)
+    top = distribution_moments(Fontheim(0.0, 1.0, 0.0, 1.0, 1e20, 9e3, 200.0, 10.0, 8e3), m_e)
+    exact = mp.pi * mp.mpf("1e20") * 200 * mp.sqrt(mp.pi) / 2 * mp.erfc(5)
+    assert top.number_flux_m2_s == pytest.approx(float(exact), rel=1e-10)
+    cold = distribution_moments(Fontheim(0.0, 1.0, 1e20, 2.0, 0.0, 1e3, 1e2, 50.0, 1e4), m_e)
+    # int x e^-x W dx from x0 = 25
+    assert cold.number_flux_m2_s == pytest.approx(np.pi * 1e20 * 2.0 * 26.0 * np.exp(-25.0))
+
+
+def test_no_particles_between_the_cutoffs():
+    beyond = Fontheim(0.0, 1.1, 0.0, 3e3, 3.5e9, 1e6, 3e3, 50.0, 4e4)
+    with pytest.raises(EnvironmentDataError, match="holds no particles") as caught:
+        distribution_moments(beyond, m_e)
+    assert caught.value.key == ("law",)
+
+
+def test_steep_segment_of_a_table():
+    # j = (E/100)^-p between 100 and 110 eV, p = ln(1e50)/ln(1.1)
+    table = Tabulated((50.0, 100.0, 110.0), (1e25, 1e25, 1e-25))
+    p = 50.0 * np.log(10.0) / np.log(1.1)
+    exact = np.pi * 1e25 * (25.0 + 50.0 + 100.0 / (p - 1.0))
+    assert distribution_moments(table, m_e).number_flux_m2_s == pytest.approx(exact, rel=1e-12)
+
+
+# (E0, T0, density): T0 down to 1e-5 of E0, the tail large or small against the plateau
+@pytest.mark.parametrize(
+    ("E0", "T", "density"),
+    [(16008.0, 0.17, 1e6), (16008.0, 0.17, 1e10), (5000.0, 100.0, 1.13e6), (5e3, 100.0, 1e3),
+     (17440.0, 3960.0, 1.13e6), (30.0, 4e3, 1e6)],
+)  # fmt: skip
+def test_flat_and_maxwellian_repelled_in_closed_form(E0, T, density):
+    r"""Share beyond l: f0 (E0 - l)^2/2 + N T (E0 - l + T), above E0 N T^2 e^{-(l - E0)/T}."""
+    f0 = 3.9e-18
+    N = density * (m_e / (2.0 * np.pi * e * T)) ** 1.5
+    law = FlatAndMaxwellian(f0, E0, density, T)
+
+    def beyond(lost):
+        left = np.maximum(E0 - lost, 0.0)
+        tail = N * T * (left + T) * np.exp(-np.maximum(lost - E0, 0.0) / T)
+        return f0 * left**2 / 2.0 + tail
+
+    near = E0 - np.geomspace(1e-3, 1.0, 20) * E0
+    lost = np.concatenate([[0.0], near, E0 + T * np.linspace(0.0, 20.0, 9)])
+    flux = 2.0 * np.pi * e**2 / m_e**2 * beyond(np.zeros(1))[0]
+    assert distribution_moments(law, m_e).number_flux_m2_s == pytest.approx(flux, rel=1e-12)
+    energy, weight = energy_nodes(1e-7, law.top_eV, panel_marks_eV(law), lost)
+    arriving = law.flux(energy + lost[:, None], m_e) * energy / (energy + lost[:, None])
+    found = np.pi * (arriving * weight).sum(axis=-1) / flux
+    assert found == pytest.approx(beyond(lost) / beyond(np.zeros(1)), rel=1e-10)
+
+
 def test_tabulated_maxwellian_comes_near_the_maxwellian():
     exact = Maxwellian(1e6, 500.0)
     energy = np.geomspace(5.0, 15e3, 60)
@@ -167,6 +229,9 @@ def test_extrapolated_share_warns_above_a_tenth():
         lambda: Tabulated((1.0, 2.0, 3.0), (1.0, 1.0)),
         lambda: Fontheim(1e9, 1.0, 0.0, 1.0, 0.0, 1e3, 1e2, 100.0, 50.0),
         lambda: Fontheim(0.0, 1.0, 0.0, 1.0, 0.0, 1e3, 1e2, 10.0, 50.0),
+        lambda: Tabulated((1e-300, 1.0, 1e300), (1.0, 1.0, 1.0)),
+        lambda: Tabulated((1.0, 2.0, 3.0), (1.0, 1e31, 1.0)),
+        lambda: Tabulated((1.0, 2.0, 3.0), (1.0, 1e-31, 1.0)),
     ],
 )
 def test_refused(make):
@@ -258,6 +323,9 @@ def test_spectrum_files(tmp_path: Path, ending: str):
         "energy,flux\n1,2\n",
         "energy_eV,flux_m2_s_sr_eV\n1,x\n",
         "energy_eV,flux_m2_s_sr_eV\n1,nan\n2,1\n3,1\n",
+        "energy_eV,flux_m2_s_sr_eV\n1e-300,1\n2,1\n1e300,1\n",
+        "energy_eV,flux_m2_s_sr_eV\n1,1e-31\n2,1\n3,1\n",
+        "energy_eV,flux_m2_s_sr_eV\n1,1\n2,1e31\n3,1\n",
     ],
 )
 def test_bad_csv(tmp_path: Path, text: str):

@@ -81,6 +81,17 @@ def test_ratio_needs_ions():
         electron_to_ion_current_ratio(plasma_of(electrons))
 
 
+def test_negative_ions_are_no_electrons_in_the_ratio():
+    electrons = Population(ELECTRON, "maxwellian", 1e6, 1e3)
+    ions = Population(OXYGEN_ION, "maxwellian", 1e6, 1e3)
+    negative = Population(Species("O-", OXYGEN_ION.mass_kg, -1), "maxwellian", 1e6, 1e3)
+    ratio = electron_to_ion_current_ratio(plasma_of(electrons, negative, ions))
+    # equal densities and temperatures: the root of the ratio of masses
+    assert ratio == pytest.approx(np.sqrt(OXYGEN_ION.mass_kg / ELECTRON.mass_kg))
+    with pytest.raises(EnvironmentDataError, match="no electrons"):
+        electron_to_ion_current_ratio(plasma_of(negative, ions))
+
+
 def test_names_tell_populations_apart():
     electrons = Population(ELECTRON, "maxwellian", 1e6, 1e3)
     ions = Population(OXYGEN_ION, "maxwellian", 1e6, 1e3)
