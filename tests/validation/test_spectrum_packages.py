@@ -2,7 +2,7 @@
 
 sbpy holds the whole ASTM E490 table, pyeuvac the EUV model of Richards et al. (1994) with
 its own code; none is used by the product. Our numbers of both were read from these very
-copies, so the tests find slips of transcription, units, activity scaling and binning, not
+copies, so the tests find slips of copying, units, activity scaling and binning, not
 errors of the copies; those are checked against other publications in
 test_environments_published. xraydb has photoabsorption by Elam et al. (2002) and Chantler
 (2000), compilations other than ours.
