@@ -18,6 +18,7 @@ from charging import __version__
 from charging.audit import charge_audit
 from charging.case import LoadedCase
 from charging.case_mode_checks import span_s
+from charging.cautions import cautions
 from charging.currents.surface import MECHANISMS, electron_sheath
 from charging.errors import InputError
 from charging.flight import moments
@@ -26,13 +27,10 @@ from charging.review.limits import requirements
 from charging.spacecraft import surface_materials
 from charging.summary import peak_times_s
 from charging.surroundings import event_strength, named_times
-from environments.orbit import EARTH_RADIUS_M
 
 Array = NDArray[np.float64]
 
 ALL_MECHANISMS = (*MECHANISMS, "conduction", "bias_or_emitter")
-PLASMA_SHEET_FROM_KM = 25000.0
-KILOVOLT, STRONGLY_POSITIVE_V = 1000.0, 100.0
 REGION_MASKS = {"penumbra": 1, "umbra": 2, "plasma_event": 4, "mode_interval": 8}
 
 
@@ -266,7 +264,7 @@ def attributes(
                 for r in requirements(loaded.case)
             ]
         ),
-        "warnings": "\n".join(warnings_of(loaded, mode)) or "none",
+        "warnings": "\n".join(cautions(loaded, mode)) or "none",
     }
 
 
@@ -319,48 +317,6 @@ def population_labels(mode: ModeRun) -> list[str]:
                     number += 1
                     labels.append(f"{plasma.name}: {p.species.name} {number}")
     return labels
-
-
-def warnings_of(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
-    """What a reader of the result must know about this run."""
-    reason = loaded.case.plasma.accept_assumed
-    accepted = "" if reason is None else f" (accepted: {reason})"
-    found = [
-        f'plasma "{plasma.name}" rests on assumed figures{accepted}'
-        for plasma in dict.fromkeys(mode.plasmas)
-        if plasma.basis == "assumed"
-    ]
-    if loaded.case.orbit.kind == "tle":
-        found.append(
-            "orbit from two-line elements: good to about 1 km at their epoch, and 1 to 3 km a day "
-            "worse from there in low orbit"
-        )
-    if mode.way.trajectory is not None:
-        perigee = mode.way.lowest_m() / 1e3
-        if perigee < PLASMA_SHEET_FROM_KM:
-            found.append(
-                f'plasma "{mode.plasmas[0].name}" is used along the whole orbit, down to '
-                f"{perigee - EARTH_RADIUS_M / 1e3:.0f} km altitude"
-            )
-    lowest = min(float(mode.net.potentials(path.y_end).min()) for path in mode.trajectories)
-    highest = max(float(mode.net.potentials(path.y_end).max()) for path in mode.trajectories)
-    assumed = [
-        material.name
-        for material in dict.fromkeys(loaded.materials.values())
-        if "ion_yield_peak" in material.values
-        and material.values["ion_yield_peak"].basis == "assumed"
-    ]
-    if lowest < -KILOVOLT and assumed:
-        found.append(
-            "electrons released by ions carry much of the balance at kilovolts, and their "
-            f"yield is assumed for {', '.join(assumed)}"
-        )
-    if highest > STRONGLY_POSITIVE_V and lowest < -STRONGLY_POSITIVE_V:
-        found.append(
-            f"a surface stands {highest:.0f} V above the plasma beside negative ones: their "
-            "electrons, whose exchange is not modelled, would pull it down"
-        )
-    return tuple(found)
 
 
 def _region(mode: ModeRun, times: Array, light: Array) -> NDArray[np.int8]:

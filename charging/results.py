@@ -14,8 +14,9 @@ import xarray as xr
 
 from charging import __version__
 from charging.case import LoadedCase
+from charging.cautions import cautions
 from charging.clock import iso_time
-from charging.dataset import mode_dataset, warnings_of
+from charging.dataset import mode_dataset
 from charging.orbit_run import CaseRun, ModeRun
 from charging.result_folder import result_folder
 from charging.review.limits import UNITS
@@ -147,7 +148,7 @@ def summary_document(
         mode_document(run.loaded, mode, summary)
         for mode, summary in zip(run.modes, summaries, strict=True)
     ]
-    warnings = list(dict.fromkeys(w for mode in run.modes for w in warnings_of(run.loaded, mode)))
+    warnings = list(dict.fromkeys(w for mode in run.modes for w in cautions(run.loaded, mode)))
     return {
         "title": run.loaded.case.title,
         "halflit_version": __version__,
