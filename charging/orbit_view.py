@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import tempfile
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import asdict, dataclass
 from datetime import datetime
 from pathlib import Path
@@ -14,6 +14,7 @@ import xarray as xr
 
 from charging import __version__
 from charging.case import LoadedCase
+from charging.clock import iso_time
 from charging.errors import InputError
 from charging.flight import eclipses_of, revolution_s, trajectory_of
 from charging.written_file import written_file
@@ -27,6 +28,25 @@ from environments.trajectory import Geometry, Trajectory, geometry, geometry_blo
 MOST_ECLIPSES_KEPT = 5000
 """More are found and printed, and not kept in the attributes of the file."""
 _DIPOLE_YEARS = ("1995-01-01", "2040-01-01")
+
+
+def eclipse_rows(epoch: datetime, eclipses: Sequence[Eclipse]) -> list[dict[str, object]]:
+    """Eclipses with UTC times for JSON, null for a contact that does not exist."""
+
+    def when(seconds: float | None) -> str | None:
+        return None if seconds is None else iso_time(epoch, seconds)
+
+    return [
+        {
+            "body": eclipse.body,
+            "penumbra_start": when(eclipse.penumbra_start),
+            "umbra_start": when(eclipse.umbra_start),
+            "umbra_end": when(eclipse.umbra_end),
+            "penumbra_end": when(eclipse.penumbra_end),
+            "umbra_s": eclipse.umbra_s,
+        }
+        for eclipse in eclipses
+    ]
 
 
 @dataclass(frozen=True, slots=True)

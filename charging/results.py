@@ -18,6 +18,7 @@ from charging.cautions import cautions
 from charging.clock import iso_time
 from charging.dataset import mode_dataset
 from charging.orbit_run import CaseRun, ModeRun
+from charging.orbit_view import eclipse_rows
 from charging.result_folder import result_folder
 from charging.review.limits import UNITS
 from charging.review.sentences import first_fixes, not_assessable, sentence, unmet
@@ -106,7 +107,7 @@ def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> di
             "highest_V": summary.structure_highest.value,
             "highest_time": _moment(loaded, summary.structure_highest),
         },
-        "eclipses": eclipse_rows(loaded, mode),
+        "eclipses": eclipse_rows(loaded.case.epoch, mode.around.eclipses),
         "steady_after_s": summary.steady_s,
         "verdict": summary.verdict,
         "sentences": sentences(loaded, mode, summary),
@@ -118,26 +119,6 @@ def sentences(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> list[s
     """One sentence per limit exceeded, the worst first; then what could not be assessed."""
     exceeded = [sentence(loaded, mode, j) for j in unmet(summary.judgements)]
     return exceeded + not_assessable(summary.judgements)
-
-
-def eclipse_rows(loaded: LoadedCase, mode: ModeRun) -> list[dict[str, Any]]:
-    """Eclipses with UTC times, null for a contact that does not exist."""
-    epoch = loaded.case.epoch
-
-    def when(seconds: float | None) -> str | None:
-        return None if seconds is None else iso_time(epoch, seconds)
-
-    return [
-        {
-            "body": e.body,
-            "penumbra_start": when(e.penumbra_start),
-            "umbra_start": when(e.umbra_start),
-            "umbra_end": when(e.umbra_end),
-            "penumbra_end": when(e.penumbra_end),
-            "umbra_s": e.umbra_s,
-        }
-        for e in mode.around.eclipses
-    ]
 
 
 def summary_document(

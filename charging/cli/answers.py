@@ -107,28 +107,16 @@ def print_point(found: PointResult) -> None:
 
 def orbit_document(found: OrbitReport) -> dict[str, object]:
     """Return the answer of `orbit_report` as JSON, times in UTC, null where a contact is absent."""
-
-    def moment(seconds: float | None) -> str | None:
-        return None if seconds is None else iso_time(found.epoch, seconds)
+    from charging.orbit_view import eclipse_rows
 
     return {
         "title": found.title,
         "kind": found.kind,
-        "start": moment(0.0),
-        "end": moment(found.duration_s),
+        "start": iso_time(found.epoch, 0.0),
+        "end": iso_time(found.epoch, found.duration_s),
         "source": found.source,
         "period_s": found.period_s,
-        "eclipses": [
-            {
-                "body": eclipse.body,
-                "penumbra_start": moment(eclipse.penumbra_start),
-                "umbra_start": moment(eclipse.umbra_start),
-                "umbra_end": moment(eclipse.umbra_end),
-                "penumbra_end": moment(eclipse.penumbra_end),
-                "umbra_s": eclipse.umbra_s,
-            }
-            for eclipse in found.eclipses
-        ],
+        "eclipses": eclipse_rows(found.epoch, found.eclipses),
         "beta_angle_deg": found.beta_angle_deg,
         "beta_angle_end_deg": found.beta_angle_end_deg,
     }
