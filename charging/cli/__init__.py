@@ -10,6 +10,7 @@ from typing import Annotated
 import typer
 
 import charging.cli.cases as cases
+import charging.cli.evidence as evidence
 import charging.cli.onsets as onsets
 import charging.cli.questions as questions
 import charging.cli.runs as runs
@@ -46,6 +47,7 @@ def _root(
 runs.register(app)
 questions.register(app)
 onsets.register(app)
+evidence.register(app)
 app.add_typer(cases.app, name="case")
 
 

@@ -1,0 +1,1 @@
+"""Every published figure the models are checked against, recomputed on demand."""
