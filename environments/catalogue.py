@@ -183,12 +183,7 @@ def _read_population(row: object, folder: Path | None) -> Population:
         raise EnvironmentDataError("is not a table", value=row, allowed="a table of keys")
     law = _choice(row, "law", LAWS) if "law" in row else "maxwellian"
     kind = DISTRIBUTIONS[law]
-    own = (*kind.numbers, *kind.arrays)
-    if law in PITCH_ANGLE_LAWS:
-        own = (*own, "pitch_angle")
-    if law == Tabulated.law:
-        own = (*own, "spectrum_file")
-    _refuse_unknown_keys(row, (*COMMON_KEYS, *own))
+    _refuse_keys_of_other_laws(row, law)
     species = _read_species(row)
     if law in PITCH_ANGLE_LAWS:
         _choice(row, "pitch_angle", ("isotropic",))
@@ -249,14 +244,53 @@ def _read_species(row: Mapping[str, object]) -> Species:
     if "charge_number" not in row:
         raise EnvironmentDataError("is missing", key=("charge_number",), allowed="an integer")
     charge = row["charge_number"]
+    allowed = 'an integer from 1 to 100; electrons are species = "electron"'
     if isinstance(charge, bool) or not isinstance(charge, int) or not 0 < abs(charge) <= 100:
         raise EnvironmentDataError(
-            "is not a charge in units of e",
+            "is not a charge in units of e", key=("charge_number",), value=charge, allowed=allowed
+        )
+    if charge < 0:
+        raise EnvironmentDataError(
+            "stands for negative ions, which are not modelled",
             key=("charge_number",),
             value=charge,
-            allowed="an integer from -100 to 100, not 0",
+            allowed=allowed,
         )
     return Species(f"{mass_u:g} u, charge {charge:+d}", mass_u * atomic_mass, charge)
+
+
+def _keys_of(law: str) -> tuple[str, ...]:
+    """Keys of a ``[[population]]`` with a law besides `COMMON_KEYS`."""
+    kind = DISTRIBUTIONS[law]
+    own = (*kind.numbers, *kind.arrays)
+    if law in PITCH_ANGLE_LAWS:
+        return (*own, "pitch_angle")
+    return (*own, "spectrum_file") if law == Tabulated.law else own
+
+
+def _refuse_keys_of_other_laws(row: Mapping[str, object], law: str) -> None:
+    """Refuse unknown keys; the hint looks at the keys of every law and says whose they are."""
+    own = (*COMMON_KEYS, *_keys_of(law))
+    for key in row:
+        if key in own:
+            continue
+        # an exact or near key of this law comes before those of others
+        near = nearest_name(key, own)
+        every = [k for other in LAWS for k in _keys_of(other)]
+        if near is None or nearest_name(key, (near, *every)) != near:
+            near = nearest_name(key, every) or near
+        others = [other for other in LAWS if near in _keys_of(other)]
+        problem = "is not a key known here"
+        if near is not None and near not in own:
+            problem = f'is not a key of law = "{law}"; {near} belongs to ' + " and ".join(
+                f'"{other}"' for other in others
+            )
+        raise EnvironmentDataError(
+            problem,
+            key=(str(key),),
+            allowed=", ".join(own),
+            nearest=None if near == key else near,
+        )
 
 
 def _refuse_unknown_keys(table: Mapping[str, object], known: tuple[str, ...]) -> None:

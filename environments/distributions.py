@@ -6,7 +6,7 @@ A further law is one more class with the members of `isotropic.Distribution`, en
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from math import sqrt
+from math import inf, sqrt
 from types import MappingProxyType
 from typing import ClassVar, Final
 
@@ -24,6 +24,7 @@ from environments.isotropic import (
     TEMPERATURE_RANGE_EV,
     Array,
     Distribution,
+    Moments,
     Numbers,
 )
 
@@ -83,12 +84,13 @@ class Maxwellian:
 class Kappa:
     r"""Power-law tail, :math:`f \propto (1 + E/((\kappa - 3/2) T))^{-\kappa - 1}`.
 
-    T is the moment temperature: the mean energy is 3T/2 for every kappa.
+    T is the moment temperature: the mean energy is 3T/2 for every kappa. The energy flux
+    through a plane diverges for kappa <= 2 and is then inf; currents are finite for all.
 
     Attributes
     ----------
     density_m3, temperature_eV, kappa : float
-        Number density [m-3]; T [eV]; index > 3/2.
+        Number density [m-3]; T [eV]; index > 3/2 (files: from 1.501).
 
     References
     ----------
@@ -103,18 +105,29 @@ class Kappa:
     numbers: ClassVar[Numbers] = {
         "density_m3": DENSITY_RANGE_M3,
         "temperature_eV": TEMPERATURE_RANGE_EV,
-        "kappa": (2.01, 200.0),  # at 2 and below the energy flux is infinite
+        "kappa": (1.501, 200.0),  # at 3/2 the mean energy diverges
     }
     arrays: ClassVar[Numbers] = {}
 
     def flux(self, energy_eV: Array, mass_kg: float) -> Array:
         """Directional differential number flux [m-2 s-1 sr-1 eV-1]."""
-        k, T = self.kappa, self.temperature_eV
-        a = (k - 1.5) * T
-        ratio = sqrt(k - 1.5) * np.exp(gammaln(k - 1.0) - gammaln(k - 0.5))
-        one_sided = self.density_m3 * sqrt(e * T / (2.0 * np.pi * mass_kg)) * ratio
+        k = self.kappa
+        a = (k - 1.5) * self.temperature_eV
         shape = energy_eV * np.exp(-(k + 1.0) * np.log1p(energy_eV / a))
-        return np.asarray(one_sided * k * (k - 1.0) / (np.pi * a**2) * shape)
+        return np.asarray(self._one_sided(mass_kg) * k * (k - 1.0) / (np.pi * a**2) * shape)
+
+    def _one_sided(self, mass_kg: float) -> float:
+        k, T = self.kappa, self.temperature_eV
+        ratio = sqrt(k - 1.5) * float(np.exp(gammaln(k - 1.0) - gammaln(k - 0.5)))
+        return self.density_m3 * sqrt(e * T / (2.0 * np.pi * mass_kg)) * ratio
+
+    def moments(self, mass_kg: float) -> Moments:
+        r"""Closed forms; the energy flux :math:`2(\kappa - 3/2)T/(\kappa - 2)` per particle."""
+        k, T = self.kappa, self.temperature_eV
+        crossing = 2.0 * (k - 1.5) * T / (k - 2.0) if k > 2.0 else inf
+        flux = self._one_sided(mass_kg)
+        debye = T * (2.0 * k - 3.0) / (2.0 * k - 1.0)
+        return Moments(self.density_m3, flux, 1.5 * T, crossing * flux, debye)
 
     @property
     def marks_eV(self) -> tuple[float, ...]:

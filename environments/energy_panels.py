@@ -11,7 +11,7 @@ Array = NDArray[np.float64]
 RATIO = 1.8  # of neighbouring panel edges; ten nodes then integrate powers of E to 1e-13
 NODES = 10
 # e-folds behind a steep edge at which panels end; ten nodes then integrate the decay to 1e-14
-E_FOLDS = (2.0, 3.6, 6.5, 11.7, 21.0, 37.8)
+E_FOLDS = (2.0, 3.6, 6.5, 11.7, 21.0, 37.8, 68.0)
 
 
 def energy_nodes(

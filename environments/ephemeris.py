@@ -32,7 +32,7 @@ _COARSEST_M: Final = 10e3
 # Within this distance the pull of Moon and Sun stays below 5 % of the Earth's [m].
 _EARTH_ALONE_M: Final = 1.5e8
 _SLACK: Final = np.timedelta64(1_000_000, "ns")  # between segments, 1 ms of rounding
-_FARTHEST_M: Final = 1.5e9  # the Earth's sphere of influence ends at 0.9 million km
+_FARTHEST_M: Final = 2.5e9  # halo orbits about the Lagrange points reach 1.8 million km
 
 
 @dataclass(frozen=True, slots=True)
@@ -178,7 +178,7 @@ def sampled_trajectory(
         if radius.max() > _FARTHEST_M:
             km = 1e-3 * float(radius.max())
             raise EnvironmentDataError(
-                f"holds a position {km:.6g} km away, beyond any Earth orbit: wrong unit?",
+                f"holds a position {km:.6g} km away, beyond the Lagrange points of Sun and Earth: wrong unit?",
                 file=file,
             )
     for one in segments:

@@ -63,11 +63,12 @@ class EnvironmentDataError(ValueError):
         line = " ".join(parts)
         if self.allowed is not None:
             line += f"; allowed: {self.allowed}"
-        if self.nearest is not None:
+        if self.nearest:
             line += f"; nearest: {_value_text(self.nearest)}"
+        line = _on_one_line(line)
         if self.file is None and self.line is None:
             return line
-        place = f"line {self.line}" if self.file is None else self.file
+        place = f"line {self.line}" if self.file is None else _on_one_line(self.file)
         if self.file is not None and self.line is not None:
             place += f":{self.line}"
         return f"{place}: {line}"
@@ -102,8 +103,15 @@ def _path_text(key: tuple[str | int, ...]) -> str:
     text = ""
     for part in key:
         text += f"[{part}]" if isinstance(part, int) else f".{part}" if text else part
-    # one line, whatever the file held
-    return "".join(c if c.isprintable() else repr(c)[1:-1] for c in text)
+    return text
+
+
+def _on_one_line(text: str) -> str:
+    """Text without what a terminal would obey, whatever a file held."""
+    shown = "".join(
+        c if c.isprintable() else c.encode("unicode_escape").decode() for c in text[:1500]
+    )
+    return shown if len(text) <= 1500 else f"{shown}…"
 
 
 def _value_text(value: object) -> str:

@@ -7,7 +7,7 @@ non-relativistic (:math:`E = m v^2/2`).
 
 from collections.abc import Mapping
 from math import isfinite
-from typing import ClassVar, Final, NamedTuple, Protocol
+from typing import ClassVar, Final, NamedTuple, Protocol, runtime_checkable
 
 import numpy as np
 from numpy.typing import NDArray
@@ -79,7 +79,8 @@ class Moments(NamedTuple):
     """Moments of one population, particles without their sign of charge.
 
     density_m3 [m-3]; number_flux_m2_s, one-sided [m-2 s-1]; mean_energy_eV of the particles
-    in a volume; energy_flux_eV_m2_s, one-sided; debye_temperature_eV, 1/<1/(2E)>.
+    in a volume; energy_flux_eV_m2_s, one-sided, inf where the integral diverges;
+    debye_temperature_eV, 1/<1/(2E)>.
     """
 
     density_m3: float
@@ -87,6 +88,15 @@ class Moments(NamedTuple):
     mean_energy_eV: float
     energy_flux_eV_m2_s: float
     debye_temperature_eV: float
+
+
+@runtime_checkable
+class HasMoments(Protocol):
+    """A distribution with moments in closed form."""
+
+    def moments(self, mass_kg: float) -> Moments:
+        """Moments of particles of a mass."""
+        ...
 
 
 def lowest_panel_eV(distribution: Distribution) -> float:
@@ -100,7 +110,7 @@ def panel_marks_eV(distribution: Distribution) -> tuple[float, ...]:
 
 
 def distribution_moments(distribution: Distribution, mass_kg: float) -> Moments:
-    r"""Integrate the moments of a distribution.
+    r"""Moments of a distribution: its closed forms, or integrals.
 
     Number density :math:`4\pi\int j/v\,dE`, one-sided number flux :math:`\pi\int j\,dE`;
     the energy that takes the place of T in the Debye length is :math:`1/\langle
@@ -119,6 +129,8 @@ def distribution_moments(distribution: Distribution, mass_kg: float) -> Moments:
     >>> round(found.density_m3), round(found.mean_energy_eV, 6)
     (1000000, 150.0)
     """
+    if isinstance(distribution, HasMoments):
+        return distribution.moments(mass_kg)
     # the root singularity of <1/E> at E = 0 needs a lowest panel that holds 1e-12 of it
     lowest = 1e-18 * lowest_panel_eV(distribution)
     marks = panel_marks_eV(distribution)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from materials.arguments import atomic_number
 from materials.errors import finite_array
 
 
@@ -78,7 +79,7 @@ def backscatter_angle_coefficient(mean_atomic_number: ArrayLike) -> NDArray[np.f
     >>> backscatter_angle_coefficient([13, 79]).round(3).tolist()
     [1.714, 0.614]
     """
-    z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
+    z = atomic_number(mean_atomic_number)
     return np.asarray(7.37 * z**-0.56875)
 
 
@@ -88,20 +89,7 @@ def secondary_angle_coefficient(mean_atomic_number: ArrayLike) -> NDArray[np.flo
     :math:`b = e^\zeta,\ \zeta = t - \sqrt{t^2 + 0.0228},\
     t = 0.2755\,(\ln Z - 1.658)`.
 
-    Parameters
-    ----------
-    mean_atomic_number : array_like
-        Mean Z, 4 to 100.
-
-    Returns
-    -------
-    ndarray
-        b, dimensionless, between 0.78 and 1.
-
-    Raises
-    ------
-    ValueError
-        Z outside 4 to 100.
+    Argument and errors as `backscatter_angle_coefficient`; b lies between 0.78 and 1.
 
     Notes
     -----
@@ -119,6 +107,6 @@ def secondary_angle_coefficient(mean_atomic_number: ArrayLike) -> NDArray[np.flo
     >>> secondary_angle_coefficient([6, 79]).round(3).tolist()
     [0.888, 0.985]
     """
-    z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
+    z = atomic_number(mean_atomic_number)
     t = 0.2755 * (np.log(z) - 1.658)
     return np.asarray(np.exp(t - np.sqrt(t**2 + 0.0228)))

@@ -13,6 +13,12 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from materials.angle import backscatter_angle_coefficient, exponential_angle_factor
+from materials.arguments import (
+    atomic_number,
+    backscatter_levels,
+    impact_energy,
+    temperature,
+)
 from materials.errors import finite_array
 
 
@@ -64,10 +70,8 @@ def prokopenko_laframboise_1980(
     >>> round(float(prokopenko_laframboise_1980(1e4, high_energy=0.16)), 3)
     0.16
     """
-    energy = finite_array("energy_eV", energy_eV, at_least=0.0)
-    a = finite_array("high_energy", high_energy, at_least=0.0, at_most=1.0)
-    b = finite_array("low_energy_drop", low_energy_drop, at_least=-1.0, at_most=1.0)
-    scale = finite_array("drop_energy_eV", drop_energy_eV, above=0.0)
+    energy = impact_energy(energy_eV)
+    a, b, scale = backscatter_levels(high_energy, low_energy_drop, drop_energy_eV)
     return np.asarray(a - b * np.exp(-energy / scale))
 
 
@@ -87,15 +91,7 @@ def hunger_kuchler_1979(
         Z of the element, 4 to 100; for compounds use mass fractions on the
         coefficients of the elements, or the mean Z as an approximation.
 
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        Energy not positive, Z outside 4 to 100, or not finite.
+    Result and errors as `prokopenko_laframboise_1980`.
 
     References
     ----------
@@ -108,7 +104,7 @@ def hunger_kuchler_1979(
     0.47
     """
     energy_keV = finite_array("energy_eV", energy_eV, above=0.0) / 1e3
-    z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
+    z = atomic_number(mean_atomic_number)
     log_z = np.log(z)
     level = 0.1904 + log_z * (-0.2235 + log_z * (0.1292 - 0.01491 * log_z))
     return np.asarray(level * energy_keV ** (0.1382 - 0.9211 / np.sqrt(z)))
@@ -126,25 +122,8 @@ def isotropic_backscatter(
 
     `prokopenko_laframboise_1980` times the average of the angle law.
 
-    Parameters
-    ----------
-    energy_eV : array_like
-        Electron energy at the surface [eV], >= 0.
-    high_energy, low_energy_drop, drop_energy_eV : array_like
-        As in `prokopenko_laframboise_1980`.
-    mean_atomic_number : array_like
-        Mean Z, 4 to 100; sets the growth towards grazing incidence.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape. Not capped: with
-        values no real surface has, it can exceed 1.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
+    Arguments and errors as that law, with the mean Z, 4 to 100, which sets the growth towards
+    grazing incidence. Not capped: with values no real surface has, it can exceed 1.
 
     References
     ----------
@@ -180,22 +159,7 @@ def maxwellian_backscatter(
     `backscatter_angle_coefficient` for an isotropic flux. A repelling potential leaves
     the weight as it is, so the average does not depend on it.
 
-    Parameters
-    ----------
-    temperature_eV : array_like
-        Electron temperature [eV], > 0.
-    high_energy, low_energy_drop, drop_energy_eV : array_like
-        As in `prokopenko_laframboise_1980`.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
+    Temperature [eV], > 0; the rest as `prokopenko_laframboise_1980`.
 
     Examples
     --------
@@ -203,10 +167,8 @@ def maxwellian_backscatter(
     ...                              drop_energy_eV=2e3).round(3))
     0.3
     """
-    t = finite_array("temperature_eV", temperature_eV, above=0.0)
-    a = finite_array("high_energy", high_energy, at_least=0.0, at_most=1.0)
-    b = finite_array("low_energy_drop", low_energy_drop, at_least=-1.0, at_most=1.0)
-    scale = finite_array("drop_energy_eV", drop_energy_eV, above=0.0)
+    t = temperature(temperature_eV)
+    a, b, scale = backscatter_levels(high_energy, low_energy_drop, drop_energy_eV)
     return np.asarray(a - b / (1.0 + t / scale) ** 2)
 
 
@@ -236,7 +198,7 @@ def hunger_kuchler_held(
     >>> hunger_kuchler_held([0.0, 4e3, 2e4], mean_atomic_number=6.0).round(3).tolist()
     [0.119, 0.085, 0.058]
     """
-    energy = finite_array("energy_eV", energy_eV, at_least=0.0)
+    energy = impact_energy(energy_eV)
     return hunger_kuchler_1979(
         np.hypot(energy, HELD_BELOW_EV), mean_atomic_number=mean_atomic_number
     )
@@ -367,7 +329,7 @@ def substrate_share(
     >>> substrate_share([1e3, 5e3, 3e4], thickness_m=1e-7, density_kg_m3=2500.0).round(3).tolist()
     [0.0, 0.284, 0.998]
     """
-    energy_keV = finite_array("energy_eV", energy_eV, at_least=0.0) / 1e3
+    energy_keV = impact_energy(energy_eV) / 1e3
     thickness = finite_array("thickness_m", thickness_m, above=0.0)
     density = finite_array("density_kg_m3", density_kg_m3, above=0.0)
     turns = 3.0 * density * thickness / 4e-5

@@ -49,6 +49,14 @@ def text_at(table: Table, path: Path) -> str:
     return entry
 
 
+def source_at(table: Table, path: Path) -> str:
+    """Return the source of a value; "" where a file gives none.
+
+    A value without source can be run with, but no limit that it drives can be assessed.
+    """
+    return text_at(table, path) if str(path[-1]) in table else ""
+
+
 def choice_at(table: Table, path: Path, choices: Sequence[str]) -> str:
     """Return one of some words."""
     entry = entry_at(table, path)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from materials.errors import finite_array
+from materials.arguments import impact_energy, maximum
 
 
 def whipple_1981(
@@ -50,7 +50,14 @@ def whipple_1981(
     >>> whipple_1981([5e3, 90e3], peak_yield=4.28, peak_energy_eV=90e3).round(3).tolist()
     [1.911, 4.28]
     """
-    energy = finite_array("energy_eV", energy_eV, at_least=0.0)
-    peak = finite_array("peak_yield", peak_yield, at_least=0.0)
-    x = energy / finite_array("peak_energy_eV", peak_energy_eV, above=0.0)
-    return np.asarray(2.0 * peak * np.sqrt(x) / (1.0 + x))
+    return whipple_kernel(impact_energy(energy_eV), *maximum(peak_yield, peak_energy_eV))
+
+
+def whipple_kernel(
+    energy_eV: NDArray[np.float64],
+    peak_yield: NDArray[np.float64],
+    peak_energy_eV: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """`whipple_1981` without its checks, for arrays that broadcast."""
+    x = energy_eV / peak_energy_eV
+    return np.asarray(2.0 * peak_yield * np.sqrt(x) / (1.0 + x))

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from materials.angle import exponential_angle_factor, secondary_angle_coefficient
-from materials.errors import finite_array
+from materials.arguments import atomic_number, maximum, temperature
 from materials.yield_laws import FAST, SLOW, sanders_inouye_peak
 
 
@@ -23,17 +23,7 @@ def maxwellian_yield(
     temperature_eV : array_like
         Electron temperature [eV], > 0.
     peak_yield, peak_energy_eV : array_like
-        Maximum yield of true secondaries; its energy [eV], > 0.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
+        As in `sanders_inouye_1979`, whose result and errors these are too.
 
     Examples
     --------
@@ -55,22 +45,7 @@ def maxwellian_isotropic_yield(
 
     Closed form: yield and onset are sums of exponentials.
 
-    Parameters
-    ----------
-    temperature_eV : array_like
-        Electron temperature [eV], > 0.
-    peak_yield, peak_energy_eV, mean_atomic_number : array_like
-        As in `isotropic_yield`.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
+    Arguments as `maxwellian_yield`, with the mean Z, 4 to 100.
 
     Examples
     --------
@@ -79,7 +54,7 @@ def maxwellian_isotropic_yield(
     1.428
     """
     t, peak, a, b, height = _maxwellian_arguments(temperature_eV, peak_yield, peak_energy_eV)
-    z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
+    z = atomic_number(mean_atomic_number)
     growth = exponential_angle_factor(secondary_angle_coefficient(z)) - 1.0
     e_max = np.asarray(peak_energy_eV, dtype=np.float64)
     total = np.zeros(np.broadcast_shapes(t.shape, e_max.shape))
@@ -104,8 +79,7 @@ def _maxwellian_arguments(
 ) -> tuple[
     NDArray[np.float64], NDArray[np.float64], NDArray[np.float64], NDArray[np.float64], float
 ]:
-    t = finite_array("temperature_eV", temperature_eV, above=0.0)
-    peak = finite_array("peak_yield", peak_yield, at_least=0.0)
-    e_max = finite_array("peak_energy_eV", peak_energy_eV, above=0.0)
+    t = temperature(temperature_eV)
+    peak, e_max = maximum(peak_yield, peak_energy_eV)
     place, height = sanders_inouye_peak()
     return t, peak, np.asarray(SLOW * e_max / place), np.asarray(FAST * e_max / place), height

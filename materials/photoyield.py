@@ -81,7 +81,7 @@ def yield_per_photon(photon_energy_eV: ArrayLike, photoyield: PhotoYield) -> NDA
     if photoyield.counts == "absorbed photons" and photoyield.reflectance is not None:
         known = photoyield.reflectance
         emitted = emitted * (1.0 - np.interp(energy, known.photon_energy_eV, known.values))
-    return np.asarray(emitted)
+    return np.asarray(photoyield.level_factor * emitted)
 
 
 def _table_yield(

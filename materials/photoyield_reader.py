@@ -13,6 +13,7 @@ from materials.entries import (
     number_at,
     numbers_at,
     refuse_unknown,
+    source_at,
     table_at,
     text_at,
 )
@@ -116,7 +117,7 @@ def photoyield_from(entry: object) -> PhotoYield:
     return PhotoYield(
         photon_energy_eV=np.array(energy),
         electrons_per_photon=np.array(emitted),
-        source=text_at(table, (WHERE, "source")),
+        source=source_at(table, (WHERE, "source")),
         basis=choice_at(table, (WHERE, "basis"), BASES),
         level=choice_at(table, (WHERE, "level"), PHOTOYIELD_LEVELS),
         spread_factor=factor,

@@ -4,7 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from materials.entries import Table, choice_at, number_at, refuse_unknown, table_at, text_at
+from materials.entries import (
+    Table,
+    choice_at,
+    number_at,
+    refuse_unknown,
+    source_at,
+    table_at,
+    text_at,
+)
 from materials.errors import MaterialError
 from materials.photoyield_reader import photoyield_from, states_from
 from materials.record import (
@@ -156,7 +164,7 @@ def _value(entry: object, key: str) -> Value:
     word = None if extra is None else choice_at(table, (key, extra), choices)
     return Value(
         value=number,
-        source=text_at(table, (key, "source")),
+        source=source_at(table, (key, "source")),
         basis=choice_at(table, (key, "basis"), BASES),
         spread=spread,
         measurement_method=word if extra == "measurement_method" else None,

@@ -94,6 +94,12 @@ PROPERTIES: Mapping[str, Property] = MappingProxyType(
         "activation_energy_eV": Property(
             "eV", 0.0, 3.0, "activation energy of the dark conductivity"
         ),
+        "radiation_conductivity_S_m": Property(
+            "S m-1", 0.0, 1e-8, "conductivity that a dose rate of 1 rad/s adds"
+        ),
+        "radiation_conductivity_exponent": Property(
+            "1", 0.3, 1.2, "power of the dose rate to which that conductivity rises"
+        ),
         "dielectric_strength_V_m": Property("V m-1", 1e5, 3e9, "field of breakdown"),
         "density_kg_m3": Property("kg m-3", 1.0, 25000.0, "mass density"),
         "typical_thickness_m": Property("m", 1e-9, 0.1, "thickness commonly used"),
@@ -149,6 +155,7 @@ class Spread:
 class Value:
     """One number with where it comes from.
 
+    `source` is "" where a file gives none; records of the library all have one.
     `holds` says what a yield counts ("total" or "true secondaries"),
     `measurement_method` how a resistivity was found; None elsewhere.
     """
@@ -209,6 +216,7 @@ class PhotoYield:
     oblique incidence, 1: none. `peak` are the energies of collided electrons where they
     are not those of the material that bears the curve, `energies` a prescribed law
     instead of the energies from photons, `normalised_to` a scaling still to be applied.
+    `level_factor` multiplies the whole curve: what a draw from its spread gives.
     """
 
     photon_energy_eV: NDArray[np.float64]
@@ -234,6 +242,7 @@ class PhotoYield:
     peak: LowEnergyPeak | None = None
     energies: FittedEnergies | None = None
     normalised_to: MeasuredCurrent | None = None
+    level_factor: float = 1.0
 
     def __post_init__(self) -> None:
         for name in ("photon_energy_eV", "electrons_per_photon"):

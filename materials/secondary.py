@@ -14,8 +14,8 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from materials.angle import exponential_angle_factor, secondary_angle_coefficient
+from materials.arguments import atomic_number, impact_energy, maximum
 from materials.backscatter import prokopenko_laframboise_1980
-from materials.errors import finite_array
 from materials.maxwellian_yield import maxwellian_isotropic_yield, maxwellian_yield
 from materials.record import Material
 from materials.secondary_escape import secondary_escape_fraction, secondary_escape_slope
@@ -26,6 +26,7 @@ from materials.yield_laws import (
     YieldLaw,
     fitted_range_eV,
     lin_joy_isotropic_shape,
+    printed_form,
 )
 
 __all__ = [
@@ -39,6 +40,7 @@ __all__ = [
     "maxwellian_isotropic_yield",
     "maxwellian_yield",
     "normal_yield",
+    "printed_form",
     "sanders_inouye_1979",
     "secondary_escape_fraction",
     "secondary_escape_slope",
@@ -101,22 +103,7 @@ def lin_joy_2005(
     maximum is `peak_yield` at `peak_energy_eV`. (As printed, with 1.28 and
     1.614, it exceeds the stated maximum by 2.5 percent.)
 
-    Parameters
-    ----------
-    energy_eV : array_like
-        Electron energy at the surface [eV], >= 0.
-    peak_yield, peak_energy_eV : array_like
-        Maximum yield of true secondaries; its energy [eV], > 0.
-
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        An argument is not finite or out of its range.
+    Arguments, result and errors as `sanders_inouye_1979`.
 
     Notes
     -----
@@ -225,19 +212,11 @@ def isotropic_yield(
     law : str, optional
         One of `YIELD_LAWS`: the normal-incidence law and its angle form.
     peak_yield, peak_energy_eV : array_like
-        Maximum yield of true secondaries at normal incidence; its energy [eV].
+        As in `sanders_inouye_1979`, at normal incidence.
     mean_atomic_number : array_like
         Mean Z, 4 to 100; used by every law but "lin_joy_2005".
 
-    Returns
-    -------
-    ndarray
-        Electrons per incident electron, broadcast shape.
-
-    Raises
-    ------
-    ValueError
-        Unknown law, or an argument that is not finite or out of its range.
+    Result and errors as `sanders_inouye_1979`; an unknown law is a ValueError too.
 
     Notes
     -----
@@ -257,7 +236,7 @@ def isotropic_yield(
     [0.487, 1.317, 0.466, 0.55]
     """
     x, peak = _checked(energy_eV, peak_yield, peak_energy_eV)
-    z = finite_array("mean_atomic_number", mean_atomic_number, at_least=4.0, at_most=100.0)
+    z = atomic_number(mean_atomic_number)
     shape = _shape(law)
     if law == "lin_joy_2005":
         return np.asarray(peak * lin_joy_isotropic_shape(x) + 0.0 * z)
@@ -313,6 +292,5 @@ def true_secondary_peak(material: Material) -> float:
 def _checked(
     energy_eV: ArrayLike, peak_yield: ArrayLike, peak_energy_eV: ArrayLike
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    energy = finite_array("energy_eV", energy_eV, at_least=0.0)
-    peak = finite_array("peak_yield", peak_yield, at_least=0.0)
-    return energy / finite_array("peak_energy_eV", peak_energy_eV, above=0.0), peak
+    peak, peak_eV = maximum(peak_yield, peak_energy_eV)
+    return impact_energy(energy_eV) / peak_eV, peak

@@ -94,6 +94,44 @@ def fitted_range_eV(law: YieldLaw, peak_energy_eV: float) -> tuple[float, float]
     return low, (facts.fitted_high or np.inf) * peak_energy_eV
 
 
+class PrintedForm(NamedTuple):
+    """How a law was published, before it was normalised here.
+
+    formula : str
+        Of x = E/E_max, for a stated maximum of 1.
+    height, place : float
+        Its maximum, over the stated one, and where that lies, in stated E_max. The printed
+        form is the shape of this package with both parameters multiplied by these.
+    """
+
+    formula: str
+    height: float
+    place: float
+
+
+@cache
+def printed_form(law: YieldLaw) -> PrintedForm:
+    """Return the printed form of a law; coefficients as far as they were printed.
+
+    Examples
+    --------
+    >>> printed_form("draine_salpeter_1979").place
+    0.5
+    >>> [round(printed_form(law).height, 4) for law in YIELD_LAWS]
+    [0.996, 1.0252, 1.0015, 1.1852]
+    """
+    if law == "sternglass_1954":
+        return PrintedForm("7.4 x exp(-2 sqrt x)", 7.4 / float(np.exp(2.0)), 1.0)
+    if law == "draine_salpeter_1979":
+        return PrintedForm("8 x/(1 + x)^3", 32.0 / 27.0, 0.5)
+    if law == "lin_joy_2005":
+        # 1.614 is the root r to four digits
+        height = 1.28 * -float(np.expm1(-constant_loss_r(RANGE_EXPONENT)))
+        return PrintedForm("1.28 x^-0.67 (1 - exp(-1.614 x^1.67))", height, 1.0)
+    place, top = sanders_inouye_peak()
+    return PrintedForm("1.37 (exp(-x/4.3) - exp(-x/0.367))", 1.37 * top, place)
+
+
 @cache
 def sanders_inouye_peak() -> tuple[float, float]:
     """Place (in E_max) and height of the maximum of the printed form."""
@@ -152,8 +190,8 @@ def lin_joy_isotropic_shape(x: Array) -> Array:
     large_z = np.where(small, 1.0, z)
     closed = 1.0 + np.expm1(-large_z) / large_z
     # 1 - (1 - e^-z)/z = sum_k (-1)^(k+1) z^k/(k+1)!, exact to rounding below 0.1
-    series = np.zeros_like(z)
+    series, small_z = np.zeros_like(z), np.where(small, z, 0.0)
     for k in range(9, 0, -1):
-        series = (1.0 - series) * z / (k + 1.0)
+        series = (1.0 - series) * small_z / (k + 1.0)
     shape = 2.0 * safe ** (1.0 - RANGE_EXPONENT) * np.where(small, series, closed)
     return np.asarray(np.where(x > 0.0, shape, 0.0) / -np.expm1(-r))

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
-from itertools import pairwise
 from math import exp, expm1, pi, sqrt
 
 import numpy as np
@@ -21,9 +20,9 @@ from scipy.optimize import brentq, minimize_scalar
 from charging.audit import charge_audit
 from charging.case import load_case_text
 from charging.currents.emission import SECONDARY_LAWS
-from charging.network.charge_balance import ChargeBalance
-from charging.network.march import ALPHA, GAMMA, GAMMA_T, A, C, Tolerance, march
-from charging.orbit_run import TOLERANCE, CaseRun, ModeRun, run_case, solve_mode
+from charging.network.march import Tolerance, march
+from charging.network.rosenbrock import RODAS
+from charging.orbit_run import CaseRun, ModeRun, run_case, solve_mode
 from environments.catalogue import load_plasma
 from environments.plasma import Plasma
 from materials import load_material
@@ -326,107 +325,6 @@ def test_bare_sphere_charges_as_its_closed_form(name: str) -> None:
         assert abs(rate(0.0, path.y_end[-1])[0]) < 1e-6 * abs(rate(0.0, np.zeros(1))[0])
 
 
-# --- the demo day against another integrator ---------------------------------------------
-
-
-def radau(
-    balance: ChargeBalance, member: int, start: Array, marks: Array, times: Array, rtol: float
-) -> Array:
-    """States [T, n] at `times` by scipy's Radau, restarted at every mark (the kinks)."""
-    one = np.array([member])
-    solve = np.linalg.inv(balance.mass)
-
-    def rate(t: float, y: Array) -> Array:
-        return np.asarray(solve @ balance.rhs(one, np.array([t]), y[None])[0])
-
-    def jacobian(t: float, y: Array) -> Array:
-        return np.asarray(solve @ balance.rhs_and_jacobian(one, np.array([t]), y[None])[1][0])
-
-    states = np.empty((len(times), len(start)))
-    y = start
-    for begin, end in pairwise(marks.tolist()):
-        inside = (times >= begin) & (times <= end)
-        found = solve_ivp(rate, (begin, end), y, method="Radau", jac=jacobian, rtol=rtol,
-                          atol=1e-6 * rtol / 1e-8, dense_output=True)  # fmt: skip
-        assert found.success, found.message
-        states[inside] = found.sol(times[inside]).T
-        y = found.y[:, -1]
-    return states
-
-
-def share_of_bar(balance: ChargeBalance, ours: Array, exact: Array) -> Array:
-    """Largest error over absolute and differential potentials [T], 1 = 0.1 V or 0.1 %."""
-    a, b = balance.controlled(ours), balance.controlled(exact)
-    return np.asarray((np.abs(a - b) / np.maximum(0.1, 1e-3 * np.abs(b))).max(axis=-1))
-
-
-def jumping(balance: ChargeBalance, times: Array, states: Array) -> NDArray[np.bool_]:
-    """Times [T] within an output step (60 s) of a jump between branches.
-
-    A jump is under way where the linearised balance grows by itself, faster than 1/60 s.
-    """
-    solve = np.linalg.inv(balance.mass)
-    which = np.zeros(len(times), dtype=np.intp)
-    _, jacobian = balance.rhs_and_jacobian(which, times, states)
-    growth = np.linalg.eigvals(solve @ jacobian).real.max(axis=-1)
-    inside = times[growth > 1.0 / 60.0]
-    return np.asarray((np.abs(times[:, None] - inside) <= 60.0).any(axis=-1))
-
-
-def compare_with_radau(mode: ModeRun, member: int, begin: float, end: float, rtol: float) -> Array:
-    path = mode.trajectories[member]
-    breaks = [b for b in mode.around.breaks_s if begin < b < end]
-    marks = np.array([begin, *breaks, end])
-    times = mode.times_s[(mode.times_s >= begin) & (mode.times_s <= end)]
-    start = path(np.array([begin]))[0]
-    single = replace(
-        mode.balance,
-        models=mode.balance.models[member : member + 1],
-        table=replace(
-            mode.balance.table,
-            coefficients=mode.balance.table.coefficients[member : member + 1],
-        ),
-    )
-    # the march runs anew from the same state, so that both solve the same problem
-    (ours,) = march(single, start[None], span_s=(begin, end), breaks_s=breaks, tolerance=TOLERANCE)
-    fine = np.union1d(times, np.arange(begin, end, 2.0))  # finds jumps between output times
-    exact = radau(single, 0, start, marks, fine, rtol)
-    here = np.searchsorted(fine, times)
-    jump = jumping(single, fine, exact)[here]
-    error = share_of_bar(single, ours(times), exact[here])
-    # near a jump the potential may be late or early by 1 s
-    early, late = (np.clip(times + d, begin, end) for d in (-1.0, 1.0))
-    a, b, c = (single.controlled(ours(t)) for t in (early, times, late))
-    swing = np.maximum(np.maximum(np.abs(a - b), np.abs(c - b)), 0.1)
-    shifted = (np.abs(b - single.controlled(exact[here])) / swing).max(axis=-1)
-    print(
-        f"worst {error[~jump].max():.3f} of the bar, "
-        f"at {times[~jump][error[~jump].argmax()]:.0f} s; "
-        f"near jumps {error[jump].max(initial=0.0):.3f}, {shifted[jump].max(initial=0.0):.3f} of "
-        f"what 1 s moves; {jump.sum()} of {len(times)} times near a jump"
-    )
-    assert jump.mean() < 0.2
-    assert (shifted[jump] < 1.0).all()
-    return np.asarray(error[~jump])
-
-
-def test_eclipse_exit_inside_the_substorm_against_radau(demo_day: CaseRun) -> None:
-    """Twenty minutes around the end of umbra, the stiffest stretch of the day."""
-    mode = demo_day.modes[0]
-    end = mode.around.eclipses[0].umbra_end
-    assert end is not None
-    for member in (0, 1):
-        assert compare_with_radau(mode, member, end - 300.0, end + 1500.0, 1e-8).max() < 1.0
-
-
-@pytest.mark.slow
-@pytest.mark.timeout(900)
-@pytest.mark.parametrize("member", [0, 1], ids=SECONDARY_LAWS)
-def test_whole_demo_day_against_radau(demo_day: CaseRun, member: int) -> None:
-    mode = demo_day.modes[0]
-    assert compare_with_radau(mode, member, 0.0, 86400.0, 1e-10).max() < 1.0
-
-
 # --- conservation of charge ---------------------------------------------------------------
 
 
@@ -457,14 +355,14 @@ def test_every_step_stores_what_its_stages_brought(
     a = np.zeros((6, 6))
     c = np.zeros((6, 6))
     for i in range(6):
-        c[i, : len(C[i])] = C[i]
-        a[i, : len(A[i])] = A[i]
-    gamma = np.linalg.inv(np.eye(6) / GAMMA - c)  # Γ⁻¹ = diag(1/γ) - C
+        c[i, : len(RODAS.c[i])] = RODAS.c[i]
+        a[i, : len(RODAS.a[i])] = RODAS.a[i]
+    gamma = np.linalg.inv(np.eye(6) / RODAS.gamma - c)  # Γ⁻¹ = diag(1/γ) - C
     alpha = a @ gamma
-    weights = np.append(A[5], 1.0) @ gamma  # y1 = y0 + Σ m_i u_i, u = Γ k
+    weights = np.append(RODAS.a[5], 1.0) @ gamma  # y1 = y0 + Σ m_i u_i, u = Γ k
     assert weights.sum() == pytest.approx(1.0, abs=1e-12)
-    assert alpha.sum(axis=1) == pytest.approx(np.array(ALPHA), abs=1e-10)
-    assert gamma.sum(axis=1) == pytest.approx(np.array(GAMMA_T), abs=1e-10)
+    assert alpha.sum(axis=1) == pytest.approx(np.array(RODAS.alpha), abs=1e-10)
+    assert gamma.sum(axis=1) == pytest.approx(np.array(RODAS.gamma_t), abs=1e-10)
     balance, mass = mode.balance, mode.balance.mass
     path = mode.trajectories[0]
     one = np.array([0])
@@ -484,12 +382,12 @@ def test_every_step_stores_what_its_stages_brought(
         throughput = np.zeros_like(y)
         for i in range(6):
             state = y + alpha[i] @ slopes
-            f = balance.rhs(one, np.array([t + ALPHA[i] * h]), state[None])[0]
-            known = h * f + h * matrix @ (gamma[i] @ slopes) + GAMMA_T[i] * h**2 * f_t
-            slopes[i] = np.linalg.solve(mass - h * GAMMA * matrix, known)
-            arrived = known + h * matrix @ (GAMMA * slopes[i])
+            f = balance.rhs(one, np.array([t + RODAS.alpha[i] * h]), state[None])[0]
+            known = h * f + h * matrix @ (gamma[i] @ slopes) + RODAS.gamma_t[i] * h**2 * f_t
+            slopes[i] = np.linalg.solve(mass - h * RODAS.gamma * matrix, known)
+            arrived = known + h * matrix @ (RODAS.gamma * slopes[i])
             brought += weights[i] * arrived
-            flows = balance.flows(0, np.array([t + ALPHA[i] * h]), state[None])
+            flows = balance.flows(0, np.array([t + RODAS.alpha[i] * h]), state[None])
             gross = np.abs(flows.surface_A_m2[0]).sum(axis=-1) * balance.net.area_m2
             throughput += abs(weights[i]) * h * (balance.net.moves @ gross)
         change = path.y_end[step] - y
