@@ -63,8 +63,10 @@ def _levelled(given: Material) -> Material:
         ) from None
 
 
-def as_plasma(given: Plasma | str, *, key: str = "plasma") -> Plasma:
+def as_plasma(given: Plasma | str, *, key: str = "plasma", to_charge: bool = False) -> Plasma:
     """Return a plasma from an object, a library name or a file; errors as `as_material`.
+
+    `to_charge` True refuses a file without electrons or without positive ions.
 
     Examples
     --------
@@ -76,7 +78,8 @@ def as_plasma(given: Plasma | str, *, key: str = "plasma") -> Plasma:
     if not isinstance(given, str):
         return given
     try:
-        return find_plasma(given, Sources(_HERE, allow_outside=True))[0]
+        sources = Sources(_HERE, allow_outside=True)
+        return find_plasma(given, sources, to_charge=to_charge)[0]
     except ProblemsFound as error:
         raise _unusable(key, given, error) from None
 

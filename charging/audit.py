@@ -40,8 +40,8 @@ def charge_audit(balance: ChargeBalance, member: int, path: Trajectory) -> Audit
     states = path.inside(k, np.tile(theta, steps))
     times = path.start_s[k] + np.tile(theta, steps) * path.step_s[k]
     flows = balance.flows(member, times, states)
-    net = balance.net
-    into = balance.node_currents(flows).reshape(steps, POINTS, -1)
+    net = balance.net.of(member)
+    into = balance.node_currents(flows, member).reshape(steps, POINTS, -1)
     share = weight[None, :, None] * path.step_s[:, None, None]
     arrived = np.cumsum((into * share).sum(axis=1), axis=0)
     change = net.potentials(path.y_end) - net.potentials(path.y_start[0])
@@ -54,7 +54,7 @@ def charge_audit(balance: ChargeBalance, member: int, path: Trajectory) -> Audit
     film = np.abs(flows.film_A_m2) * net.area_m2[net.film_surface]
     for i, node in enumerate(net.film_node):
         through[:, node] += film[:, i]
-    through[:, 0] += np.abs(flows.emitter_A).sum(axis=-1)
+    through[:, 0] += np.abs(flows.emitter_A).sum(axis=-1) + flows.string_gross_A.sum(axis=-1)
     total = (through.reshape(steps, POINTS, -1) * share).sum(axis=(0, 1))
     relative = float(np.max(np.abs(residual) / np.where(total > 0.0, total, 1.0)))
     return Audit(path.start_s + path.step_s, residual, relative)

@@ -8,7 +8,8 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Callable, Iterable, Iterator, Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
+from functools import partial
 from pathlib import Path
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any, TypeVar
@@ -21,6 +22,8 @@ from charging.case_files import NO_FILES, CaseFiles, read_files
 from charging.case_library import Sources, find_material, find_plasma
 from charging.case_modes import Emitter, Mode
 from charging.case_orbit import Attitude, OrbitFile, OrbitFixed, OrbitKepler
+from charging.case_plasma import PlasmaEvent, PlasmaSubstorm, PlasmaTable
+from charging.case_shape import Shape
 from charging.case_tables import (
     Body,
     Case,
@@ -28,8 +31,6 @@ from charging.case_tables import (
     Limit,
     Link,
     MarginPolicy,
-    PlasmaEvent,
-    PlasmaTable,
     Review,
     Sun,
     SunlitEclipse,
@@ -62,13 +63,16 @@ __all__ = [
     "OrbitFixed",
     "OrbitKepler",
     "PlasmaEvent",
+    "PlasmaSubstorm",
     "PlasmaTable",
     "Review",
+    "Shape",
     "Sun",
     "SunlitEclipse",
     "Surface",
     "Time",
     "case_schema",
+    "changed_case",
     "load_case",
     "load_case_text",
 ]
@@ -107,6 +111,11 @@ class LoadedCase:
     plasmas: Mapping[str, Plasma]
     plasma_texts: Mapping[str, str]
     files: CaseFiles = NO_FILES
+
+    def __reduce__(self) -> tuple[type[LoadedCase], tuple[object, ...]]:
+        # read-only views cannot be pickled; what they show can
+        values = (getattr(self, entry.name) for entry in fields(self))
+        return LoadedCase, tuple(dict(v) if isinstance(v, Mapping) else v for v in values)
 
 
 def load_case(
@@ -174,6 +183,47 @@ def load_case_text(
     return _loaded(parse_toml(text, file=file), Path(file), sources)
 
 
+def changed_case(
+    loaded: LoadedCase, edits: Mapping[KeyPath, object], *, allow_outside: bool = False
+) -> LoadedCase:
+    """Return a case with some keys of its file set to other values, checked like a file.
+
+    Parameters
+    ----------
+    loaded : LoadedCase
+    edits : mapping of key path to value
+        ``("surface", 2, "material"): "gold"``; None takes the key out.
+    allow_outside : bool, optional
+        As in `load_case`.
+
+    Returns
+    -------
+    LoadedCase
+        Its text stays that of the file.
+
+    Raises
+    ------
+    InputError
+        As `load_case`; lines are those of the file.
+    """
+    toml = parse_toml(loaded.text, file=str(loaded.path))
+    for path, value in edits.items():
+        table: Any = toml.document
+        for part in path[:-1]:
+            table = table.setdefault(part, {}) if isinstance(part, str) else table[part]
+        if value is None:
+            table.pop(path[-1], None)
+        else:
+            table[path[-1]] = value
+    sources = Sources(
+        loaded.path if loaded.path.is_file() else None,
+        allow_outside,
+        material_texts=loaded.material_texts,
+        plasma_texts=loaded.plasma_texts,
+    )
+    return _loaded(toml, loaded.path, sources)
+
+
 def case_schema() -> dict[str, Any]:
     """Return the JSON schema of a case file (keys with units; checks between keys not included).
 
@@ -192,13 +242,23 @@ def _loaded(toml: TomlFile, path: Path, sources: Sources, orbit_only: bool = Fal
         case, files, problems = read_files(case, sources)
         if not problems:
             check_case(case, orbit_only=orbit_only)
+        if not problems and case.shape and not orbit_only:
+            from charging.shape.reading import with_faces  # numpy loads for cases with shapes
+
+            case, problems = with_faces(case)
     except ProblemsFound as error:
         problems = list(error.problems)
     materials = _found(_materials_named(case), find_material, sources, problems)
-    plasmas = _found(_plasmas_named(case), find_plasma, sources, problems)
+    plasmas = _found(
+        _plasmas_named(case), partial(find_plasma, to_charge=not orbit_only), sources, problems
+    )
     if not problems:
         named = {name: found[0] for name, found in materials.items()}
         problems += [*_layer_problems(case, named), *_state_problems(case, named)]
+        if case.string or case.radiation.by_region or case.radiation.dose_rate_rad_s:
+            from charging.array_strings import array_problems  # numpy loads for these cases
+
+            problems += array_problems(case, named)
         # states take curves of other records: a run repeated from its result needs those too
         needed = (
             (("surface", index, "surface_state"), other)
@@ -267,10 +327,15 @@ def _checked(toml: TomlFile, orbit_only: bool) -> tuple[Case, Mapping[KeyPath, K
 def _materials_named(case: Case) -> Iterator[tuple[KeyPath, str]]:
     for index, surface in enumerate(case.surface):
         yield ("surface", index, "material"), surface.material
+    for index, string in enumerate(case.string):
+        yield ("string", index, "material"), string.material
 
 
 def _plasmas_named(case: Case) -> Iterator[tuple[KeyPath, str]]:
-    yield ("plasma", "use"), case.plasma.use
+    if case.plasma.use is not None:
+        yield ("plasma", "use"), case.plasma.use
+    if case.plasma.arc is not None:
+        yield ("plasma", "arc"), case.plasma.arc
     for index, event in enumerate(case.plasma.event):
         yield ("plasma", "event", index, "use"), event.use
     for index, mode in enumerate(case.mode):

@@ -17,11 +17,11 @@ from charging.errors import KeyPath, Problem, ProblemsFound
 
 if TYPE_CHECKING:
     from charging.case_orbit import OrbitKepler
+    from charging.case_plasma import PlasmaEvent, PlasmaSubstorm
     from charging.case_tables import (
         Case,
         Limit,
         Link,
-        PlasmaEvent,
         Surface,
     )
 
@@ -61,8 +61,8 @@ def check_kepler(orbit: OrbitKepler, earth_radius_km: float) -> None:
         )
 
 
-def check_event(event: PlasmaEvent) -> None:
-    """Refuse a plasma event without begin or with two."""
+def check_event(event: PlasmaEvent | PlasmaSubstorm) -> None:
+    """Refuse a plasma event or a substorm without begin or with two."""
     if event.onset is not None and event.onset_h is not None:
         message = "stands beside onset; give one of the two"
         raise ProblemsFound([Problem(("onset_h",), message, value=event.onset_h)])
@@ -83,7 +83,14 @@ def _surface_problems(surface: Surface) -> Iterator[Problem]:
         yield Problem(
             ("tracks_sun",), "stands beside normal; give one of the two", value=surface.tracks_sun
         )
-    if surface.normal is None and not surface.tracks_sun:
+    shaped = surface.face is not None or surface.faces != ()
+    if surface.face is not None and surface.faces:
+        message = "stands beside face; give one of the two"
+        yield Problem(("faces",), message, value=list(surface.faces))
+    yield from _list_problems(("faces",), surface.faces)
+    if not shaped and "area_m2" not in surface.model_fields_set:
+        yield _missing("area_m2")
+    if surface.normal is None and not surface.tracks_sun and not shaped:
         yield _missing("normal", "is missing", "normal = [x, y, z], or tracks_sun = true with side")
     if surface.tracks_sun and surface.side is None:
         yield _missing("side", "is missing for a sun tracker", '"front", "back"')
@@ -128,14 +135,20 @@ def check_link(link: Link) -> None:
 
 
 def _limit_problems(limit: Limit) -> Iterator[Problem]:
-    due, other = ("allowed_V_m", "allowed_V") if limit.kind == "field" else (
-        "allowed_V", "allowed_V_m"
-    )  # fmt: skip
-    if getattr(limit, other) is not None:
+    due = {"field": "allowed_V_m", "energy": "allowed_J"}.get(limit.kind, "allowed_V")
+    others = [
+        key
+        for key in ("allowed_V", "allowed_V_m", "allowed_J")
+        if key != due and getattr(limit, key) is not None
+    ]
+    for other in others:
         message = f"does not go with kind = {quoted([limit.kind])}"
         yield Problem((other,), message, value=getattr(limit, other), allowed=due)
-    elif getattr(limit, due) is None:
+    if not others and getattr(limit, due) is None:
         yield _missing(due, "is missing", "a positive number")
+    if limit.kind == "structure" and limit.surfaces is not None:
+        message = 'do not go with kind = "structure", which concerns no single surface'
+        yield Problem(("surfaces",), message, value=list(limit.surfaces))
     if limit.surfaces is not None:
         if not limit.surfaces:
             yield Problem(("surfaces",), "is empty", value=[], allowed="names; leave out for all")
@@ -166,6 +179,7 @@ def check_case(case: Case, *, orbit_only: bool = False) -> None:
     found = itertools.chain(
         _time_problems(case, orbit_only),
         _sun_problems(case),
+        _plasma_problems(case),
         _event_problems(case),
         _name_problems(case),
         _attachment_problems(case),
@@ -217,6 +231,19 @@ def _sun_problems(case: Case) -> Iterator[Problem]:
             yield too_low(case.sun.absorbing_height_km, lowest_km)
 
 
+def _plasma_problems(case: Case) -> Iterator[Problem]:
+    plasma, fixed = case.plasma, case.orbit.kind == "fixed"
+    if plasma.model is not None and fixed and plasma.around is None:
+        yield Problem(
+            ("plasma", "around"),
+            "is missing for the regions of a fixed case",
+            missing=True,
+            allowed='"moon" with solar_zenith_angle_deg, or "sun"',
+        )
+    if plasma.around is not None and not fixed:
+        yield Problem(("plasma", "around"), "goes only with a fixed orbit", value=plasma.around)
+
+
 def too_low(height_km: float, lowest_km: float) -> Problem:
     """Return the fault of an orbit that leads through the absorbing air."""
     return Problem(
@@ -265,6 +292,7 @@ def _name_problems(case: Case) -> Iterator[Problem]:
         ("surface", names),
         ("mode", [mode.name for mode in case.mode]),
         ("emitter", [emitter.name for emitter in case.emitter]),
+        ("string", [string.name for string in case.string]),
     ):
         for index, name in enumerate(entries):
             if name in entries[:index]:
@@ -275,6 +303,8 @@ def _name_problems(case: Case) -> Iterator[Problem]:
     for index, surface in enumerate(case.surface):
         for place, neighbour in enumerate(surface.neighbours):
             yield from _unknown(("surface", index, "neighbours", place), neighbour, names)
+    for index, string in enumerate(case.string):
+        yield from _unknown(("string", index, "surface"), string.surface, names)
     for index, link in enumerate(case.link):
         for place, end in enumerate(link.between):
             known = (*names, STRUCTURE)

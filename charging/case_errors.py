@@ -19,6 +19,9 @@ from pydantic_core import ErrorDetails
 
 from charging import case_modes as modes
 from charging import case_orbit as orbits
+from charging import case_plasma
+from charging import case_shape as shapes
+from charging import case_strings as strings
 from charging import case_tables as tables
 from charging.case_values import nearest_name, quoted
 from charging.errors import InputError, KeyPath, Problem, ProblemsFound, printable
@@ -37,29 +40,29 @@ _MODELS: Mapping[TableName, type[BaseModel]] = {
     ("time",): tables.Time,
     ("sun",): tables.Sun,
     ("attitude",): orbits.Attitude,
-    ("plasma",): tables.PlasmaTable,
-    ("plasma", "event"): tables.PlasmaEvent,
+    ("plasma",): case_plasma.PlasmaTable,
+    ("plasma", "event"): case_plasma.PlasmaEvent,
+    ("plasma", "substorm"): case_plasma.PlasmaSubstorm,
     ("body",): tables.Body,
     ("emission",): tables.Emission,
+    ("shape",): shapes.Shape,
     ("surface",): tables.Surface,
     ("surface", "temperature_K"): tables.SunlitEclipse,
     ("link",): tables.Link,
     ("mode",): modes.Mode,
     ("mode", "attitude"): orbits.Attitude,
     ("emitter",): modes.Emitter,
+    ("string",): strings.ArrayString,
+    ("radiation",): strings.Radiation,
     ("limit",): tables.Limit,
     ("limit", "margin_policy"): tables.MarginPolicy,
     ("review",): tables.Review,
 }
 _ARRAYS: Sequence[TableName] = (
-    ("plasma", "event"), ("surface",), ("link",), ("mode",), ("emitter",), ("limit",),
+    ("plasma", "event"), ("plasma", "substorm"), ("shape",), ("surface",), ("link",), ("mode",),
+    ("emitter",), ("string",), ("limit",),
     ("population",),  # of a plasma file
 )  # fmt: skip
-# What the design foresees and this release does not read yet, with what to write instead.
-_KEYS_NOT_YET = {
-    ("plasma", "file"): 'use = "…", a name (halflit plasmas) or a plasma file',
-    ("plasma", "model"): 'use = "…", a name (halflit plasmas) or a plasma file',
-}
 _MOST_GUESSES = 200
 
 
@@ -72,13 +75,8 @@ def problems_of(error: ValidationError, document: Mapping[str, Any]) -> list[Pro
         else:  # counted only: a search for the nearest name each would take minutes
             found.append(Problem(_place(detail["loc"], document), "cannot stand here"))
     guessed = {(*fault.key[:-1], fault.nearest) for fault in found if fault.nearest is not None}
-    timed = {fault.key[:-1] for fault in found if _names(fault.key) in _KEYS_NOT_YET}
-    return [
-        fault
-        for fault in found  # a key misspelt, or replaced by one not read yet, is not missing too
-        if not fault.missing
-        or (fault.key not in guessed and not (fault.key[:-1] in timed and len(fault.key) > 1))
-    ]
+    # a key misspelt is not missing too
+    return [fault for fault in found if not fault.missing or fault.key not in guessed]
 
 
 def input_error(
@@ -254,9 +252,14 @@ def _missing(key: KeyPath) -> Problem:
 def _wrong_length(key: KeyPath, document: Mapping[str, Any], most: object = None) -> Problem:
     value = _value_at(document, key)
     count = len(value) if isinstance(value, list | tuple) else 0
-    due = {"between": "two names", "normal": "three numbers", "sun_direction": "three numbers"}.get(
-        _names(key)[-1], f"up to {most} entries"
-    )
+    due = {
+        "between": "two names",
+        "normal": "three numbers",
+        "sun_direction": "three numbers",
+        "center_m": "three numbers",
+        "axis": "three numbers",
+        "along": "three numbers",
+    }.get(_names(key)[-1], f"up to {most} entries")
     entries = f"{count} entr{'y' if count == 1 else 'ies'}"
     return Problem(key, f"has {entries}", value=value, allowed=due)
 
@@ -270,9 +273,6 @@ def _choice(key: KeyPath, value: object, choices: Iterable[str]) -> Problem:
 def _unknown_key(key: KeyPath, document: Mapping[str, Any]) -> Problem:
     names = _names(key)
     name = printable(str(key[-1]), 70)
-    if names in _KEYS_NOT_YET:
-        message = f"{name} is not available yet"
-        return Problem(key, message, sentence=True, allowed=_KEYS_NOT_YET[names])
     model = _MODELS.get(names[:-1])
     if names[:-1] == ("orbit",):
         model = ORBIT_KINDS[str(_value_at(document, ("orbit", "kind")))]

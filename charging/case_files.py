@@ -14,20 +14,24 @@ from charging.case_checks import too_low
 from charging.case_library import Sources, located
 from charging.case_mode_checks import span_s
 from charging.case_orbit import EARTH_EQUATORIAL_RADIUS_KM, OrbitFile
+from charging.case_plasma import activity_problems
 from charging.case_tables import Case
 from charging.errors import InputError, KeyPath, Problem, ProblemsFound
+from charging.file_content import bytes_of
 
 if TYPE_CHECKING:
     import numpy as np
 
     from charging.temperatures import TemperatureTable
+    from environments.activity import Activity
     from environments.attitude_file import QuaternionAttitude
+    from environments.plasma_timeline import PlasmaTimeline
     from environments.shadow_table import ShadowTable
     from environments.trajectory import Trajectory
 
 T = TypeVar("T")
-MOST_KEPT_BYTES = 32_000_000
-"""Longer texts are not kept in a result; it then holds their SHA-256 alone."""
+LARGEST_TEXT_BYTES, LARGEST_NETCDF_BYTES = 10_000_000, 1_000_000_000
+"""Of a data file; texts are kept in a result, of NetCDF files the SHA-256 alone."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -40,8 +44,12 @@ class CaseFiles:
         Of an orbit from a file, counted from the start of the run.
     attitudes, shadows, temperatures : mapping
         By the name the case gives; times counted from the start of the run.
+    activity : Activity or None
+        Of Sun and magnetosphere, from its file.
+    timeline : PlasmaTimeline or None
+        Measured plasma.
     texts : mapping
-        Texts of the files by name, for a rerun; binary files and very long ones are absent.
+        Texts of the files by name, for a rerun; binary files are absent.
     sha256 : mapping
         SHA-256 of the bytes of every file, in hexadecimal.
     """
@@ -50,6 +58,8 @@ class CaseFiles:
     attitudes: Mapping[str, QuaternionAttitude] = field(default_factory=dict)
     shadows: Mapping[str, ShadowTable] = field(default_factory=dict)
     temperatures: Mapping[str, TemperatureTable] = field(default_factory=dict)
+    activity: Activity | None = None
+    timeline: PlasmaTimeline | None = None
     texts: Mapping[str, str] = field(default_factory=dict)
     sha256: Mapping[str, str] = field(default_factory=dict)
 
@@ -76,7 +86,7 @@ class _Reader:
                     [
                         Problem(
                             (),
-                            "is a binary or very long file, which a result does not hold (SHA-256 "
+                            "is a binary file, which a result does not hold (SHA-256 "
                             f"{self.sources.file_sha256[name]})",
                             next_step="Use the case file, beside which it stands.",
                         )
@@ -86,14 +96,10 @@ class _Reader:
         except ProblemsFound as error:
             self.problems += [replace(fault, key=key, value=name) for fault in error.problems]
             return None
-        try:
-            data = real.read_bytes()
-        except OSError as error:
-            raise InputError(
-                f"cannot be read ({(error.strerror or 'unknown').lower()})", file=str(path)
-            ) from None
+        most = LARGEST_NETCDF_BYTES if real.suffix == ".nc" else LARGEST_TEXT_BYTES
+        data = bytes_of(real, str(path), most)
         self.sha256[name] = hashlib.sha256(data).hexdigest()
-        if not name.endswith(".nc") and len(data) <= MOST_KEPT_BYTES:
+        if not name.endswith(".nc"):
             # a file that is not UTF-8 is refused by its reader
             self.texts[name] = data.decode("utf-8", errors="replace")
         return _parsed(parse, real, str(path))
@@ -164,7 +170,9 @@ def read_files(case: Case, sources: Sources) -> tuple[Case, CaseFiles, list[Prob
     epoch = _epoch64(case)
 
     from charging.temperatures import read_temperature_csv
+    from environments.activity import read_activity
     from environments.attitude_file import read_attitude_csv
+    from environments.plasma_timeline import read_plasma_timeline
     from environments.shadow_table import read_shadow_csv
 
     attitudes = _each(reader, _attitude_files(case), lambda path: read_attitude_csv(path, epoch))
@@ -178,7 +186,21 @@ def read_files(case: Case, sources: Sources) -> tuple[Case, CaseFiles, list[Prob
         ),
         lambda path: read_temperature_csv(path, epoch),
     )
-    files = CaseFiles(trajectory, attitudes, shadows, temperatures, reader.texts, reader.sha256)
+    activity = timeline = None
+    if case.plasma.activity is not None:
+        activity = reader.read(("plasma", "activity"), case.plasma.activity, read_activity)
+    if case.plasma.file is not None:
+        timeline = reader.read(("plasma", "file"), case.plasma.file, read_plasma_timeline)
+    files = CaseFiles(
+        trajectory,
+        attitudes,
+        shadows,
+        temperatures,
+        activity,
+        timeline,
+        reader.texts,
+        reader.sha256,
+    )
     return case, files, [*reader.problems, *_cover_problems(case, files)]
 
 
@@ -299,6 +321,12 @@ def _shadow_files(case: Case) -> Iterator[tuple[KeyPath, str]]:
 
 def _cover_problems(case: Case, files: CaseFiles) -> Iterator[Problem]:
     """Yield attitudes and temperatures that end before the run, surfaces without a shadow."""
+    from environments.timescales import elapsed_s
+
+    epoch = _epoch64(case)
+    if files.activity is not None:
+        for fault in activity_problems(case.plasma, files.activity, epoch, case.duration_s):
+            yield replace(fault, key=("plasma", *fault.key))
     spans: list[tuple[KeyPath, str, float, float]] = []
     if case.attitude.file is not None:
         spans.append((("attitude", "file"), case.attitude.file, 0.0, case.duration_s))
@@ -311,6 +339,11 @@ def _cover_problems(case: Case, files: CaseFiles) -> Iterator[Problem]:
         if name in files.attitudes:
             first, last = files.attitudes[name].span_s
             yield from _span_problem(case, key, name, (first, last), (start, end))
+    if files.timeline is not None and case.plasma.file is not None:
+        rows = elapsed_s(epoch, files.timeline.times[[0, -1]])
+        span = (float(rows[0]), float(rows[1]))
+        whole = (0.0, case.duration_s)
+        yield from _span_problem(case, ("plasma", "file"), case.plasma.file, span, whole)
     for index, surface in enumerate(case.surface):
         given = surface.temperature_K
         if isinstance(given, str) and given in files.temperatures:

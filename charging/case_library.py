@@ -74,10 +74,14 @@ def find_material(name: str, sources: Sources) -> tuple[Material, str]:
         raise _in_file(error, toml, {}) from None
 
 
-def find_plasma(name: str, sources: Sources) -> tuple[Plasma, str]:
-    """Return a plasma and its TOML text; errors as `find_material`."""
+def find_plasma(name: str, sources: Sources, *, to_charge: bool = False) -> tuple[Plasma, str]:
+    """Return a plasma and its TOML text; errors as `find_material`.
+
+    `to_charge` True refuses one without electrons or without positive ions.
+    """
     from environments.catalogue import library_text, load_plasma, plasma_names, read_plasma
     from environments.errors import EnvironmentDataError
+    from environments.signs import refuse_one_sided
 
     toml = _toml("plasma", name, sources, sources.plasma_texts)
     if toml is None:
@@ -91,6 +95,8 @@ def find_plasma(name: str, sources: Sources) -> tuple[Plasma, str]:
         raise input_error(rewritten.problems, toml.document, file=toml.file, lines=toml.lines)
     try:
         plasma = read_plasma(rewritten.document, _folder(name, sources))
+        if to_charge:
+            refuse_one_sided(plasma)
         return plasma, _with_spectra(toml.text, plasma)
     except EnvironmentDataError as error:
         raise _in_file(error, toml, rewritten.origin) from None

@@ -95,8 +95,23 @@ def _span_problems(span: Span) -> Iterator[Problem]:
 
 
 def check_emitter(emitter: Emitter) -> None:
-    """Refuse an emitter that ends before it begins."""
-    _raise(_span_problems(emitter))
+    """Refuse an emitter that ends before it begins, or whose demand is none."""
+    _raise(itertools.chain(_span_problems(emitter), _demand_problems(emitter)))
+
+
+def _demand_problems(emitter: Emitter) -> Iterator[Problem]:
+    if emitter.below_V is not None and emitter.hold_V is not None:
+        yield Problem(
+            ("below_V",), "stands beside hold_V; give one of the two", value=emitter.below_V
+        )
+    for key, value in (("below_V", emitter.below_V), ("hold_V", emitter.hold_V)):
+        if value is not None and value > 0.5 * emitter.energy_eV:
+            yield Problem(
+                (key,),
+                "is more than half the volts that its electrons can climb",
+                value=value,
+                allowed=f"at most {0.5 * emitter.energy_eV:.6g}",
+            )
 
 
 def check_mode(mode: Mode) -> None:

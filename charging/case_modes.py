@@ -65,7 +65,7 @@ class Mode(Span):
 
 
 class Emitter(Span):
-    """A source on structure that sends electrons of one energy into the plasma."""
+    """A source on structure that sends electrons of one energy into the plasma, or a clamp."""
 
     name: Name
     current_A: float = Field(
@@ -75,6 +75,18 @@ class Emitter(Span):
         gt=0.0,
         le=1e5,
         description="none leaves once structure stands above this many volts",
+    )
+    below_V: float | None = Field(
+        default=None,
+        ge=-1e5,
+        le=1e5,
+        description="on demand: works while structure stands below; default: always",
+    )
+    hold_V: float | None = Field(
+        default=None,
+        ge=-1e5,
+        le=1e5,
+        description="a clamp: holds structure here by a current of either sign, up to current_A",
     )
 
     @model_validator(mode="after")

@@ -14,22 +14,22 @@ from typing import Annotated, ClassVar, Literal, Self, TypeAlias
 from pydantic import Discriminator, Field, Tag, ValidationInfo, model_validator
 
 from charging.case_checks import (
-    LONGEST_RUN_H,
     check_case,
-    check_event,
     check_limit,
     check_link,
     check_surface,
 )
 from charging.case_modes import Emitter, Mode
 from charging.case_orbit import Attitude, Orbit, OrbitFile, OrbitFixed
+from charging.case_plasma import PlasmaTable
+from charging.case_shape import MOST_SHAPES, Shape, check_shapes
+from charging.case_strings import ArrayString, Radiation
 from charging.case_types import (
     LONGEST_ORBIT_H,
     MOST_ENTRIES,
     CsvFile,
     Direction,
     FreeText,
-    Moment,
     Name,
     Positive,
     Reference,
@@ -90,34 +90,6 @@ class Sun(Table):
     moon: bool = Field(default=False, description="also look for eclipses by the Moon")
 
 
-class PlasmaEvent(Table):
-    """A second plasma mixed in: linear over the rise, whole for the hold, then fading."""
-
-    onset: Moment | None = Field(default=None, description="begin of the rise, UTC with Z")
-    onset_h: float | None = Field(default=None, ge=0.0, description="begin, hours from the start")
-    rise_min: float = Field(ge=0.0, le=60.0 * LONGEST_RUN_H)
-    hold_min: float = Field(ge=0.0, le=60.0 * LONGEST_RUN_H)
-    decay_min: float = Field(
-        gt=0.0, le=60.0 * LONGEST_RUN_H, description="time constant of the exponential decay"
-    )
-    use: Reference = Field(description="plasma of the event")
-
-    @model_validator(mode="after")
-    def _consistent(self) -> Self:
-        check_event(self)
-        return self
-
-
-class PlasmaTable(Table):
-    """Plasma around the spacecraft and events on top of it."""
-
-    use: Reference = Field(description="library name (halflit plasmas) or file")
-    accept_assumed: FreeText | None = Field(
-        default=None, description="reason why a plasma of assumed figures may carry a verdict"
-    )
-    event: tuple[PlasmaEvent, ...] = Field(default=(), max_length=MOST_ENTRIES)
-
-
 class Body(Table):
     """Size and collecting geometry of the whole spacecraft."""
 
@@ -126,13 +98,27 @@ class Body(Table):
     shadow: CsvFile | None = Field(
         default=None, description="table of lit shares of surfaces by direction of the Sun"
     )
+    barrier: bool = Field(
+        default=True, description="negative surfaces hold back electrons of their neighbours"
+    )
+    panels: int = Field(
+        default=800, ge=100, le=3000, description="panels of the field around [[shape]], about"
+    )
 
 
 class Emission(Table):
     """Choice among published emission laws."""
 
-    secondary_law: Literal["both", "sanders_inouye_1979", "lin_joy_2005"] = Field(
-        default="both", description="both: the verdict takes the worse"
+    # the names are those of `materials.secondary.YIELD_LAWS`, whose import would load numpy
+    secondary_law: Literal[
+        "both",
+        "sanders_inouye_1979",
+        "lin_joy_2005",
+        "sternglass_1954",
+        "draine_salpeter_1979",
+    ] = Field(
+        default="both",
+        description="both: an exponential law and one with a slow tail, the worse counts",
     )
     photo_escape: Literal["auto", "planar", "point source"] = Field(
         default="auto",
@@ -170,7 +156,13 @@ class Surface(Table):
     surface_state: Literal["as recorded", "clean", "air-exposed", "aged"] = Field(
         default="as recorded", description="state of the surface for photoemission"
     )
-    area_m2: float = Field(gt=0.0, le=1e5)
+    area_m2: float = Field(
+        default=0.0, gt=0.0, le=1e5, description="needed without face or faces, which give it"
+    )
+    face: Name | None = Field(default=None, description="of a [[shape]]: shape.face")
+    faces: tuple[Name, ...] = Field(
+        default=(), max_length=MOST_ENTRIES, description="several of them, instead of face"
+    )
     thickness_m: float | None = Field(default=None, gt=0.0, le=1.0, description="of a dielectric")
     normal: Direction | None = Field(default=None, description="outward, body axes")
     tracks_sun: bool = Field(default=False, description="turns about body y towards the Sun")
@@ -190,6 +182,11 @@ class Surface(Table):
     def _consistent(self) -> Self:
         check_surface(self)
         return self
+
+    @property
+    def lies_on(self) -> tuple[str, ...]:
+        """Faces of shapes that make up the surface; none without shapes."""
+        return self.faces if self.face is None else (self.face,)
 
 
 class Link(Table):
@@ -214,17 +211,32 @@ class MarginPolicy(Table):
 class Limit(Table):
     """A limit that replaces the default of its kind and scope, else adds to them."""
 
-    kind: Literal["normal", "inverted", "field"] = Field(
-        description="surface below structure, surface above structure, field in a dielectric"
+    kind: Literal[
+        "normal",
+        "inverted",
+        "field",
+        "neighbour normal",
+        "neighbour inverted",
+        "neighbour",
+        "energy",
+        "structure",
+    ] = Field(
+        description="surface below or above structure; field in a dielectric; dielectric below or "
+        "above a neighbouring conductor; difference of neighbours; energy stored in a film; "
+        "structure against the plasma"
     )
     surfaces: tuple[Name, ...] | None = Field(
         default=None, max_length=MOST_ENTRIES, description="default: all"
     )
     allowed_V: Positive | None = None
     allowed_V_m: Positive | None = Field(default=None, description="for kind = field")
+    allowed_J: Positive | None = Field(default=None, description="for kind = energy")
     requirement_id: FreeText | None = None
     source_document: FreeText | None = None
     clause: FreeText | None = None
+    clause_verified: bool = Field(
+        default=True, description="false: nobody has read the clause, so nothing is within it"
+    )
     margin_policy: MarginPolicy | None = None
     reason: FreeText | None = None
 
@@ -238,7 +250,29 @@ class Review(Table):
     """What a design review evaluates besides the case's own plasma."""
 
     plasmas: tuple[Reference, ...] = Field(default=(), max_length=MOST_ENTRIES)
-    ages: tuple[Literal["begin", "end"], ...] = Field(default=("begin", "end"), max_length=2)
+    ages: tuple[Literal["begin", "end"], ...] = Field(
+        default=("begin", "end"),
+        min_length=1,
+        max_length=2,
+        description="begin: surface states as given; end: all aged",
+    )
+    criteria: Literal["ECSS", "NASA", "JAXA"] = Field(
+        default="ECSS", description="set of default limits; only the text of the first was read"
+    )
+    draws: int = Field(
+        default=500, ge=500, le=100_000, description="random draws of the properties, at least"
+    )
+    seed: int = Field(default=1, ge=0, le=2**32 - 1, description="of these draws")
+    statistical: FreeText | None = Field(
+        default=None,
+        description="reason why draws that all pass may override a corner that does not",
+    )
+    array_voltage_V: Positive | None = Field(
+        default=None, description="largest voltage of a solar array; above 70 V: specialist review"
+    )
+    crew_outside: bool = Field(
+        default=False, description="crew may be outside the vehicle: nothing is within for them"
+    )
 
 
 class Case(Table):
@@ -252,10 +286,13 @@ class Case(Table):
     plasma: PlasmaTable
     body: Body
     emission: Emission = Field(default_factory=Emission)
+    shape: tuple[Shape, ...] = Field(default=(), max_length=MOST_SHAPES)
     surface: tuple[Surface, ...] = Field(max_length=MOST_ENTRIES)
     link: tuple[Link, ...] = Field(default=(), max_length=MOST_ENTRIES)
     mode: tuple[Mode, ...] = Field(default=(), max_length=MOST_ENTRIES)
     emitter: tuple[Emitter, ...] = Field(default=(), max_length=MOST_ENTRIES)
+    string: tuple[ArrayString, ...] = Field(default=(), max_length=MOST_ENTRIES)
+    radiation: Radiation = Field(default_factory=Radiation)
     limit: tuple[Limit, ...] = Field(default=(), max_length=MOST_ENTRIES)
     review: Review = Field(default_factory=Review)
 
@@ -264,6 +301,7 @@ class Case(Table):
     @model_validator(mode="after")
     def _consistent(self, info: ValidationInfo) -> Self:
         check_case(self, orbit_only=bool(info.context and info.context.get("orbit_only")))
+        check_shapes(self)
         return self
 
     @property

@@ -22,16 +22,24 @@ from charging.cautions import cautions
 from charging.currents.surface import MECHANISMS, electron_sheath
 from charging.errors import InputError
 from charging.flight import moments
+from charging.jump_rows import jump_rows
 from charging.orbit_run import TOLERANCE, CaseRun, ModeRun
+from charging.result_plasma import (
+    plasma_attributes,
+    population_labels,
+    population_moments,
+    region_attributes,
+    region_flags,
+)
+from charging.result_reader import opened_result, refuse_incomplete
 from charging.review.limits import requirements
 from charging.spacecraft import surface_materials
 from charging.summary import peak_times_s
-from charging.surroundings import event_strength, named_times
+from charging.surroundings import named_times
 
 Array = NDArray[np.float64]
 
 ALL_MECHANISMS = (*MECHANISMS, "conduction", "bias_or_emitter")
-REGION_MASKS = {"penumbra": 1, "umbra": 2, "plasma_event": 4, "mode_interval": 8}
 
 
 class Variable(NamedTuple):
@@ -49,6 +57,11 @@ VARIABLES: Mapping[str, Variable] = {
     "electric_field": Variable(
         ("surface", "time"), "V m-1", "voltage across a dielectric over its thickness, 0 without"
     ),
+    "barrier_height": Variable(
+        ("surface", "time"),
+        "V",
+        "height that photo- and secondary electrons must climb to leave",
+    ),
     "current_density": Variable(
         ("mechanism", "surface", "time"),
         "A m-2",
@@ -56,6 +69,9 @@ VARIABLES: Mapping[str, Variable] = {
     ),
     "emitter_current": Variable(
         ("time",), "A", "current of all emitters onto structure, positive charge arriving"
+    ),
+    "string_current": Variable(
+        ("time",), "A", "current of all strings onto structure, positive charge arriving"
     ),
     "charge_residual": Variable(
         ("node", "time"), "C", "charge arrived by independent quadrature minus charge stored"
@@ -70,9 +86,9 @@ VARIABLES: Mapping[str, Variable] = {
     "sun_direction": Variable(
         ("axis", "time"), "1", "unit vector to the Sun, inertial (fixed case: body axes)"
     ),
-    "region": Variable(("time",), None, "light, plasma event and mode"),
+    "region": Variable(("time",), None, "light, plasma event, mode and region of space"),
     "population_density": Variable(("population", "time"), "m-3", "number density"),
-    "population_temperature": Variable(("population",), "eV", "temperature"),
+    "population_temperature": Variable(("population", "time"), "eV", "temperature"),
     "population_current_density": Variable(
         ("population", "time"), "A m-2", "one-sided current density at plasma potential"
     ),
@@ -97,7 +113,7 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
         Dimensions surface, time, mechanism, node, population, axis; labels as auxiliary
         coordinates ``surface_name`` and so on (``ds.set_xindex("surface_name")``).
     """
-    net, path = mode.net, mode.trajectories[member]
+    net, path = mode.net.of(member), mode.trajectories[member]
     # the moments of the extremes belong to the file; times are kept to the nanosecond
     times = np.union1d(mode.times_s, peak_times_s(mode, member))
     times = named_times(run.loaded.case, np.unique(np.rint(times * 1e9)) / 1e9)
@@ -113,11 +129,11 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
     by_mechanism[: len(MECHANISMS)] = np.moveaxis(flows.surface_A_m2, 0, -1).transpose(1, 0, 2)
     conduction = by_mechanism[ALL_MECHANISMS.index("conduction")]
     conduction[net.film_surface] = flows.film_A_m2.T
-    emitted = flows.emitter_A.sum(axis=-1)
+    emitted, strung = flows.emitter_A.sum(axis=-1), flows.string_A.sum(axis=-1)
     bonded = net.surface_node == 0
     if bonded.any():  # structure's current, over the faces that are structure
         emitter = by_mechanism[ALL_MECHANISMS.index("bias_or_emitter")]
-        emitter[bonded] = emitted / net.area_m2[bonded].sum()
+        emitter[bonded] = (emitted + strung) / net.area_m2[bonded].sum()
     field = np.zeros_like(surface)
     field[net.film_surface] = (state[:, net.film_node] / net.film_thickness_m).T
 
@@ -125,18 +141,17 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
     residual = np.stack(
         [np.interp(times, audit.ends_s, column, left=0.0) for column in audit.residual_C.T]
     )
-    electrons, ions = mode.balance.models[member].electrons, mode.balance.models[member].ions
-    groups = (electrons, ions)
-    shares = np.concatenate([setting.strength[:, g.plasma] for g in groups], axis=1).T
-    density = np.concatenate([g.density_m3 for g in groups])
-    thermal = np.concatenate([g.thermal_current_A_m2 for g in groups])
-    values: dict[str, Array | NDArray[np.int8]] = {
+    electrons = mode.balance.models[member].electrons
+    plasma = population_moments(mode, times, setting)
+    values: dict[str, Array | NDArray[np.int16]] = {
         "potential": surface,
         "structure_potential": node_potential[:, 0],
         "differential_potential": surface - node_potential[:, 0],
         "electric_field": field,
+        "barrier_height": mode.balance.heights(np.full(len(times), member), state).T,
         "current_density": by_mechanism,
         "emitter_current": emitted,
+        "string_current": strung,
         "charge_residual": residual,
         "illumination": shot.illumination,
         "illuminated_fraction": shot.lit_share,
@@ -144,10 +159,10 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
         "surface_temperature": temperature.T,
         "position": shot.position_m,
         "sun_direction": shot.sun_direction,
-        "region": _region(mode, times, shot.illumination),
-        "population_density": shares * density[:, None],
-        "population_temperature": np.concatenate([g.temperature_eV for g in groups]),
-        "population_current_density": shares * thermal[:, None],
+        "region": region_flags(mode, times, shot.illumination),
+        "population_density": plasma.density_m3,
+        "population_temperature": plasma.temperature_eV,
+        "population_current_density": plasma.current_A_m2,
         "electron_debye_length": electron_sheath(electrons, setting.strength)[0],
         "surface_area": net.area_m2,
     }
@@ -174,10 +189,8 @@ def with_attributes(dataset: xr.Dataset) -> xr.Dataset:
             attrs["units"] = variable.units
         dataset[name].attrs = attrs
         dataset[name].encoding = {"_FillValue": None}
-    dataset["region"].attrs |= {
-        "flag_masks": np.array(list(REGION_MASKS.values()), dtype=np.int8),
-        "flag_meanings": " ".join(REGION_MASKS),
-    }
+    regions = json.loads(str(dataset.attrs.get("plasma_regions", "[]")))
+    dataset["region"].attrs |= region_attributes(regions)
     for name, text in {
         "surface_name": "name of the surface",
         "mechanism_name": "name of the current",
@@ -216,7 +229,7 @@ def attributes(
             "An estimate. Program requirements, applicable standards and qualified specialists "
             "decide; crewed use needs its own safety process. Not modelled: internal charging, "
             "discharge transients, plumes, electron exchange between surfaces, surface "
-            "conduction, potential barriers raised by neighbours."
+            "conduction."
         ),
         "halflit_version": __version__,
         "mode": mode.name,
@@ -246,12 +259,14 @@ def attributes(
             ],
             ensure_ascii=False,
         ),
+        **plasma_attributes(mode),
         "seeds": "none",
-        "march_method": "RODAS, order 4(3), dense output",
+        "march_method": f"{TOLERANCE.method.name}, dense output",
         "march_absolute_tolerance_V": TOLERANCE.absolute,
         "march_relative_tolerance": TOLERANCE.relative,
         "march_steps": len(mode.trajectories[member].step_s),
         "march_attempts": mode.trajectories[member].attempts,
+        "branch_jumps": json.dumps(jump_rows(loaded, mode, member), ensure_ascii=False),
         "charge_audit_relative": audit_relative,
         "limits": json.dumps(
             [
@@ -303,32 +318,7 @@ def _kept(loaded: LoadedCase) -> str:
     absent = sorted(set(loaded.files.sha256) - set(loaded.files.texts))
     if not absent:
         return "this file holds all that a rerun needs"
-    return f"a rerun also needs {', '.join(absent)}, binary or very long: not held here"
-
-
-def population_labels(mode: ModeRun) -> list[str]:
-    """Names of all populations, electrons first, in the order of the kernel."""
-    labels = []
-    for electrons in (True, False):
-        for plasma in mode.plasmas:
-            number = 0
-            for p in plasma.populations:
-                if (p.species.charge_number < 0) == electrons:
-                    number += 1
-                    labels.append(f"{plasma.name}: {p.species.name} {number}")
-    return labels
-
-
-def _region(mode: ModeRun, times: Array, light: Array) -> NDArray[np.int8]:
-    flags = np.zeros(light.shape, dtype=np.int8)
-    flags[(light > 0.0) & (light < 1.0)] |= REGION_MASKS["penumbra"]
-    flags[light <= 0.0] |= REGION_MASKS["umbra"]
-    for event in mode.around.episodes:
-        # below 1 % of its strength an event is over
-        flags[event_strength(times, event) > 0.01] |= REGION_MASKS["plasma_event"]
-    within = np.array([bool(leg.modes) for leg in mode.way.legs])
-    flags[within[mode.around.leg(times)]] |= REGION_MASKS["mode_interval"]
-    return flags
+    return f"a rerun also needs {', '.join(absent)}, binary: not held here"
 
 
 def read_result(path: Path) -> xr.Dataset:
@@ -344,13 +334,6 @@ def read_result(path: Path) -> xr.Dataset:
     if not path.is_file():
         reason = "is a folder without result.nc" if path.is_dir() else "does not exist"
         raise InputError(reason, file=str(path), allowed="a result folder or its result.nc")
-    try:
-        with xr.open_dataset(path, engine="netcdf4") as dataset:
-            dataset.load()
-    except (OSError, ValueError) as error:
-        raise InputError(f"cannot be read as NetCDF ({error})", file=str(path)) from error
-    lacking = [name for name in VARIABLES if name not in dataset]
-    if lacking or "case_text" not in dataset.attrs:
-        what = f"variable {lacking[0]}" if lacking else "attribute case_text"
-        raise InputError(f"has no {what}, so it is no result of halflit", file=str(path))
+    dataset = opened_result(path)
+    refuse_incomplete(dataset, path, VARIABLES)
     return dataset

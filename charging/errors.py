@@ -14,6 +14,7 @@ KeyPath: TypeAlias = tuple[str | int, ...]
 """Way to a value in a file: table names, array indices from 0, keys."""
 
 _INDENT = "\n       "  # puts the second line under the first one's text, after "error: "
+_LONGEST = 1500  # characters of a sentence; names from a file cannot flood a terminal
 
 
 class HalflitError(Exception):
@@ -81,16 +82,17 @@ class InputError(HalflitError):
         place = "" if self.file is None else printable(self.file)
         if place and self.line is not None:
             place += f":{self.line}"
-        first = f"{place}: {self.message}" if place else self.message
+        message = printable(self.message, _LONGEST)
+        first = f"{place}: {message}" if place else message
         if not first.endswith((".", "?", "!")):
             first += "."
         second = []
         if self.nearest is not None:
             second.append(f'Nearest: "{printable(self.nearest)}".')
         if self.allowed is not None:
-            second.append(f"Allowed: {self.allowed}.")
+            second.append(f"Allowed: {printable(self.allowed, _LONGEST)}.")
         if self.next_step is not None:
-            second.append(self.next_step)
+            second.append(printable(self.next_step, _LONGEST))
         text = first
         if second:
             text += _INDENT + " ".join(second)
@@ -136,8 +138,11 @@ class NoSolutionError(HalflitError):
         self.next_step = next_step
 
     def __str__(self) -> str:
-        first = self.message if self.message.endswith(".") else f"{self.message}."
-        return first if self.next_step is None else f"{first}{_INDENT}{self.next_step}"
+        message = printable(self.message, _LONGEST)
+        first = message if message.endswith(".") else f"{message}."
+        if self.next_step is None:
+            return first
+        return f"{first}{_INDENT}{printable(self.next_step, _LONGEST)}"
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,7 +11,9 @@ from charging.case_files import NO_FILES, CaseFiles
 from charging.case_modes import Mode
 from charging.case_orbit import Attitude as AttitudeTable
 from charging.case_orbit import OrbitKepler
-from charging.case_tables import Case, Surface
+from charging.case_tables import Case
+from charging.errors import InputError
+from charging.incidence import components, cosines
 from charging.schedule import Leg, legs
 from environments.attitude import to_body
 from environments.eclipse import Eclipse, find_eclipses
@@ -101,6 +103,64 @@ class Path:
                 target[..., here] = part
         return whole
 
+    def velocity(self, time_s: Array) -> Array:
+        """Velocity at times [m s-1, 3, N], inertial; zeros for a fixed case."""
+        if self.trajectory is None:
+            return np.zeros((3, len(time_s)))
+        return self.trajectory.position_velocity(time_s)[1]
+
+    def in_body(self, number: int, time_s: Array, vector: Array) -> Array:
+        """Inertial vectors [3, N] in body axes, in one leg; those of a fixed case are already.
+
+        Raises
+        ------
+        InputError
+            The body spins and its turns are not followed.
+        """
+        leg = self.legs[number]
+        if self.trajectory is None:
+            return vector
+        if leg.attitude.law == "spin" and not leg.attitude.resolved:
+            raise InputError(
+                "attitude.resolved: strings that move through a field need every turn of the spin",
+                key=("attitude", "resolved"),
+                value=leg.attitude.resolved,
+                allowed="true, or strings without negative_end_m and positive_end_m",
+            )
+        shot = geometry(self.trajectory, time_s)
+        axes = self._law(leg.attitude).axes(
+            shot.seconds, shot.position_m, shot.velocity_m_s, shot.sun_direction
+        )
+        return to_body(axes, vector)
+
+    def along_normals(self, number: int, time_s: Array, vector: Array) -> Array:
+        """Components [S, N] of inertial vectors [3, N] along the outward normals, in one leg.
+
+        Vectors of a fixed case are in body axes.
+
+        Raises
+        ------
+        InputError
+            The body spins and its turns are not followed.
+        """
+        leg = self.legs[number]
+        if self.trajectory is None:
+            sun = np.broadcast_to(np.array(leg.sun_direction)[:, None], vector.shape)
+            return components(self.case.surface, vector, sun, leg)
+        if leg.attitude.law == "spin" and not leg.attitude.resolved:
+            raise InputError(
+                "attitude.resolved: ions that stream past need every turn of the spin",
+                key=("attitude", "resolved"),
+                value=leg.attitude.resolved,
+                allowed="true, or a plasma without streaming ions",
+            )
+        shot = geometry(self.trajectory, time_s)
+        axes = self._law(leg.attitude).axes(
+            shot.seconds, shot.position_m, shot.velocity_m_s, shot.sun_direction
+        )
+        sun = to_body(axes, shot.sun_direction)
+        return components(self.case.surface, to_body(axes, vector), sun, leg)
+
     def lowest_m(self) -> float:
         """Least distance from the Earth's centre along the run [m]; inf for a fixed case."""
         if self.trajectory is None:
@@ -134,6 +194,19 @@ class Path:
             cosine, lit = self._faces(leg, body)
         return Snapshot(shot.position_m, shot.sun_direction, light, cosine, lit)
 
+    def sun_in_body(self, time_s: float) -> tuple[Array, float, Leg]:
+        """Direction of the Sun in body axes [3], illumination, and the leg at a time."""
+        inner = [leg.start_s for leg in self.legs[1:]]
+        number = int(np.searchsorted(inner, time_s, side="right"))
+        leg, shot = self.legs[number], self.in_leg(number, np.array([time_s]))
+        if self.trajectory is None:
+            return shot.sun_direction[:, 0], float(shot.illumination[0]), leg
+        seen = geometry(self.trajectory, np.array([time_s]))
+        axes = self._law(leg.attitude).axes(
+            seen.seconds, seen.position_m, seen.velocity_m_s, seen.sun_direction
+        )
+        return to_body(axes, seen.sun_direction)[:, 0], float(shot.illumination[0]), leg
+
     def _law(self, table: AttitudeTable) -> Attitude:
         match table.law:
             case "nadir":
@@ -160,8 +233,12 @@ class Path:
 
     def _faces(self, leg: Leg, sun_body: Array) -> tuple[Array, Array]:
         """Signed cosines and lit shares [S, N] with the Sun in body directions [3, N]."""
-        cosine = _cosines(self.case.surface, sun_body, leg)
+        cosine = cosines(self.case.surface, sun_body, leg)
         lit = np.ones(cosine.shape)
+        if self.case.shape:
+            from charging.shape.views import shaped_light  # costs time only with shapes
+
+            cosine, lit = shaped_light(self.case, sun_body, leg, cosine)
         for i, surface in enumerate(self.case.surface):
             name = surface.shadow or self.case.body.shadow
             if name is not None and surface.name in self.files.shadows[name].surfaces:
@@ -180,7 +257,7 @@ class Path:
             total += front
             shaded += front * lit
         lit = np.where(total > 0.0, shaded / np.where(total > 0.0, total, 1.0), 1.0)
-        bodily = [i for i, surface in enumerate(self.case.surface) if not surface.tracks_sun]
+        bodily = [i for i, s in enumerate(self.case.surface) if s.normal is not None]
         if bodily:
             normals = np.array([self.case.surface[i].normal for i in bodily])
             total[bodily] = spin_averaged_cosine(sun_body, normals)
@@ -321,20 +398,3 @@ def contacts(eclipse: Eclipse) -> list[float]:
 def moments(case: Case, time_s: Array) -> NDArray[np.datetime64]:
     """UTC of times after the start, leap seconds counted; see `environments.timescales`."""
     return utc_at(epoch64(case), time_s)
-
-
-def _cosines(surfaces: Sequence[Surface], sun_body: Array, leg: Leg) -> Array:
-    """Signed cosine of incidence [S, N]; a wing's back is the negative of its front."""
-    if not leg.parked:
-        front = np.hypot(sun_body[0], sun_body[2])  # the wing turns about body y
-    elif leg.parked_normal is not None:
-        front = (np.array(leg.parked_normal)[:, None] * sun_body).sum(axis=0)
-    else:
-        front = np.hypot(sun_body[0], sun_body[2]) * np.cos(np.radians(leg.parked_angle_deg))
-    rows = []
-    for surface in surfaces:
-        if surface.tracks_sun:
-            rows.append(front if surface.side == "front" else -front)
-        else:
-            rows.append((np.array(surface.normal)[:, None] * sun_body).sum(axis=0))
-    return np.array(rows)

@@ -17,6 +17,7 @@ from charging.currents.emission import (
     law_of,
 )
 from charging.currents.tables import Yield, flux_nodes
+from materials.crossover import crossovers
 from materials.record import Material
 from materials.secondary import (
     YIELD_LAWS,
@@ -24,6 +25,7 @@ from materials.secondary import (
     fitted_range_eV,
     isotropic_yield,
     normal_yield,
+    printed_form,
     true_secondary_peak,
 )
 
@@ -46,8 +48,13 @@ class Onset:
         Above it more electrons stay than leave; None: at no temperature do as many leave.
     anticritical_temperature_eV : float or None
         Below it as well; None: none above 0.5 eV.
-    fitted_to_eV : float
-        Impact energy up to which the secondary law follows data [eV]; nan without emission.
+    fitted_to_eV : float or None
+        Impact energy up to which the secondary law follows data [eV]; None without emission.
+    first_crossover_eV, second_crossover_eV : float or None
+        Impact energies between which more electrons leave than arrive; None where absent.
+    as_printed_eV : float or None
+        Critical temperature with the law as its authors printed it, whose maximum is not
+        exactly the stated one.
     """
 
     material: str
@@ -56,7 +63,10 @@ class Onset:
     angle: str
     critical_temperature_eV: float | None
     anticritical_temperature_eV: float | None
-    fitted_to_eV: float
+    fitted_to_eV: float | None
+    first_crossover_eV: float | None
+    second_crossover_eV: float | None
+    as_printed_eV: float | None
 
 
 def onset_temperatures(material: Material | str) -> tuple[Onset, ...]:
@@ -92,12 +102,25 @@ def onset_temperatures(material: Material | str) -> tuple[Onset, ...]:
     return tuple(_onset(record, law, angle) for angle in ANGLES for law in laws)
 
 
-def law_spread_eV(rows: Sequence[Onset]) -> tuple[float, float] | None:
-    """Lowest and highest critical temperature over the laws, isotropic; None if none has any."""
+def law_spread_eV(rows: Sequence[Onset], angle: str = "isotropic") -> tuple[float, float] | None:
+    """Lowest and highest critical temperature over the laws at an angle; None if none has any."""
     found = [
         row.critical_temperature_eV
         for row in rows
-        if row.angle == "isotropic" and row.critical_temperature_eV is not None
+        if row.angle == angle and row.critical_temperature_eV is not None
+    ]
+    return (min(found), max(found)) if found else None
+
+
+def printed_difference(rows: Sequence[Onset], law: str) -> tuple[float, float] | None:
+    """Range of the shares by which a law as printed moves the critical temperature of rows.
+
+    None where no row has both temperatures.
+    """
+    found = [
+        row.as_printed_eV / row.critical_temperature_eV - 1.0
+        for row in rows
+        if row.law == law and row.critical_temperature_eV and row.as_printed_eV
     ]
     return (min(found), max(found)) if found else None
 
@@ -137,27 +160,30 @@ def roots_of_average(total: Yield) -> tuple[float | None, float | None]:
 
 def _onset(material: Material, law: YieldLaw, angle: str) -> Onset:
     if not material.emits:
-        return Onset(material.name, law, "none", angle, None, None, float("nan"))
+        return Onset(material.name, law, "none", angle, None, None, None, None, None, None)
     isotropic = angle == "isotropic"
     peak = true_secondary_peak(material)
     peak_eV = material.value("secondary_yield_peak_energy_eV")
     number = material.value("mean_atomic_number")
     scattered = backscatter_yield(material, isotropic=isotropic)
+    printed = printed_form(law)
 
-    def total(energy_eV: Array) -> Array:
+    def total(energy_eV: Array, height: float = 1.0, place: float = 1.0) -> Array:
+        most, where = height * peak, place * peak_eV
         if isotropic:
             free = isotropic_yield(
                 energy_eV,
                 law=law,
-                peak_yield=peak,
-                peak_energy_eV=peak_eV,
+                peak_yield=most,
+                peak_energy_eV=where,
                 mean_atomic_number=number,
             )
         else:
-            free = normal_yield(energy_eV, law=law, peak_yield=peak, peak_energy_eV=peak_eV)
+            free = normal_yield(energy_eV, law=law, peak_yield=most, peak_energy_eV=where)
         return free + scattered(energy_eV)
 
     critical, anticritical = roots_of_average(total)
+    first, second = crossovers(total)
     return Onset(
         material.name,
         law,
@@ -166,4 +192,7 @@ def _onset(material: Material, law: YieldLaw, angle: str) -> Onset:
         critical,
         anticritical,
         fitted_range_eV(law, peak_eV)[1],
+        first,
+        second,
+        roots_of_average(lambda E: total(E, printed.height, printed.place))[0],
     )

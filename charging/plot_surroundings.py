@@ -104,7 +104,8 @@ def _plasma_strip(axes: Axes, along: Course) -> None:
     calm = max(free, key=lambda s: _place(axes, s.end_s) - _place(axes, s.start_s))
     _name(axes, calm, (along.base_plasma,), INK)
     entries = [("plasma event", EVENT)] if events else []
-    _key(axes, [*entries, ("by mode", SWITCHED)] if switched else entries)
+    other = "other region" if along.by_region else "by mode"
+    _key(axes, [*entries, (other, SWITCHED)] if switched else entries)
 
 
 def _mode_strip(axes: Axes, along: Course, modes: list[Stretch],

@@ -64,6 +64,8 @@ class Course:
     base_plasma : str
     modes, emission : tuple of Stretch
         Interval modes, those that overlap joined by "+"; where emitters send electrons out.
+    by_region : bool
+        The base is the region of space with the longest stay, other plasmas are regions too.
     """
 
     seconds: Array
@@ -77,6 +79,7 @@ class Course:
     base_plasma: str
     modes: tuple[Stretch, ...]
     emission: tuple[Stretch, ...]
+    by_region: bool = False
 
     @property
     def long(self) -> bool:
@@ -126,6 +129,11 @@ def course(dataset: xr.Dataset) -> Course:
     names = [str(n).rpartition(":")[0] for n in dataset["population_name"].values]
     in_event = (region & masks["plasma_event"]) > 0
     present = _present(dataset, names)
+    places = _places(dataset, region)
+    base = names[0]
+    if places:
+        base = max(places, key=lambda name: int(places[name].sum()))
+        present |= {name: flags for name, flags in places.items() if name != base}
     in_mode = (region & masks.get("mode_interval", 0)) > 0
     emitted = np.asarray(dataset["emitter_current"].values, dtype=np.float64)
     return Course(
@@ -137,10 +145,30 @@ def course(dataset: xr.Dataset) -> Course:
         penumbra=stretches(seconds, (region & masks["penumbra"]) > 0),
         events=_named(seconds, present, in_event),
         switched=_named(seconds, present, ~in_event),
-        base_plasma=names[0],
+        base_plasma=base,
         modes=_modes(dataset, seconds, in_mode),
         emission=stretches(seconds, emitted > 0.0, "emitter"),
+        by_region=bool(places),
     )
+
+
+def _places(dataset: xr.Dataset, region: NDArray[np.int64]) -> dict[str, Flags]:
+    """When the spacecraft is in each region of space that it meets [T]."""
+    attrs = dataset["region"].attrs
+    if "flag_values" not in attrs:
+        return {}
+    found = {}
+    rows = zip(
+        str(attrs["flag_meanings"]).split(),
+        np.atleast_1d(attrs["flag_masks"]).tolist(),
+        np.atleast_1d(attrs["flag_values"]).tolist(),
+        strict=True,
+    )
+    for meaning, mask, value in rows:
+        within = (region & mask) == value
+        if mask != value and within.any():  # a field of bits, no single one
+            found[meaning.replace("_", " ")] = within
+    return found
 
 
 def _present(dataset: xr.Dataset, names: list[str]) -> dict[str, Flags]:

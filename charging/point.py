@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from types import MappingProxyType
 
@@ -34,11 +34,12 @@ from charging.currents.surface import (
     surface_model,
 )
 from charging.errors import NoSolutionError
+from charging.point_notes import angle_notes, general_notes, law_notes
 from environments.errors import EnvironmentDataError
-from environments.plasma import Plasma, moments, warnings_of
+from environments.plasma import Plasma
 from environments.spectrum import SolarSpectrum, solar_spectrum
-from materials.record import EMISSION_NEEDED, EMISSION_OPTIONAL, Material
-from materials.secondary import YIELD_LAWS, YieldLaw, fitted_range_eV
+from materials.record import Material
+from materials.secondary import YIELD_LAWS, YieldLaw
 
 Array = NDArray[np.float64]
 
@@ -213,7 +214,7 @@ def floating_point(
     -1177
     """
     record = in_surface_state(as_material(material), surface_state)
-    surrounding = as_plasma(plasma)
+    surrounding = as_plasma(plasma, to_charge=True)
     as_choice("photo_escape", photo_escape, PHOTO_GEOMETRIES)
     if law is not None:  # overrides the choice of the record
         rest = {key: value for key, value in record.laws.items() if key != "secondary_law"}
@@ -276,8 +277,9 @@ def floating_point(
         other_laws_reached_V=MappingProxyType(others),
         curve=_curve(mine, found.roots, light),
         notes=(
-            *_law_notes(record, surrounding, chosen, found.reached_V, others),
-            *_notes(record, surrounding, found.roots, light, collection),
+            *law_notes(record, surrounding, chosen, found.reached_V, others),
+            *angle_notes(record, surrounding, chosen, light, radius, collection),
+            *general_notes(record, surrounding, found.roots, light, collection),
         ),
     )
 
@@ -311,44 +313,6 @@ def _law(law: str | None, material: Material) -> YieldLaw:
     return next(known for known in YIELD_LAWS if known == law)
 
 
-CHARGED_V = -100.0
-"""Below this a surface counts as charged when two laws are compared."""
-
-
-def _law_notes(
-    material: Material,
-    plasma: Plasma,
-    law: YieldLaw,
-    reached_V: float,
-    others: Mapping[str, float | None],
-) -> Iterator[str]:
-    """What the choice of the secondary law means here, and of the spectra."""
-    for other, volts in others.items():
-        if volts is None or (reached_V < CHARGED_V) == (volts < CHARGED_V):
-            continue
-        charges, leaves = (law, other) if reached_V < CHARGED_V else (other, law)
-        worst = min(reached_V, volts)
-        yield (
-            f"{charges} charges it to {worst:.0f} V, {leaves} leaves it uncharged: the law "
-            "decides, take the worse"
-        )
-    if material.emits:
-        low, high = fitted_range_eV(law, material.value("secondary_yield_peak_energy_eV"))
-        arriving = [
-            energy
-            for energy, p in zip(
-                moments(plasma)["flux_mean_energy_eV"], plasma.populations, strict=True
-            )
-            if p.species.charge_number < 0
-        ]
-        if max(arriving) > high:
-            yield (
-                f"electrons of {max(arriving):.3g} eV on average: beyond the {low:.3g} to "
-                f"{high:.3g} eV to which {law} was fitted"
-            )
-    yield from (f'plasma "{plasma.name}": {warning}' for warning in warnings_of(plasma))
-
-
 def _curve(model: SurfaceModel, roots: tuple[Root, ...], light: float) -> CurrentCurve:
     """Tabulate the currents over three times the span of the roots, at least ±30 V."""
     low = max(-SEARCH_V, 3.0 * min(-10.0, *(root.potential_V for root in roots)))
@@ -360,32 +324,3 @@ def _curve(model: SurfaceModel, roots: tuple[Root, ...], light: float) -> Curren
         potential,
         MappingProxyType({name: currents[:, i] for i, name in enumerate(MECHANISMS)}),
     )
-
-
-def _notes(
-    material: Material, plasma: Plasma, roots: tuple[Root, ...], light: float, collection: str
-) -> tuple[str, ...]:
-    notes = []
-    if sum(root.stable for root in roots) > 1:
-        notes.append("several stable potentials: the history of the surface decides")
-    for basis, words in (("assumed", "assumed"), ("memory", "from memory, unchecked")):
-        keys = [
-            key
-            for key in (*EMISSION_NEEDED, *EMISSION_OPTIONAL)
-            if key in material.values and material.values[key].basis == basis
-        ]
-        if light > 0.0 and material.photoyield is not None and material.photoyield.basis == basis:
-            keys.append("photoyield")
-        if keys:
-            notes.append(f'material "{material.name}": {words}: {", ".join(keys)}')
-    if light > 0.0 and material.photoyield is not None:
-        notes.append(f"level of the photoyield curve: {material.photoyield.level}")
-    if plasma.basis in ("assumed", "memory"):
-        words = "assumed" if plasma.basis == "assumed" else "from memory, unchecked"
-        notes.append(f'plasma "{plasma.name}": its figures are {words}')
-    if collection == "auto":
-        notes.append("the blend of plane and sphere by sheath length is assumed")
-    notes.append(
-        "one-sided patch: no conduction, no barrier raised by neighbours, no exchange of electrons"
-    )
-    return tuple(notes)

@@ -6,17 +6,21 @@ import json
 import os
 import re
 import shutil
+import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
 from charging.errors import InputError
 
-MARK = "summary.json"
-"""Every result folder holds this file, with the key `PROGRAM`."""
+MARKS = ("summary.json", "review.json")
+"""Every result folder holds one of these files, with the key `PROGRAM`."""
 
 PROGRAM = "halflit_version"
-OWN = re.compile(r"summary\.json|surfaces\.csv|result(_\d+)?(_[a-z_0-9]+)?(\.nc)?|[a-z]+\.png")
+OWN = re.compile(
+    r"report\.html|review\.json|summary\.json|surfaces\.csv"
+    r"|result(_\d+)?(_[a-z_0-9]+)?(\.nc)?|[a-z]+\.png"
+)
 """Names that a run writes; a folder with anything else is not ours to replace."""
 
 
@@ -29,6 +33,13 @@ def check_target(target: Path) -> None:
         As `result_folder`.
     """
     target = target.resolve()
+    try:
+        str(target).encode(sys.getfilesystemencoding())  # as the NetCDF library will
+    except UnicodeError:
+        raise InputError(
+            f"--out {target}: has characters that no file name may have in this locale",
+            allowed="other characters, or a locale with UTF-8 (LC_ALL=C.UTF-8)",
+        ) from None
     if target.exists():
         _refuse_foreign(target)
     standing = next(p for p in target.parents if p.exists())
@@ -88,8 +99,8 @@ def _refuse_foreign(target: Path) -> None:
     strange = [name for name in names if not OWN.fullmatch(name)]
     if strange:
         reason = f"holds {strange[0]}, which no run wrote"
-    elif not _is_ours(target / MARK):
-        reason = f"holds no {MARK} of this program"
+    elif not any(_is_ours(target / mark) for mark in MARKS):
+        reason = f"holds no {MARKS[0]} of this program"
     else:
         return
     raise InputError(

@@ -17,6 +17,7 @@ from charging.case import LoadedCase
 from charging.cautions import cautions
 from charging.clock import iso_time
 from charging.dataset import mode_dataset
+from charging.jump_rows import jump_rows
 from charging.orbit_run import CaseRun, ModeRun
 from charging.orbit_view import eclipse_rows
 from charging.result_folder import result_folder
@@ -63,7 +64,7 @@ def limit_row(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> dict[s
         "kind": requirement.kind,
         "requirement_id": requirement.requirement_id,
         "mode": judgement.mode,
-        "plasma": mode.plasma_at(judgement.peak.time_s).name if stand.value else None,
+        "plasma": mode.plasma_at(judgement.peak.time_s) if stand.value else None,
         "age": "begin",
         "value": stand.value,
         "allowed": requirement.limit,
@@ -109,6 +110,9 @@ def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> di
         },
         "eclipses": eclipse_rows(loaded.case.epoch, mode.around.eclipses),
         "steady_after_s": summary.steady_s,
+        "jumps": [
+            row for member in range(len(mode.laws)) for row in jump_rows(loaded, mode, member)
+        ],
         "verdict": summary.verdict,
         "sentences": sentences(loaded, mode, summary),
         "first_fixes": first_fixes(loaded, summary.judgements),
@@ -159,13 +163,27 @@ def summary_document(
     }
 
 
+def plain_cell(value: Any) -> Any:
+    """Keep a spreadsheet from reading a text as a formula; numbers stay numbers.
+
+    Examples
+    --------
+    >>> plain_cell("=1+1"), plain_cell("-x"), plain_cell("panel"), plain_cell(-3.5)
+    ("'=1+1", "'-x", 'panel', -3.5)
+    """
+    return f"'{value}" if isinstance(value, str) and value[:1] in "=+-@\t\r" and value else value
+
+
 def surfaces_csv(document: dict[str, Any]) -> str:
     """``surfaces.csv``: one line per mode and surface."""
     text = io.StringIO()
     table = csv.DictWriter(text, CSV_COLUMNS, extrasaction="ignore", lineterminator="\n")
     table.writeheader()
     for mode in document["modes"]:
-        table.writerows({"mode": mode["mode"], **row} for row in mode["surfaces"])
+        table.writerows(
+            {key: plain_cell(value) for key, value in {"mode": mode["mode"], **row}.items()}
+            for row in mode["surfaces"]
+        )
     return text.getvalue()
 
 

@@ -83,7 +83,7 @@ def _leg(
     alternative: Mode | None,
     on: tuple[bool, ...],
 ) -> Leg:
-    attitude, plasma, events = case.attitude, case.plasma.use, True
+    attitude, plasma, events = case.attitude, case.plasma.base, True
     array: Mode | None = None
     light, direction = 1.0, (1.0, 0.0, 0.0)
     if isinstance(case.orbit, OrbitFixed):
@@ -116,7 +116,7 @@ def _leg(
 
 def plasma_names(case: Case, mode: Mode | None = None) -> tuple[str, ...]:
     """Plasmas of a run as the case names them: base, one per event, then those of intervals."""
-    base = case.plasma.use if mode is None or mode.plasma is None else mode.plasma
+    base = case.plasma.base if mode is None or mode.plasma is None else mode.plasma
     names = [base]
     if mode is None or mode.events:
         names += [event.use for event in case.plasma.event]

@@ -23,6 +23,8 @@ def face(surface: Surface, material: Material) -> Face:
             relative_permittivity=material.value("relative_permittivity"),
             resistivity_ohm_m=material.value("bulk_resistivity_ohm_m"),
             activation_energy_eV=material.value("activation_energy_eV"),
+            radiation_conductivity_S_m=material.get("radiation_conductivity_S_m", 0.0),
+            radiation_exponent=material.get("radiation_conductivity_exponent", 1.0),
         )
     return Face(
         name=surface.name,
@@ -32,13 +34,31 @@ def face(surface: Surface, material: Material) -> Face:
     )
 
 
-def spacecraft_network(case: Case, materials: Mapping[str, Material]) -> Network:
-    """Build the network of a case; `materials` by the name or path the file gives."""
-    return network(
-        [face(s, materials[s.material]) for s in case.surface],
-        [(*link.between, link.resistance_ohm) for link in case.link],
-        case.body.radius_m,
-    )
+def spacecraft_network(
+    case: Case,
+    materials: Mapping[str, Material],
+    links: Sequence[tuple[str, str, float]] | None = None,
+) -> Network:
+    """Build the network of a case.
+
+    Parameters
+    ----------
+    case : Case
+    materials : mapping of str to Material
+        By the name or path the file gives.
+    links : sequence of (name, name, resistance), optional
+        Resistors [ohm]; default: those of the case.
+    """
+    if links is None:
+        links = [(*link.between, link.resistance_ohm) for link in case.link]
+    free_space = None
+    if case.shape:
+        from charging.shape.solution import shape_field  # solved only for cases with shapes
+        from charging.shape.views import craft_of
+
+        free_space = shape_field(craft_of(case)).capacitance_F
+    faces = [face(s, materials[s.material]) for s in case.surface]
+    return network(faces, links, case.body.radius_m, free_space)
 
 
 def surface_materials(case: Case, materials: Mapping[str, Material]) -> Sequence[Material]:

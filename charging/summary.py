@@ -8,7 +8,14 @@ from numpy.typing import NDArray
 
 from charging.case import LoadedCase
 from charging.orbit_run import CaseRun, ModeRun
-from charging.review.limits import Requirement, Standing, Verdict, requirements, standing
+from charging.review.limits import (
+    RUN_KINDS,
+    Requirement,
+    Standing,
+    Verdict,
+    requirements,
+    standing,
+)
 
 Array = NDArray[np.float64]
 
@@ -91,8 +98,8 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
     net = mode.net
     # extremes [law][quantity] as (value, time)
     times, states = zip(*(_samples(mode, i) for i in range(len(mode.laws))), strict=True)
-    thickness = np.full(len(net.surface_node), np.inf)
-    thickness[net.film_surface] = net.film_thickness_m
+    thickness = np.full((len(mode.members), len(net.surface_node)), np.inf)
+    thickness[:, net.film_surface] = net.film_thickness_m
     across_node = net.surface_node
 
     def peak(rows: Sequence[Array], largest: bool) -> Peak:
@@ -109,8 +116,8 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
         own = [v[:, node] for v in absolute]
         difference = [v[:, node] - v[:, 0] for v in absolute]
         field = [
-            y[:, across_node[i]] / thickness[i] if np.isfinite(thickness[i]) else np.zeros(len(y))
-            for y in states
+            y[:, across_node[i]] / d if np.isfinite(d) else np.zeros(len(y))
+            for y, d in zip(states, thickness[:, i], strict=True)
         ]
         high, low = peak(field, True), peak(field, False)
         surfaces.append(
@@ -129,7 +136,7 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
     judgements = tuple(
         _judge(loaded, mode, requirement, found)
         for found, surface in zip(surfaces, loaded.case.surface, strict=True)
-        for requirement in requirements(loaded.case)
+        for requirement in requirements(loaded.case, RUN_KINDS)
         if requirement.covers(found.surface)
         and (requirement.kind != "field" or surface.thickness_m is not None)
     )
@@ -165,7 +172,7 @@ def _judge(loaded: LoadedCase, mode: ModeRun, requirement: Requirement,
         requirement.kind
     ]
     stand = standing(requirement, peak.value)
-    assumed = [p.name for p in dict.fromkeys(mode.plasmas) if p.basis == "assumed"]
+    assumed = mode.assumed
     if stand.exceeded:
         verdict: Verdict = "exceeded"
         reason = f"beyond {requirement.requirement_id}"

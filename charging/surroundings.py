@@ -5,7 +5,7 @@ errs by less than 2e-5 in an incidence cosine or an illumination; a march then o
 interpolates. Where a mode begins or ends, two knots stand at one time: before and after.
 """
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import NamedTuple
 
@@ -14,30 +14,29 @@ from numpy.typing import NDArray
 
 from charging.case_files import NO_FILES, CaseFiles
 from charging.case_modes import Mode
+from charging.case_strings import NO_RADIATION, Radiation
 from charging.case_tables import Case
 from charging.currents.surface import Setting
-from charging.errors import InputError
 from charging.flight import (
     Path,
-    angular_speed_rad_s,
     contacts,
     eclipses_of,
     moments,
     path,
 )
+from charging.motion_knots import motion_knots, penumbrae
+from charging.motional import string_potentials_V
+from charging.plasma_along import PlasmaAlong
+from charging.plasma_sources import along
 from charging.schedule import Leg, plasma_names
 from charging.temperatures import surface_temperatures
 from environments.eclipse import Eclipse
-from environments.trajectory import Trajectory
+from environments.plasma import Plasma
 
 Array = NDArray[np.float64]
 
-LARGEST_TURN_RAD = np.radians(0.25)  # between knots: cosines err by 0.25²/8 (rad) = 2.4e-6
-LONGEST_KNOT_S = 60.0
-KNOTS_A_TURN = 360  # of a spin that is followed: cosines err by 4e-5 before refinement
-PENUMBRA_KNOTS = 240  # illumination errs by 1e-5
 LARGEST_LIGHT_ERROR = 1e-5
-MOST_KNOTS, MOST_REFINED = 2_000_000, 200_000
+MOST_REFINED = 200_000
 FINE_STEP_S, FINE_MARGIN_S, FINE_LONGEST_S = 1.0, 60.0, 900.0
 MOST_FINE = 100_000
 FIRST_OUTPUT_S = 1e-3
@@ -74,6 +73,7 @@ class Surroundings:
         illumination.
     episodes : tuple of Episode
     plasma_count : int
+        Columns of the strength: the base or its basis, one per event, those of interval modes.
     breaks_s : tuple of float
         Kinks and jumps: contacts of eclipses, edges of events, modes and emitters, terminator
         crossings of surfaces.
@@ -83,6 +83,12 @@ class Surroundings:
         Where one leg of the run ends and the next begins.
     states : tuple of LegState
         One per leg.
+    along : PlasmaAlong or None
+        The base where it changes along the orbit; its basis takes the first columns.
+    radiation : Radiation
+        Dose rate, constant or by region.
+    motional_V : ndarray [K, 2E] or None
+        What v x B . L adds to negative and positive ends of strings.
     """
 
     knots_s: Array
@@ -93,6 +99,14 @@ class Surroundings:
     eclipses: tuple[Eclipse, ...]
     edges_s: tuple[float, ...] = ()
     states: tuple[LegState, ...] = (LegState(),)
+    along: PlasmaAlong | None = None
+    radiation: Radiation = NO_RADIATION
+    motional_V: Array | None = None
+
+    @property
+    def basis(self) -> tuple[Plasma, ...]:
+        """Plasmas that stand for the base; empty where the base is one plasma."""
+        return () if self.along is None else self.along.basis
 
     def _blend(self, time_s: Array) -> Array:
         k = np.searchsorted(self.knots_s, time_s, side="right") - 1
@@ -106,7 +120,15 @@ class Surroundings:
         """Plasma shares [m, P] and light [m, S], and surface temperatures [K, m, S]."""
         both = self._blend(time_s)
         surfaces = both.shape[-1] // 2
-        setting = Setting(self.strength(time_s), both[..., :surfaces], both[..., -1:])
+        light, illumination = both[..., :surfaces], both[..., -1:]
+        if self.along is None:
+            setting = Setting(self.strength(time_s), light, illumination)
+        else:
+            base, stream = self.along.at(time_s)
+            strength, present = self._mixed(time_s, base)
+            if stream is not None:
+                stream = stream._replace(density_m3=stream.density_m3 * present[..., None])
+            setting = Setting(strength, light, illumination, stream=stream)
         return setting, both[..., surfaces:-1]
 
     def leg(self, time_s: Array) -> NDArray[np.intp]:
@@ -119,27 +141,54 @@ class Surroundings:
             self.leg(time_s)
         ]
 
+    def string_ends_V(self, time_s: Array) -> Array | None:
+        """What the motion adds to negative and positive ends of strings [V, m, 2 E], or None."""
+        if self.motional_V is None:
+            return None
+        k = np.searchsorted(self.knots_s, time_s, side="right") - 1
+        k = np.minimum(np.maximum(k, 0), len(self.knots_s) - 2)
+        share = (time_s - self.knots_s[k]) / (self.knots_s[k + 1] - self.knots_s[k])
+        below = self.motional_V[k]
+        return np.asarray(below + share[..., None] * (self.motional_V[k + 1] - below))
+
+    def dose_rate_rad_s(self, time_s: Array) -> Array:
+        """Dose rate in the films [rad/s, m]: of the regions by their shares, else the constant."""
+        constant = np.full(time_s.shape, self.radiation.dose_rate_rad_s)
+        if self.along is None or not self.radiation.by_region:
+            return constant
+        return self.along.mean_of_regions(time_s, self.radiation.by_region, constant)
+
     def strength(self, time_s: Array) -> Array:
-        """Share of each plasma [m, P] at times [m], adding to 1.
+        """Share of each plasma [m, P] at times [m], adding to 1; of a basis, densities.
 
         An event mixes distributions, f = (1-s) f_base + s f_event: s rises linearly, is 1
         for the hold, and decays as exp(-t/decay). A later event acts on what it finds.
         """
+        base = None if self.along is None else self.along.at(time_s)[0]
+        return self._mixed(time_s, base)[0]
+
+    def _mixed(self, time_s: Array, base: Array | None) -> tuple[Array, Array]:
+        """Strength [m, P] with the base as one plasma or a basis [m, B]; share of the base [m]."""
         share = np.zeros((*time_s.shape, self.plasma_count))
+        present = np.ones(time_s.shape)
         counts: Array | float = 1.0
-        if not self.edges_s:
+        if not self.edges_s and base is None:
             share[..., self.states[0].plasma] = 1.0
             counts = float(self.states[0].events)
         else:
             leg = self.leg(time_s)
-            base = np.array([state.plasma for state in self.states])[leg]
-            np.put_along_axis(share, base[..., None], 1.0, axis=-1)
+            column = np.array([state.plasma for state in self.states])[leg]
+            np.put_along_axis(share, column[..., None], 1.0, axis=-1)
             counts = np.array([state.events for state in self.states], dtype=np.float64)[leg]
+            if base is not None:
+                present = share[..., 0].copy()
+                share[..., : base.shape[-1]] = base * present[..., None]
         for event in self.episodes:
             s = event_strength(time_s, event) * counts
             share *= 1.0 - s[..., None]
+            present = present * (1.0 - s)
             share[..., event.plasma] += s
-        return share
+        return share, present
 
 
 def event_strength(time_s: Array, event: Episode) -> Array:
@@ -151,7 +200,11 @@ def event_strength(time_s: Array, event: Episode) -> Array:
 
 
 def surroundings(
-    case: Case, mode: Mode | None, episodes: Sequence[Episode], files: CaseFiles = NO_FILES
+    case: Case,
+    mode: Mode | None,
+    episodes: Sequence[Episode],
+    files: CaseFiles = NO_FILES,
+    plasmas: Mapping[str, Plasma] | None = None,
 ) -> Surroundings:
     """Tabulate the surroundings of one mode of a case.
 
@@ -164,6 +217,8 @@ def surroundings(
         Plasma events; plasma 0 is the base.
     files : CaseFiles, optional
         Data files of the case.
+    plasmas : mapping of str to Plasma, optional
+        Of the case, by name.
 
     Raises
     ------
@@ -173,7 +228,7 @@ def surroundings(
     way = path(case, mode, files)
     end = case.duration_s
     eclipses = eclipses_of(case, files)
-    knots = _knots(way, eclipses, end)
+    knots = motion_knots(way, eclipses, end)
     rows = [
         np.unique(files.temperatures[surface.temperature_K].times_s)
         for surface in case.surface
@@ -196,8 +251,13 @@ def surroundings(
         rise_end = event.onset_s + event.rise_s
         breaks |= {event.onset_s, rise_end, rise_end + event.hold_s}
     edges = tuple(leg.start_s for leg in way.legs[1:])
+    changing = along(case, mode, files, way, knots, plasmas or {})
+    further = 0 if changing is None else len(changing.basis) - 1
+    episodes = tuple(event._replace(plasma=event.plasma + further) for event in episodes)
+    if changing is not None:
+        breaks |= set(changing.breaks_s)
     knots = np.concatenate(times)
-    states = _states(case, mode, way.legs)
+    states = _states(case, mode, way.legs, further)
     return Surroundings(
         knots_s=knots,
         table=np.hstack(
@@ -209,65 +269,38 @@ def surroundings(
                 np.concatenate(lit_body)[:, None],
             ]
         ),
-        episodes=tuple(episodes),
+        episodes=episodes,
         plasma_count=1
-        + max(*(event.plasma for event in episodes), *(state.plasma for state in states), 0, 0),
+        + max(
+            *(event.plasma for event in episodes),
+            *(state.plasma for state in states),
+            further,
+            0,
+        ),
         breaks_s=_breaks(breaks, edges, end),
         eclipses=eclipses,
         edges_s=edges,
         states=states,
+        along=changing,
+        radiation=case.radiation,
+        motional_V=string_potentials_V(case, way, times) if case.string else None,
     )
 
 
-def _states(case: Case, mode: Mode | None, legs: Sequence[Leg]) -> tuple[LegState, ...]:
+def _states(
+    case: Case, mode: Mode | None, legs: Sequence[Leg], further: int
+) -> tuple[LegState, ...]:
+    """What each leg switches; `further` columns stand between the base and the first event."""
     names = plasma_names(case, mode)
     fixed = 1 + (len(case.plasma.event) if mode is None or mode.events else 0)
     return tuple(
         LegState(
-            0 if leg.plasma == names[0] else fixed + names[fixed:].index(leg.plasma),
+            0 if leg.plasma == names[0] else further + fixed + names[fixed:].index(leg.plasma),
             leg.events,
             leg.emitting,
         )
         for leg in legs
     )
-
-
-def _knots(way: Path, eclipses: Sequence[Eclipse], end: float) -> Array:
-    """Knots [K] from 0 to `end`: motion, spin and penumbrae."""
-    if way.trajectory is None:
-        return np.array([0.0, end])
-    knots = np.union1d(_motion_knots(way.trajectory, end), [0.0, end])
-    for leg in way.legs:
-        spin = leg.attitude
-        if spin.law == "spin" and spin.resolved and spin.period_s is not None:
-            count = (leg.end_s - leg.start_s) / spin.period_s * KNOTS_A_TURN
-            if count > MOST_KNOTS:
-                raise InputError(
-                    f"attitude.resolved: {count:.3g} steps would follow every turn of "
-                    f"{spin.period_s:g} s",
-                    key=("attitude", "resolved"),
-                    value=True,
-                    allowed=f"{MOST_KNOTS} steps; resolved = false takes the mean of a turn",
-                )
-            knots = np.union1d(knots, np.linspace(leg.start_s, leg.end_s, int(count) + 2))
-    for first, last in penumbrae(eclipses):
-        knots = np.union1d(knots, np.clip(np.linspace(first, last, PENUMBRA_KNOTS), 0.0, end))
-    return knots
-
-
-def _motion_knots(trajectory: Trajectory, end: float) -> Array:
-    """Times at most a minute and a quarter of a degree of motion apart."""
-    coarse = np.linspace(0.0, end, int(np.ceil(end / (0.98 * LONGEST_KNOT_S))) + 1)
-    step = coarse[1] - coarse[0]
-    turn = angular_speed_rad_s(trajectory, coarse)
-    # 2 %: what the turn can gain between two neighbours of a minute
-    parts = np.ceil(1.02 * np.maximum(turn[1:], turn[:-1]) * step / LARGEST_TURN_RAD)
-    parts = np.where(parts <= 1.0, 1, parts).astype(np.intp)
-    if parts.max() == 1:
-        return coarse
-    first = np.repeat(coarse[:-1], parts)
-    number = np.arange(first.size) - np.repeat(np.cumsum(parts) - parts, parts)
-    return np.append(first + number * (step / np.repeat(parts, parts)), end)
 
 
 def _tabulated(way: Path, number: int, knots: Array) -> tuple[Array, Array, Array, Array]:
@@ -341,21 +374,6 @@ def named_times(case: Case, time_s: Array) -> Array:
     """Those of increasing times [s] that UTC tells apart: of a leap second, the first."""
     labels = moments(case, time_s)
     return np.asarray(time_s[np.append(True, labels[1:] > labels[:-1])])
-
-
-def penumbrae(eclipses: Sequence[Eclipse]) -> list[tuple[float, float]]:
-    """Spans [s] within which the illumination changes."""
-    spans = []
-    for eclipse in eclipses:
-        times = contacts(eclipse)
-        if eclipse.umbra_s <= 0.0 and times:
-            spans.append((times[0], times[-1]))
-            continue
-        if eclipse.penumbra_start is not None and eclipse.umbra_start is not None:
-            spans.append((eclipse.penumbra_start, eclipse.umbra_start))
-        if eclipse.penumbra_end is not None and eclipse.umbra_end is not None:
-            spans.append((eclipse.umbra_end, eclipse.penumbra_end))
-    return spans
 
 
 def _sign_changes(time_s: Array, values: Array) -> Array:

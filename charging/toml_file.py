@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-import stat
 import tomllib
 from dataclasses import dataclass
 from pathlib import Path
@@ -11,10 +10,11 @@ from typing import Any
 
 from charging import toml_lines
 from charging.errors import InputError, KeyPath, printable
+from charging.file_content import bytes_of
 
 LARGEST_FILE_BYTES = 1_000_000
 _MOST_DOTS_IN_KEY = 200  # far beyond use; the reader's time grows with their square
-_DEEPEST = 40  # levels of tables and arrays; far beyond use
+_DEEPEST = 20  # levels of tables and arrays; far beyond use
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,7 +43,7 @@ def read_toml(path: Path, *, file: str | None = None) -> TomlFile:
         Missing, no file, unreadable, above 1 MB, no UTF-8 or no TOML.
     """
     file = str(path) if file is None else file
-    return parse_toml(_decoded(_bytes(path, file), file), file=file)
+    return parse_toml(_decoded(bytes_of(path, file, LARGEST_FILE_BYTES), file), file=file)
 
 
 def parse_toml(text: str, *, file: str) -> TomlFile:
@@ -76,27 +76,9 @@ def _depth(value: object) -> int:
             for entry in inside
             if isinstance(entry, dict | list)
             for child in (entry.values() if isinstance(entry, dict) else entry)
+            if isinstance(child, dict | list)
         ]
     return level
-
-
-def _bytes(path: Path, file: str) -> bytes:
-    try:
-        mode = path.stat().st_mode
-        if stat.S_ISDIR(mode):
-            raise InputError("this is a folder, not a file", file=file)
-        if not stat.S_ISREG(mode):  # a pipe or device might never end
-            raise InputError("this is no ordinary file", file=file)
-        with path.open("rb") as stream:
-            content = stream.read(LARGEST_FILE_BYTES + 1)
-    except FileNotFoundError:
-        raise InputError("there is no such file", file=file) from None
-    except (OSError, ValueError, RuntimeError) as error:
-        reason = getattr(error, "strerror", None) or "not a usable path"
-        raise InputError(f"cannot be read: {reason.lower()}", file=file) from None
-    if len(content) > LARGEST_FILE_BYTES:
-        raise InputError("the file is too large", file=file, allowed="up to 1 MB")
-    return content
 
 
 def _decoded(content: bytes, file: str) -> str:

@@ -179,7 +179,25 @@ def case_bare_keys() -> BareKeys:
         ("plasma", "event"): {
             name: (Bare(f"{name}_min", "time", "min"),) for name in ("rise", "hold", "decay")
         },
+        ("plasma", "substorm"): {
+            **{name: (Bare(f"{name}_min", "time", "min"),) for name in ("rise", "hold", "decay")},
+            **{
+                f"{kind}_density": (Bare(f"{kind}_density_m3", "number density", "m-3"),)
+                for kind in ("electron", "ion")
+            },
+            **{
+                f"{kind}_temperature": (Bare(f"{kind}_temperature_eV", "energy", "eV"),)
+                for kind in ("electron", "ion")
+            },
+        },
         ("body",): {"radius": (Bare("radius_m", "length", "m"),)},
+        ("shape",): {
+            **{
+                name: (Bare(f"{name}_m", "length", "m"),)
+                for name in ("thickness", "radius", "inner_radius", "length", "depth")
+            },
+            **_angle("cap_half_angle"),
+        },
         ("surface",): {
             "area": (Bare("area_m2", "area", "m2"),),
             "thickness": (Bare("thickness_m", "length", "m"),),
@@ -194,7 +212,12 @@ def case_bare_keys() -> BareKeys:
         ("attitude",): _ATTITUDE,
         ("mode", "attitude"): _ATTITUDE,
         ("mode",): _angle("parked_sun_angle"),
-        ("emitter",): {"energy": (Bare("energy_eV", "energy", "eV"),)},
+        ("emitter",): {
+            "energy": (Bare("energy_eV", "energy", "eV"),),
+            "below": (Bare("below_V", "voltage", "V"),),
+            "hold": (Bare("hold_V", "voltage", "V"),),
+        },
+        ("string",): {"voltage": (Bare("voltage_V", "voltage", "V"),)},
         ("link",): {"resistance": (Bare("resistance_ohm", "resistance", "ohm"),)},
         ("limit",): {
             "allowed": (

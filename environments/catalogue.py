@@ -2,6 +2,7 @@
 
 import re
 import tomllib
+import unicodedata
 from collections.abc import Mapping
 from functools import cache
 from importlib.resources import files
@@ -312,6 +313,8 @@ def _text(table: Mapping[str, object], key: str) -> str:
         raise EnvironmentDataError(
             "must be a text", key=(key,), value=value, allowed="a text that is not empty"
         )
+    if any(unicodedata.category(c) == "Cc" and c not in "\n\t" for c in value):
+        raise EnvironmentDataError("holds a control character", key=(key,), value=value)
     return value
 
 

@@ -22,7 +22,8 @@ from environments.ephemeris import (
 from environments.errors import EnvironmentDataError
 from environments.interpolation import Method
 from environments.magnetosphere import magnetic_place
-from environments.text_table import TextTable, number, read_table
+from environments.netcdf_sizes import refuse_hollow
+from environments.text_table import FARTHEST, TextTable, coordinate, read_table
 from environments.timescales import TIME_SCALES, read_tai, tai_from_utc, utc_at
 from environments.trajectory import Geometry, Trajectory
 
@@ -74,7 +75,7 @@ def read_ephemeris_csv(path: str | Path, **stated: str) -> SampledTrajectory:
             tai.append(read_tai(cells[columns[0]], notes["time_scale"], zone=zone))
         except EnvironmentDataError as error:
             raise table.error(str(error), line) from error
-        values.append([number(cells[k], line, table.file) for k in columns[1:]])
+        values.append([coordinate(cells[k], line, table.file) for k in columns[1:]])
         lines.append(line)
     stamps = np.array(tai, "datetime64[ns]")
     states = np.array(values) * scale
@@ -112,7 +113,7 @@ def read_ephemeris_netcdf(path: str | Path, **stated: str) -> SampledTrajectory:
         raise EnvironmentDataError("cannot be read: no such file", file=file)
     try:
         dataset = netCDF4.Dataset(file)
-    except OSError as error:
+    except (OSError, UnicodeError) as error:
         raise EnvironmentDataError("is no NetCDF file, or truncated", file=file) from error
     with dataset:
         present = dataset.ncattrs()
@@ -386,7 +387,9 @@ def _vectors(variable: Any, count: int, units: Mapping[str, float], file: str) -
 
 
 def _finite(variable: Any, file: str) -> Array:
+    refuse_hollow(8 * int(variable.size), file)
     values = np.ma.filled(np.ma.asarray(variable[...], dtype=np.float64), np.nan)
+    values[np.abs(values) > FARTHEST] = np.nan
     if not bool(np.isfinite(values).all()):
         # the index along time: vectors may stand as (axis, time) or (time, axis)
         along = list(variable.dimensions).index("time") if "time" in variable.dimensions else 0

@@ -21,7 +21,7 @@ from environments.ephemeris import (
 )
 from environments.errors import EnvironmentDataError, nearest_name
 from environments.interpolation import Method
-from environments.text_table import number, read_lines
+from environments.text_table import coordinate, read_lines
 from environments.timescales import TIME_SCALES, read_tai, tai_from_utc, write_tai
 
 Array = NDArray[np.float64]
@@ -306,7 +306,7 @@ def _rows(block: _Block, scale: str) -> tuple[NDArray[np.datetime64], Array, lis
                 "accelerations: truncated?"
             )
         tai.append(_time(parts[0], line, "time", scale))
-        states.append([number(part, line) for part in parts[1:7]])
+        states.append([coordinate(part, line) for part in parts[1:7]])
         lines.append(line)
     return np.array(tai, "datetime64[ns]"), np.array(states), lines
 

@@ -6,6 +6,7 @@ import numpy as np
 
 from environments.distributions import Tabulated
 from environments.errors import EnvironmentDataError
+from environments.netcdf_sizes import refuse_hollow_file
 
 COLUMNS = ("energy_eV", "flux_m2_s_sr_eV")
 LARGEST_FILE_BYTES = 5_000_000
@@ -90,8 +91,11 @@ def _netcdf(path: Path) -> Pair:
     import xarray as xr
 
     try:
-        with xr.open_dataset(path, decode_cf=False) as dataset:
+        refuse_hollow_file(path, COLUMNS)
+        with xr.open_dataset(path, decode_cf=False, create_default_indexes=False) as dataset:
             found = [np.asarray(dataset[name].values, dtype=np.float64) for name in COLUMNS]
+    except EnvironmentDataError:
+        raise
     except (OSError, ValueError, KeyError, TypeError):
         raise EnvironmentDataError(
             "is no NetCDF file with the variables", allowed=", ".join(COLUMNS)

@@ -12,11 +12,12 @@ import re
 from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
+from stat import S_ISREG
 from typing import Final
 
 from environments.errors import EnvironmentDataError, nearest_name
 
-LARGEST_FILE_BYTES: Final = 2_000_000_000
+LARGEST_FILE_BYTES: Final = 10_000_000
 _NUMBER: Final = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eEdD][+-]?\d+)?")
 
 
@@ -62,12 +63,18 @@ def read_lines(path: str | Path) -> list[str]:
     """
     file = Path(path)
     try:
-        size = file.stat().st_size
-        if size > LARGEST_FILE_BYTES:
-            raise EnvironmentDataError(f"is too large, {size} bytes", file=str(path))
-        data = file.read_bytes()
+        status = file.stat()
+        if not S_ISREG(status.st_mode):  # a pipe or device might never end
+            raise EnvironmentDataError("is no ordinary file", file=str(path))
+        with file.open("rb") as stream:
+            data = stream.read(LARGEST_FILE_BYTES + 1)
     except OSError as error:
         raise EnvironmentDataError(f"cannot be read: {error.strerror}", file=str(path)) from error
+    if len(data) > LARGEST_FILE_BYTES:
+        raise EnvironmentDataError(
+            f"is too large, {status.st_size} bytes", file=str(path),
+            allowed=f"up to {LARGEST_FILE_BYTES // 1_000_000} MB",
+        )  # fmt: skip
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
@@ -155,3 +162,24 @@ def number(text: str, line: int, file: str | None = None) -> float:
         if abs(value) < float("inf"):
             return value
     raise EnvironmentDataError("is not a finite number", value=text, file=file, line=line)
+
+
+FARTHEST: Final = 1e15
+"""Kilometres or metres of a coordinate, km/s or m/s of its motion: far outside any orbit."""
+
+
+def coordinate(text: str, line: int, file: str | None = None) -> float:
+    """Read a component of a position or velocity; beyond 1e15 is no place.
+
+    Raises
+    ------
+    EnvironmentDataError
+        As `number`; too large.
+    """
+    value = number(text, line, file)
+    if abs(value) > FARTHEST:
+        raise EnvironmentDataError(
+            "is no place of a spacecraft", value=text, file=file, line=line,
+            allowed=f"up to {FARTHEST:g}",
+        )  # fmt: skip
+    return value

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import difflib
 import math
+import unicodedata
 from collections.abc import Mapping, Sequence
 
 from materials.errors import MaterialError
@@ -46,6 +47,8 @@ def text_at(table: Table, path: Path) -> str:
     entry = entry_at(table, path)
     if not isinstance(entry, str) or not entry.strip():
         raise MaterialError(path, entry, "is no text", allowed="a text that is not empty")
+    if any(unicodedata.category(c) == "Cc" and c not in "\n\t" for c in entry):
+        raise MaterialError(path, entry, "holds a control character", allowed="text")
     return entry
 
 

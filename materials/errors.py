@@ -56,7 +56,9 @@ class MaterialError(ValueError):
             text += f"; allowed: {self.allowed}"
         if self.nearest is not None:
             text += f'; nearest: "{self.nearest}"'
-        return " ".join(text.split())
+        line = " ".join(text.split())
+        # without what a terminal would obey, whatever a record held
+        return "".join(c if c.isprintable() else c.encode("unicode_escape").decode() for c in line)
 
 
 def finite_array(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+import io
 import os
 import sys
 from typing import Annotated
@@ -13,8 +14,11 @@ import charging.cli.cases as cases
 import charging.cli.evidence as evidence
 import charging.cli.onsets as onsets
 import charging.cli.questions as questions
+import charging.cli.reviews as reviews
 import charging.cli.runs as runs
+import charging.cli.shapes as shapes
 import charging.cli.stream as stream
+import charging.cli.sweeps as sweeps
 from charging import __version__
 
 app = typer.Typer(
@@ -45,9 +49,12 @@ def _root(
 
 
 runs.register(app)
+reviews.register(app)
 questions.register(app)
 onsets.register(app)
+shapes.register(app)
 evidence.register(app)
+sweeps.register(app)
 app.add_typer(cases.app, name="case")
 
 
@@ -57,6 +64,9 @@ def main() -> None:
     0 done, 1 a limit exceeded (review), 2 bad input or output, 3 no numerical solution,
     4 not assessable (review), 130 interrupted. A closed pipe is silent and changes nothing.
     """
+    for one in (sys.stdout, sys.stderr):
+        if isinstance(one, io.TextIOWrapper):  # a locale may lack the letters of a title
+            one.reconfigure(errors="backslashreplace")
     sys.stdout = stream.PipeProof(sys.stdout)
     code = _answer()
     try:

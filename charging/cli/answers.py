@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from charging.cli.output import print_table
+from charging.cli.output import one_line, print_table
 from charging.clock import iso_time
 
 if TYPE_CHECKING:
@@ -124,7 +124,7 @@ def orbit_document(found: OrbitReport) -> dict[str, object]:
 
 def print_orbit(found: OrbitReport, document: dict[str, object]) -> None:
     """Print the answer of `orbit_report`."""
-    print(found.title)
+    print(one_line(found.title))
     print(f"{document['start']} to {document['end']}: {found.source}")
     if found.period_s is None or found.beta_angle_deg is None:
         print("fixed case: the same light for the whole run, no orbit, no eclipses")

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from math import isfinite
 from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from charging.cli.output import print_json, print_table
+from charging.cli.output import one_line, print_json, print_table
 from charging.cli.runs import Json
 
 if TYPE_CHECKING:
@@ -137,13 +138,17 @@ def plasma_document(plasma: Plasma) -> dict[str, object]:
                 "charge_number": population.species.charge_number,
                 "law": population.law,
                 "extrapolated_share": extrapolated_share(population),
-                **{key: values[i] for key, values in columns.items()},
+                **{k: v[i] if isfinite(v[i]) else None for k, v in columns.items()},
             }
             for i, (name, population) in enumerate(
                 zip(population_names(plasma.populations), plasma.populations, strict=True)
             )
         ],
     }
+
+
+def _or_infinite(value: float) -> str:
+    return f"{value:.3g}" if isfinite(value) else "infinite"
 
 
 def _debye_m(plasma: Plasma) -> float | None:
@@ -286,7 +291,7 @@ def _print_plasma(plasma: Plasma) -> None:
         warnings_of,
     )
 
-    print(f"{plasma.name}: {plasma.title}\n")
+    print(f"{plasma.name}: {one_line(plasma.title)}\n")
     values = moments(plasma)
     print_table(
         [
@@ -297,7 +302,7 @@ def _print_plasma(plasma: Plasma) -> None:
                 f"{population.temperature_eV:.4g}",
                 f"{1e6 * values['current_density_A_m2'][i]:+.4g}",
                 f"{values['mean_energy_eV'][i]:.4g}",
-                f"{values['energy_flux_eV_m2_s'][i]:.3g}",
+                _or_infinite(float(values["energy_flux_eV_m2_s"][i])),
             )
             for i, (name, population) in enumerate(
                 zip(population_names(plasma.populations), plasma.populations, strict=True)

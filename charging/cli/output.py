@@ -6,13 +6,25 @@ import json
 from collections.abc import Sequence
 
 from charging.clock import iso_time
+from charging.errors import printable
 
-__all__ = ["iso_time", "print_json", "print_table", "volts"]
+__all__ = ["iso_time", "one_line", "print_json", "print_table", "volts"]
 
 
 def print_json(value: object) -> None:
     """Print indented JSON; refuses nan and inf, which are null by then."""
     print(json.dumps(value, indent=2, ensure_ascii=False, allow_nan=False))
+
+
+def one_line(text: str) -> str:
+    r"""Free text of a file on one line: it cannot pass for a line of ours.
+
+    Examples
+    --------
+    >>> print(one_line("Two\nVerdict: within"))
+    Two\nVerdict: within
+    """
+    return printable(text, 200)
 
 
 def print_table(rows: Sequence[Sequence[str]], head: Sequence[str], right: str) -> None:

@@ -1,4 +1,4 @@
-"""Commands that run a case: run, review, plot."""
+"""Commands that run a case and draw its result: run, plot."""
 
 from __future__ import annotations
 
@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from charging.cli.output import print_json, print_table, volts
+from charging.cli.output import one_line, print_json, print_table, volts
 
 if TYPE_CHECKING:
     from charging.orbit_run import CaseRun
@@ -48,7 +48,6 @@ SLOW_S = 2.0
 def register(app: typer.Typer) -> None:
     """Add the commands to the application."""
     app.command(epilog="Example: halflit run cases/geo_substorm_day.toml --out day1")(run)
-    app.command(epilog="Example: halflit review cases/geo_static_worst_case.toml --json")(review)
     app.command(epilog="Example: halflit plot day1 --out pictures")(plot)
 
 
@@ -85,61 +84,6 @@ def run(
     print(f"\nWritten to {target}{'/' if not str(target).endswith('/') else ''}")
 
 
-def review(
-    case: CaseOrResult,
-    allow_outside: AllowOutside = False,
-    json: Json = False,
-) -> None:
-    """Check every surface against its limits in every mode and plasma of a case.
-
-    Exit 0 all within, 1 a limit exceeded, 4 not assessable, 2 bad input, 3 no solution.
-    """
-    from charging.review.check import load_case_or_result, review_case
-
-    found = review_case(load_case_or_result(case, allow_outside=allow_outside))
-    if json:
-        print_json({"verdict": found.verdict, "limits": list(found.rows)})
-    else:
-        print(found.title)
-        print_table(
-            [
-                (
-                    row["surface"],
-                    row["kind"],
-                    row["mode"],
-                    row["plasma"],
-                    _value(row["value"], row["unit"]),
-                    _value(row["allowed"], row["unit"], sign=False),
-                    _value(row["margin"], row["unit"]),
-                    "-" if row["margin_dB"] is None else f"{row['margin_dB']:+.1f}",
-                    row["time"],
-                    row["requirement_id"],
-                    row["verdict"],
-                )
-                for row in found.rows
-            ],
-            (
-                "surface",
-                "kind",
-                "mode",
-                "plasma",
-                "value",
-                "allowed",
-                "margin",
-                "margin\ndB",
-                "time (UTC)",
-                "requirement",
-                "verdict",
-            ),
-            "llllrrrrlll",
-        )
-        for text in found.sentences:
-            print(f"\n- {text}")
-        print(f"\nVerdict: {found.verdict}")
-        _print_caution()
-    raise typer.Exit({"within": 0, "exceeded": 1, "not assessable": 4}[found.verdict])
-
-
 def plot(
     result: Annotated[
         Path,
@@ -174,7 +118,7 @@ def _value(value: float, unit: str, *, sign: bool = True) -> str:
 
 
 def _print_run(result: CaseRun, document: dict[str, Any]) -> None:
-    print(document["title"])
+    print(one_line(document["title"]))
     for mode in document["modes"]:
         if len(document["modes"]) > 1:
             print(f"\nMode: {mode['mode']}")
@@ -187,7 +131,12 @@ def _print_run(result: CaseRun, document: dict[str, Any]) -> None:
         )
     for warning in document["warnings"]:
         print(f"Note: {warning}.")
-    print(f"\nVerdict: {document['verdict']}")
+    from charging.array_strings import SPECIALIST_V, array_voltage_V
+
+    # no unqualified pass for arrays of a high voltage
+    high = array_voltage_V(result.loaded.case) > SPECIALIST_V
+    more = f"; array above {SPECIALIST_V:g} V: specialist review" if high else ""
+    print(f"\nVerdict: {document['verdict']}{more}")
     _print_caution()
 
 
@@ -288,5 +237,5 @@ def _print_caution() -> None:
     print(
         "An estimate: program requirements, applicable standards and qualified specialists "
         "decide.\nNot modelled: internal charging, discharge transients, plumes, electron "
-        "exchange between surfaces,\nsurface conduction, potential barriers raised by neighbours."
+        "exchange between surfaces,\nsurface conduction."
     )

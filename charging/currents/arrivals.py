@@ -63,10 +63,60 @@ def both_limits(
     return value, slope
 
 
+def limits_of_plasmas(
+    group: Populations,
+    table: YieldTable,
+    spectra: Sequence[SpectrumTable],
+    collection: str,
+    plasmas: int,
+    pull_V: Array,
+) -> Array:
+    """Columns of `both_limits` for each of P plasmas alone at full strength, [N, S, P, 2+2C].
+
+    One pass over the populations, however many plasmas they belong to.
+    """
+    parts = [
+        _limits(group, table, spectra, collection, plasmas, pull_V[k : k + _BLOCK])
+        for k in range(0, len(pull_V), _BLOCK)
+    ]
+    return np.concatenate(parts)
+
+
+_BLOCK = 64  # rows at a time, so that memory stays small with many populations
+
+
+def _limits(
+    group: Populations,
+    table: YieldTable,
+    spectra: Sequence[SpectrumTable],
+    collection: str,
+    plasmas: int,
+    pull_V: Array,
+) -> Array:
+    full = np.ones((*pull_V.shape[:-1], plasmas))
+    each, _ = _thermal_terms(group, table, collection, full, pull_V)
+    found = np.zeros((*each.shape[:-2], plasmas, each.shape[-1]))
+    for k, plasma in enumerate(group.plasma[group.maxwellian]):
+        found[..., plasma, :] += each[..., k, :]
+    for spectrum in spectra:
+        scale = np.full(found.shape[-1], spectrum.current_A_m2 / spectrum.charge_number)
+        scale[:2] = spectrum.current_A_m2
+        found[..., spectrum.plasma, :] += scale * spectrum(pull_V)[0]
+    return found
+
+
 def _thermal_arrivals(
     group: Populations, table: YieldTable, collection: str, strength: Array, pull_V: Array
 ) -> tuple[Array, Array]:
     """Sum over the Maxwellians alone; see `both_limits`."""
+    value, slope = _thermal_terms(group, table, collection, strength, pull_V)
+    return value.sum(axis=-2), slope.sum(axis=-2)
+
+
+def _thermal_terms(
+    group: Populations, table: YieldTable, collection: str, strength: Array, pull_V: Array
+) -> tuple[Array, Array]:
+    """Each Maxwellian alone, [..., S, M, 2+2C]; see `both_limits`."""
     thick = thick_geometry(collection)
     which = group.maxwellian
     charge = group.charge_number[which]
@@ -95,6 +145,6 @@ def _thermal_arrivals(
     d_released = particles * (d_boltzmann[..., None] * found + boltzmann[..., None] * d_found)
     scale = thermal[..., None]
     return (
-        (scale * np.concatenate([current, released], axis=-1)).sum(axis=-2),
-        (scale * np.concatenate([d_current, d_released], axis=-1)).sum(axis=-2),
+        scale * np.concatenate([current, released], axis=-1),
+        scale * np.concatenate([d_current, d_released], axis=-1),
     )

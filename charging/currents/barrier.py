@@ -2,8 +2,8 @@
 
 A surface above the plasma holds back its own photo- and secondary electrons.
 The height is max(V, 0); its corner at 0 V is rounded, because a volts-wide
-exponential behind a corner stops an implicit integrator in penumbra. Potential
-barriers raised by neighbouring surfaces are not part of this model yet.
+exponential behind a corner stops an implicit integrator in penumbra. Barriers that
+neighbouring surfaces raise come on top, see `barrier_field`.
 """
 
 import numpy as np
@@ -26,8 +26,11 @@ def escape_height(potential_V: Array) -> tuple[Array, Array]:
     >>> escape_height(np.array([-1.0, 0.0, 2.0]))
     (array([0.    , 0.0125, 2.    ]), array([0. , 0.5, 1. ]))
     """
+    height = np.maximum(potential_V, 0.0)
+    slope = np.asarray(potential_V > 0.0, dtype=np.float64)
     inside = np.abs(potential_V) < ROUNDING_V
-    rise = (potential_V + ROUNDING_V) / (2.0 * ROUNDING_V)
-    height = np.where(inside, rise**2 * ROUNDING_V, np.maximum(potential_V, 0.0))
-    slope = np.where(inside, rise, (potential_V > 0.0).astype(np.float64))
+    if inside.any():
+        rise = (potential_V + ROUNDING_V) / (2.0 * ROUNDING_V)
+        height = np.where(inside, rise**2 * ROUNDING_V, height)
+        slope = np.where(inside, rise, slope)
     return height, slope

@@ -106,7 +106,7 @@ def sheath_weight(
     *,
     debye_length_m: Array,
     temperature_eV: Array,
-    radius_m: float,
+    radius_m: float | Array,
     collection: str,
 ) -> SheathWeight:
     r"""Share of the thick-sheath limit in the collection of an attracted species.
@@ -124,7 +124,7 @@ def sheath_weight(
     debye_length_m, temperature_eV : ndarray
         Electron Debye length and the electron temperature that belongs to it,
         broadcast against `potential_V`.
-    radius_m : float
+    radius_m : float or ndarray
         Radius of the body [m].
     collection : {"auto", "sphere", "cylinder", "plane"}
 

@@ -31,6 +31,7 @@ from materials.secondary import (
     YIELD_LAWS,
     YieldLaw,
     isotropic_yield,
+    normal_yield,
     true_secondary_peak,
 )
 from materials.secondary_escape import secondary_escape_fraction
@@ -129,7 +130,7 @@ def backscatter_yield(material: Material, *, isotropic: bool = True) -> Yield:
     return coated
 
 
-def emitter(material: Material, law: YieldLaw) -> Emitter:
+def emitter(material: Material, law: YieldLaw, *, isotropic: bool = True) -> Emitter:
     """Collect the yields of a material: isotropic for electrons, normal for ions.
 
     Parameters
@@ -137,6 +138,8 @@ def emitter(material: Material, law: YieldLaw) -> Emitter:
     material : Material
     law : str
         One of `YIELD_LAWS`; see `law_of`.
+    isotropic : bool, optional
+        False: electrons at normal incidence too.
     """
     if not material.emits:
         return Emitter("nothing", _nothing, _nothing, _nothing)
@@ -148,6 +151,8 @@ def emitter(material: Material, law: YieldLaw) -> Emitter:
     ion_energy = material.value("ion_yield_peak_energy_eV")
 
     def secondary(energy_eV: Array) -> Array:
+        if not isotropic:
+            return normal_yield(energy_eV, law=chosen, peak_yield=peak, peak_energy_eV=peak_energy)
         return isotropic_yield(
             energy_eV,
             law=chosen,
@@ -161,8 +166,8 @@ def emitter(material: Material, law: YieldLaw) -> Emitter:
 
     electron = tuple(material.get(key, 0.0) for key in (*_BACKSCATTER_KEYS, "density_kg_m3"))
     key = (chosen, peak, peak_energy, number, *electron, ion_peak, ion_energy,
-           material.laws.get("backscatter_law"))  # fmt: skip
-    return Emitter(key, secondary, backscatter_yield(material), ion)
+           material.laws.get("backscatter_law"), isotropic)  # fmt: skip
+    return Emitter(key, secondary, backscatter_yield(material, isotropic=isotropic), ion)
 
 
 _BACKSCATTER_KEYS = (

@@ -378,7 +378,8 @@ def _sheath(questions: Sequence[Question]) -> Sheath:
     return Sheath(
         both[..., 0],
         both[..., 1],
-        np.array([q.radius_m for q in questions]),
+        np.array([q.radius_m for q in questions]) ** 2,
         np.array([0.0 if q.collection == "plane" else 1.0 for q in questions]),
         np.array([q.collection == "auto" for q in questions]),
+        any(q.collection != "auto" for q in questions),
     )

@@ -14,6 +14,7 @@ from charging.currents.balance import FloatingPotentials, floating_potentials
 from charging.currents.surface import SurfaceModel
 
 PRECISION = 1e-6
+JUMP, COARSE = 1.0, 1e-3  # move of a root, asinh, that is looked into, and how closely
 
 
 @dataclass(frozen=True, slots=True)
@@ -23,7 +24,7 @@ class Fold:
     Attributes
     ----------
     parameter : float
-        Value at which the two roots meet, to 1e-6 of itself.
+        Value at which the two roots meet, to 1e-6 of itself by default.
     potential_V : float
         Where they meet.
     appears : bool
@@ -36,7 +37,11 @@ class Fold:
 
 
 def fold_points(
-    model_at: Callable[[float], SurfaceModel], values: Sequence[float], light: float = 0.0
+    model_at: Callable[[float], SurfaceModel],
+    values: Sequence[float],
+    light: float = 0.0,
+    *,
+    precision: float = PRECISION,
 ) -> tuple[Fold, ...]:
     """Find the folds of one surface along a parameter of its plasma.
 
@@ -46,10 +51,12 @@ def fold_points(
         Surface model for a value of the parameter, such as a density factor
         (`with_density`) or a temperature.
     values : sequence of float
-        Rising, positive; folds are looked for between neighbours, each of which may hide
-        one change of the number of roots.
+        Rising, positive; folds are looked for between neighbours whose roots differ in number
+        or lie far apart: behind a jump two folds may hide.
     light : float, optional
         Illumination times incidence cosine, 0…1.
+    precision : float, optional
+        Of the parameter, as a share of itself.
 
     Returns
     -------
@@ -64,27 +71,43 @@ def fold_points(
     def solve(value: float) -> FloatingPotentials:
         return floating_potentials(model_at(value), light)
 
-    folds = []
+    folds: list[Fold] = []
     known = [(value, solve(value)) for value in values]
-    for (low, before), (high, after) in pairwise(known):
-        while len(before.roots) != len(after.roots):
-            middle = float(np.sqrt(low * high))
-            if high - low <= PRECISION * high:
-                appears = len(after.roots) > len(before.roots)
-                folds.append(Fold(middle, _meeting(after if appears else before), appears))
-                break
-            between = solve(middle)
-            if len(between.roots) == len(before.roots):
-                low, before = middle, between
-            else:
-                high, after = middle, between
+    open_pairs = list(pairwise(known))[::-1]
+    while open_pairs:
+        (low, before), (high, after) = open_pairs.pop()
+        same = len(before.roots) == len(after.roots)
+        if same and (_farthest(before, after) < JUMP or high - low <= COARSE * high):
+            continue
+        middle = float(np.sqrt(low * high))
+        if high - low <= precision * high:
+            appears = len(after.roots) > len(before.roots)
+            more, fewer = (after, before) if appears else (before, after)
+            folds.append(Fold(middle, _meeting(more, fewer), appears))
+            continue
+        between = middle, solve(middle)
+        open_pairs += [(between, (high, after)), ((low, before), between)]
     return tuple(folds)
 
 
-def _meeting(found: FloatingPotentials) -> float:
-    """Middle of the closest two neighbours, measured on the scale of asinh."""
-    volts = np.array([root.potential_V for root in found.roots])
-    k = int(np.argmin(np.diff(np.arcsinh(volts))))
+def _farthest(before: FloatingPotentials, after: FloatingPotentials) -> float:
+    """Largest move of a root, on the scale of asinh."""
+    first, second = (np.arcsinh([r.potential_V for r in f.roots]) for f in (before, after))
+    return float(np.abs(first - second).max())
+
+
+def _meeting(more: FloatingPotentials, fewer: FloatingPotentials) -> float:
+    """Middle of the two neighbours that vanish, by what remains on the scale of asinh."""
+    volts = np.array([root.potential_V for root in more.roots])
+    scaled = np.arcsinh(volts)
+    left = np.arcsinh([root.potential_V for root in fewer.roots])
+    gaps = np.diff(scaled)
+    if len(left) == len(scaled) - 2:
+        pairs = range(len(gaps))
+        moved = [np.abs(np.delete(scaled, (k, k + 1)) - left).sum() + gaps[k] for k in pairs]
+        k = int(np.argmin(moved))
+    else:  # a double root met exactly, or two folds in one place
+        k = int(np.argmin(gaps))
     return float(0.5 * (volts[k] + volts[k + 1]))
 
 

@@ -7,8 +7,10 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.constants import e, epsilon_0
 
+import environments.signs
 from charging.errors import InputError
-from environments.plasma import ELECTRON, Plasma, population_current, population_moments
+from environments.errors import EnvironmentDataError
+from environments.plasma import Plasma, population_current, population_moments
 
 Array = NDArray[np.float64]
 
@@ -62,9 +64,7 @@ def populations(plasmas: Sequence[Plasma], *, electrons: bool) -> Populations:
 
 
 def refuse_one_sided(plasmas: Sequence[Plasma]) -> None:
-    """Refuse a plasma without electrons or without positive ions, or with negative ions.
-
-    The first has no sheath, the second no balance; the third would be taken for electrons.
+    """Refuse plasmas without charges of both signs; see `environments.signs`.
 
     Raises
     ------
@@ -72,23 +72,15 @@ def refuse_one_sided(plasmas: Sequence[Plasma]) -> None:
         Names the plasma and what it lacks, or the negative ions.
     """
     for plasma in plasmas:
-        present = {p.species for p in plasma.populations if p.density_m3 > 0.0}
-        kinds = {p.species for p in plasma.populations}
-        negative = sorted(s.name for s in kinds if s.charge_number < 0 and s != ELECTRON)
-        problems = []
-        if ELECTRON not in present:
-            problems.append("holds no electrons")
-        if not any(s.charge_number > 0 for s in present):
-            problems.append("holds no positive ions")
-        if negative:
-            problems.append(f"holds {'; '.join(negative)}: negative ions are not modelled")
-        if problems:
+        try:
+            environments.signs.refuse_one_sided(plasma)
+        except EnvironmentDataError as error:
             raise InputError(
-                f'plasma = "{plasma.name}" {" and ".join(problems)}',
+                f'plasma = "{plasma.name}" {error.problem}',
                 key=("plasma",),
                 value=plasma.name,
-                allowed="a plasma with electrons and positive ions",
-            )
+                allowed=error.allowed,
+            ) from None
 
 
 def electron_sheath(electrons: Populations, strength: Array) -> tuple[Array, Array]:

@@ -11,15 +11,15 @@ yields are tabulated once per case over the energy gained or lost; tables are sp
 at the kinks of the spectrum.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from charging.currents.collection import PLANE, Geometry
-from charging.currents.splines import graded_knots, polynomial_and_slope, segmented_spline
-from charging.currents.tables import REACH_V, SPACING, Yield, knots
+from charging.currents.splines import polynomial_and_slope, refined_cells, segmented_spline
+from charging.currents.tables import REACH_V, Yield, knots
 from environments.energy_panels import energy_nodes
 from environments.isotropic import (
     Distribution,
@@ -58,7 +58,9 @@ def repelled_averages(
     arriving = np.pi * distribution.flux(whole, mass_kg) * (energy / whole) * weight
     released = [(arriving * y(energy)).sum(axis=-1) for y in yields]
     flux = distribution_moments(distribution, mass_kg).number_flux_m2_s
-    return arriving.sum(axis=-1) / flux, np.array(released).reshape(len(yields), -1) / flux
+    return arriving.sum(axis=-1) / flux, np.array(released).reshape(
+        len(yields), len(lost_eV)
+    ) / flux
 
 
 def attracted_averages(
@@ -100,12 +102,11 @@ class SpectrumTable:
         Which plasma the population belongs to.
     current_A_m2, charge_number : float
         Signed one-sided current at full strength; magnitude of the charge.
-    breaks_V : mapping of float to float
-        Magnitudes of the retarding potentials at which the tables have kinks, and the
-        spacing of knots that these need, see `graded_knots`.
+    breaks_V : tuple of float
+        Magnitudes of the retarding potentials at which the tables have kinks.
     repelled_knots_eV, attracted_knots_eV : ndarray
-    repelled : ndarray [S, K-1, 6, 1+Y]
-        Logarithm of the collected share over `cut`, then mean yields.
+    repelled : ndarray [S, K-1, 8, 1+Y]
+        Logarithm of the collected share over (1 - lost/cutoff)^2, then mean yields.
     attracted : ndarray [S, K-1, 6, 1+2Y]
         Collected share of the thick sheath, then mean yields, plane and thick by turns.
     cutoff_eV : float
@@ -115,7 +116,7 @@ class SpectrumTable:
     plasma: int
     current_A_m2: float
     charge_number: float
-    breaks_V: Mapping[float, float]
+    breaks_V: tuple[float, ...]
     repelled_knots_eV: Array
     attracted_knots_eV: Array
     repelled: Array
@@ -178,24 +179,67 @@ class SpectrumTable:
         return share * mean, d_share * mean + share * d_mean
 
 
-NOTHING = 1e-250  # share of a spectrum below which it counts as ended
-NEAR_A_STEP, NEAR_A_KINK = 0.04, 0.05  # spacing of knots below a mark of the spectrum
+ACCURACY = 1e-9  # of what arrives, to which tables follow the integrals
+FLOOR = 1e-22  # of what arrives at 0 V: errors below it do not count
+NOTHING = 1e-100  # share of a spectrum below which it counts as ended
+FIRST_CELLS = 40
+AT_ONCE = 200  # potentials whose integrals are evaluated together
 
 
-def _marks(distribution: Distribution, mass_kg: float, end_eV: float) -> dict[float, float]:
-    """Spacing of the knots below every mark of a spectrum up to `end_eV`, by energy [eV].
+def _end_eV(distribution: Distribution, mass_kg: float, reach_eV: float) -> float:
+    """Energy lost at which nothing more arrives, or the reach of the tables [eV]."""
+    end = min(reach_eV, distribution.top_eV)
+    if end == distribution.cutoff_eV:
+        return end
 
-    Just below a step of the spectrum the particles that still arrive do so with the energy
-    that is left to them, so the mean yield changes there as the yield does near zero energy.
+    def arrives(lost_eV: float) -> bool:
+        share = repelled_averages(distribution, mass_kg, [], np.array([lost_eV]))[0]
+        return bool(share[0] > NOTHING)
+
+    if arrives(end):
+        return end
+    low = 0.0
+    while end - low > 1e-6 * end:
+        middle = 0.5 * (low + end)
+        low, end = (middle, end) if arrives(middle) else (low, middle)
+    return low
+
+
+def _repelled_columns(
+    distribution: Distribution, mass_kg: float, yields: Sequence[Yield], end_eV: float
+) -> Callable[[Array], tuple[Array, Array]]:
+    """Function for `refined_cells`: what `SpectrumTable.repelled` holds, of energies lost.
+
+    Collected particles may err by `ACCURACY` of themselves, released ones by as much of what
+    arrives.
     """
-    marks = sorted({m for m in distribution.marks_eV if 0.0 < m < end_eV} | {end_eV})
-    below, above = (
-        distribution.flux(np.array(marks) * (1.0 + side * 1e-9), mass_kg) for side in (-1.0, 1.0)
-    )
-    steps = np.abs(above - below) > 1e-6 * below
-    return {
-        mark: NEAR_A_STEP if step else NEAR_A_KINK for mark, step in zip(marks, steps, strict=True)
-    }
+    cutoff = distribution.cutoff_eV
+
+    def columns(lost_eV: Array) -> tuple[Array, Array]:
+        parts = [
+            repelled_averages(distribution, mass_kg, yields, part)
+            for part in np.array_split(lost_eV, -(-len(lost_eV) // AT_ONCE))
+        ]
+        share, released = (np.concatenate(part, axis=-1) for part in zip(*parts, strict=True))
+        ends = lost_eV >= cutoff
+        share[ends] = 1.0
+        found = np.empty((len(lost_eV), 1 + len(yields)))
+        with np.errstate(divide="ignore"):  # the end of a spectrum, set below
+            found[:, 0] = np.log(share) - 2.0 * np.log1p(-np.minimum(lost_eV / cutoff, 1.0))
+        found[:, 1:] = (released / share).T
+        if ends.any():
+            # J -> pi j(E_c) (E_c - lost)^2/(2 E_c), made of particles that arrive with nothing
+            edge = float(distribution.flux(np.array([cutoff]), mass_kg)[0])
+            flux = distribution_moments(distribution, mass_kg).number_flux_m2_s
+            found[ends, 0] = np.log(np.pi * edge * cutoff / 2.0 / flux)
+            found[ends, 1:] = [float(y(np.zeros(1))[0]) for y in yields]
+            share[ends] = 0.0
+        # close to the end of a spectrum the energy left over is a difference of large numbers
+        rounding = 1e-15 / np.maximum(1.0 - lost_eV / cutoff, 1e-15)
+        allowed = ACCURACY + rounding + FLOOR / np.maximum(share, FLOOR)
+        return found, np.broadcast_to(np.minimum(allowed, 0.1)[:, None], found.shape)
+
+    return columns
 
 
 def spectrum_table(
@@ -229,47 +273,31 @@ def spectrum_table(
     reach = REACH_V * size
     grid = size * knots(0.01 * min(10.0, distribution.scale_eV) / size)
 
-    end = min(reach, distribution.top_eV)
-    scale = 0.01 * min(10.0, distribution.scale_eV)
-    spacings = _marks(distribution, mass, end)
-    lost = graded_knots(scale, SPACING, spacings)
-    share, released = repelled_averages(distribution, mass, flat, lost)
-    cutoff = distribution.cutoff_eV
-    counts = share > NOTHING
-    counts[-1] |= end == cutoff and counts[-2]
-    if not counts.all():  # a steep tail: what lies beyond is nothing
-        lost, share, released = lost[counts], share[counts], released[:, counts]
-        end = float(lost[-1])
-    with np.errstate(divide="ignore", invalid="ignore"):  # the end of a spectrum, set below
-        rest = (1.0 - lost / cutoff) ** 2
-        log_share, mean = np.log(share / rest), released / share
-    if end == cutoff:
-        # J -> pi j(E_c) (E_c - lost)^2/(2 E_c), made of particles that arrive with nothing left
-        edge = float(distribution.flux(np.array([cutoff]), mass)[0])
-        flux = distribution_moments(distribution, mass).number_flux_m2_s
-        log_share[-1] = np.log(np.pi * edge * cutoff / 2.0 / flux)
-        mean[:, -1] = [float(y(np.zeros(1))[0]) for y in flat]
-    columns = np.empty((len(lost), surfaces, 1 + kinds))
-    columns[..., 0] = log_share[:, None]
-    columns[..., 1:] = np.moveaxis(mean, 1, 0).reshape(len(lost), surfaces, kinds)
+    end = _end_eV(distribution, mass, reach)
+    marks = [m for m in distribution.marks_eV if 0.0 < m < end]
+    first = np.geomspace(1e-3 * min(distribution.scale_eV, end), end, FIRST_CELLS)
+    edges = np.array(sorted({0.0, *first[:-1].tolist(), *marks, end}))
+    lost, pieces = refined_cells(_repelled_columns(distribution, mass, flat, end), edges)
+    cells, powers = pieces.shape[:2]
+    repelled = np.empty((surfaces, cells, powers, 1 + kinds))
+    repelled[..., 0] = pieces[..., 0]
+    repelled[..., 1:] = np.moveaxis(pieces[..., 1:].reshape(cells, powers, surfaces, kinds), 2, 0)
 
     thick_share, both = attracted_averages(distribution, mass, flat, grid, (PLANE, thick))
     pulled = np.empty((len(grid), surfaces, 1 + 2 * kinds))
     pulled[..., 0] = thick_share[1][:, None]
     mean_both = both / thick_share  # [S Y, 2, K]
     pulled[..., 1:] = np.moveaxis(mean_both, 2, 0).reshape(len(grid), surfaces, 2 * kinds)
-    marks = [m for m in distribution.marks_eV if m < end]
     kind = np.arange(surfaces) if rows is None else np.asarray(rows, dtype=np.intp)
-    repelled = np.moveaxis(segmented_spline(lost, columns, marks), 2, 0)[kind]
     attracted = np.moveaxis(segmented_spline(grid, pulled, ()), 2, 0)[kind]
     return SpectrumTable(
         plasma=plasma,
         current_A_m2=population_current(population),
         charge_number=size,
-        breaks_V={m / size: spacing for m, spacing in spacings.items() if m < end or end == cutoff},
+        breaks_V=tuple(m / size for m in (*marks, end)),
         repelled_knots_eV=lost,
         attracted_knots_eV=grid,
-        repelled=np.ascontiguousarray(repelled),
+        repelled=np.ascontiguousarray(repelled[kind]),
         attracted=np.ascontiguousarray(attracted),
-        cutoff_eV=cutoff,
+        cutoff_eV=distribution.cutoff_eV,
     )

@@ -1,6 +1,6 @@
 """Splines as piecewise polynomials, split where a function has a kink."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Sequence
 from itertools import pairwise
 from math import factorial
 
@@ -66,33 +66,58 @@ def segmented_knots(base: Array, breaks: Sequence[float]) -> Array:
     return np.concatenate([*parts, base[-1:]])
 
 
-FINEST = 0.1  # of an energy scale of 10 eV: where grading towards a break ends
+DEEPEST = 60  # halvings of a cell at most
+MOST_CELLS = 400  # that may be halved at once: more would be a function made of noise
+CELL_DEGREE = 7  # of `refined_cells`
 
 
-def graded_knots(scale: float, spacing: float, breaks: Mapping[float, float]) -> Array:
-    """Knots from 0 to the last break, dense at 0 and just below every break.
+def refined_cells(
+    function: Callable[[Array], tuple[Array, Array]], edges: Array, degree: int = CELL_DEGREE
+) -> tuple[Array, Array]:
+    """Polynomials on cells that are halved until they follow a function.
 
     Parameters
     ----------
-    scale, spacing : float
-        From 0 upwards the knots lie like scale·sinh²(k·spacing).
-    breaks : mapping of float to float
-        Position of each break, and the spacing with which the knots grow away from it
-        downwards in the same manner.
+    function : callable
+        Of points [N], returns values [N, C] and the error allowed of each, same shape.
+    edges : ndarray [K], rising
+        First cells; every kink of the function must be among them.
+    degree : int
+        Each cell goes through the function at degree + 1 Chebyshev-Lobatto points, so
+        neighbours meet; half-way between these the error is measured.
+
+    Returns
+    -------
+    ndarray [M], ndarray [M-1, degree+1, C]
+        Knots, and coefficients of powers of the distance from the left knot, highest first.
     """
-    parts, low = [], 0.0
-    for place in sorted(breaks):
-        width = place - low
-        # the numbers of knots of both progressions add up
-        left = np.geomspace(1e-9, 0.5, 1500) * width
-        fine = np.concatenate([[low], low + left, place - left[-2::-1], [place]])
-        down = np.sqrt(np.maximum(place - fine, 0.0) / min(scale, FINEST))
-        count = np.arcsinh(np.sqrt(fine / scale)) / spacing - np.arcsinh(down) / breaks[place]
-        number = max(2 * FEWEST_POINTS, int(np.ceil(count[-1] - count[0])))
-        part = np.interp(np.linspace(count[0], count[-1], number + 1), count, fine)
-        parts.append(part[:-1])
-        low = place
-    return np.concatenate([*parts, [low]])
+    # every second of 2 degree + 1 points belongs to the polynomial, the others check it
+    t = 0.5 - 0.5 * np.cos(np.pi * np.arange(2 * degree + 1) / (2 * degree))
+    powers = np.linalg.inv(np.vander(t[::2], degree + 1))
+    between = np.vander(t[1::2], degree + 1)
+    left, width = edges[:-1], np.diff(edges)
+    done: list[tuple[Array, Array]] = []
+    for level in range(DEEPEST + 1):
+        points = left[:, None] + width[:, None] * t
+        points[:, -1] = left + width  # rounding must not carry a point past a kink
+        values, allowed = (x.reshape(*points.shape, -1) for x in function(points.ravel()))
+        c = np.einsum("ij,kjc->kic", powers, values[:, ::2])
+        error = np.abs(np.einsum("ij,kjc->kic", between, c) - values[:, 1::2])
+        fits = (error <= allowed[:, 1::2]).all(axis=(1, 2))
+        fits |= (level == DEEPEST) | (len(left) > MOST_CELLS) | (width <= 1e-13 * (left + width))
+        scale = width[:, None] ** np.arange(degree, -1, -1.0)
+        done.append((left[fits], c[fits] / scale[fits][:, :, None]))
+        left, width = left[~fits], 0.5 * width[~fits]
+        if not len(left):
+            break
+        left = np.stack([left, left + width], axis=1).ravel()
+        width = np.repeat(width, 2)
+    knots = np.concatenate([part for part, _ in done])
+    order = np.argsort(knots)
+    return (
+        np.concatenate([knots[order], edges[-1:]]),
+        np.concatenate([part for _, part in done])[order],
+    )
 
 
 def polynomial(c: Array, x: Array) -> Array:

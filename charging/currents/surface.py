@@ -11,7 +11,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.currents.arrivals import arrivals, both_limits
+from charging.currents.arrivals import arrivals, limits_of_plasmas
 from charging.currents.barrier import escape_height
 from charging.currents.collection import (
     Geometry,
@@ -34,6 +34,7 @@ from charging.currents.populations import (
     refuse_one_sided,
 )
 from charging.currents.spectra import SpectrumTable, spectrum_table
+from charging.currents.streams import Stream, StreamModel, Streams, stream_model
 from charging.currents.tables import YieldTable
 from environments.plasma import Plasma
 from environments.spectrum import SolarSpectrum
@@ -49,7 +50,8 @@ __all__ = [
     "Setting",
     "SurfaceModel",
     "electron_sheath",
-    "net_in_limits",
+    "limits_and_gross",
+    "limits_of_each",
     "populations",
     "surface_currents",
     "surface_model",
@@ -86,6 +88,8 @@ class SurfaceModel:
         Photocurrent density at normal incidence in full sun.
     angle_growth : ndarray [S]
         Largest growth of the yield at oblique incidence, 1: none.
+    streams : StreamModel or None
+        Ions that stream past.
     """
 
     radius_m: float
@@ -100,6 +104,7 @@ class SurfaceModel:
     electron_spectra: tuple[SpectrumTable, ...] = ()
     ion_spectra: tuple[SpectrumTable, ...] = ()
     escape_breaks_V: tuple[float, ...] = ()
+    streams: StreamModel | None = None
 
 
 def surface_model(
@@ -136,6 +141,8 @@ def surface_models(
     radius_m: float,
     collection: str = "auto",
     photo_geometry: str = "auto",
+    parts: int = 0,
+    streams: Streams | None = None,
 ) -> tuple[SurfaceModel, ...]:
     """Tabulate the answers of S surfaces to P plasmas and the Sun, one model per law.
 
@@ -152,8 +159,12 @@ def surface_models(
     collection : {"auto", "sphere", "cylinder", "plane"}
     photo_geometry : {"auto", "planar", "point source"}
         How photoelectrons leave a positive surface.
+    parts : int, optional
+        Number of the first plasmas that are parts of one, and need not hold both signs.
+    streams : Streams, optional
+        Ions that stream past, which no plasma holds.
     """
-    refuse_one_sided(plasmas)
+    refuse_one_sided(plasmas[parts:])
     thick = thick_geometry(collection)
     electrons = populations(plasmas, electrons=True)
     ions = populations(plasmas, electrons=False)
@@ -182,6 +193,7 @@ def surface_models(
             electron_spectra=_spectra(plasmas, of_law, thick, electrons=True),
             ion_spectra=ion_spectra,
             escape_breaks_V=line_ends_V(materials, spectrum),
+            streams=None if streams is None else stream_model(materials, streams),
         )
         for of_law in emitters
     )
@@ -202,18 +214,34 @@ def _spectra(
     )
 
 
+class Kept(NamedTuple):
+    """What follows from a `Setting` alone, for members [m].
+
+    sheath_m2 : ndarray [m, 1], Debye length squared; child_m2 : ndarray [m, 1], squared length
+    of a Child sheath at 1 V; photo_A_m2 : ndarray [m, S], photocurrent before escape.
+    """
+
+    sheath_m2: Array
+    child_m2: Array
+    photo_A_m2: Array
+
+
 class Setting(NamedTuple):
     """What surrounds the surfaces at one moment.
 
     strength : ndarray [..., P], share of each plasma, adding to 1;
     light : ndarray [..., S], illumination times incidence cosine;
     illumination : ndarray [..., 1], share of the solar disc in view, which light that grows
-    at oblique incidence cannot exceed.
+    at oblique incidence cannot exceed;
+    stream, ions that stream past, or None;
+    kept, what a march works out once per moment from the rest, or None.
     """
 
     strength: Array
     light: Array
     illumination: Array | float = 1.0
+    stream: Stream | None = None
+    kept: Kept | None = None
 
 
 class Currents(NamedTuple):
@@ -226,7 +254,9 @@ class Currents(NamedTuple):
     slope: Array
 
 
-def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) -> Currents:
+def surface_currents(
+    model: SurfaceModel, potential_V: Array, setting: Setting, height_V: Array | None = None
+) -> Currents:
     """Evaluate every mechanism and the slope of the sum.
 
     Parameters
@@ -235,6 +265,9 @@ def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) 
     potential_V : ndarray [..., S]
         Potential of each surface against the plasma.
     setting : Setting
+    height_V : ndarray [..., S], optional
+        What photo- and secondary electrons must climb, >= 0; held while the potential moves
+        in the slope. Default: `escape_height` of the surface's own potential.
 
     Returns
     -------
@@ -270,7 +303,15 @@ def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) 
         sheath,
     )
 
-    height, height_slope = escape_height(potential_V)
+    if model.streams is not None and setting.stream is not None:
+        directed = model.streams.arrived(potential_V, setting.stream, sheath)
+        ion, d_ion = ion + directed.collected_A_m2, d_ion + directed.slope
+        ion_answer = ion_answer + directed.released_A_m2[..., None]
+        d_ion_answer = d_ion_answer + directed.released_slope[..., None]
+
+    height, height_slope = (
+        escape_height(potential_V) if height_V is None else (height_V, np.zeros_like(height_V))
+    )
     escape, d_escape = model.escape_table(height)
     d_escape = d_escape * height_slope[..., None]
     # illumination times `incidence_factor` of the cosine
@@ -304,39 +345,41 @@ def surface_currents(model: SurfaceModel, potential_V: Array, setting: Setting) 
     return Currents(by_mechanism, slope)
 
 
-def net_in_limits(
-    model: SurfaceModel, potential_V: Array, strength: Array
-) -> tuple[Array, Array, Array]:
-    """Net dark current of a planar and of a thick sheath, and the photocurrent at full light.
+def limits_of_each(model: SurfaceModel, potential_V: Array) -> Array:
+    """Dark currents of every plasma alone at full strength [A m-2].
 
     Parameters
     ----------
     model : SurfaceModel
-    potential_V : ndarray [..., S]
-    strength : ndarray [..., P]
+    potential_V : ndarray [N, S]
 
     Returns
     -------
-    ndarray [..., S], three of them
-        Current densities [A m-2]; they are linear in `strength`.
+    ndarray [N, S, P, 4]
+        Collected minus backscattered current in plane and in thick geometry, then secondary
+        electrons, of electrons and ions together, before escape in both. One pass over the
+        populations, however many plasmas they belong to.
     """
-    electron = both_limits(
+    return limits_and_gross(model, potential_V)[0]
+
+
+def limits_and_gross(model: SurfaceModel, potential_V: Array) -> tuple[Array, Array]:
+    """`limits_of_each`, and all that crosses the surface either way in the column's geometry."""
+    groups = (model.electrons, model.ions)
+    plasmas = 1 + max(int(group.plasma.max(initial=0)) for group in groups)
+    electron = limits_of_plasmas(
         model.electrons,
         model.electron_table,
         model.electron_spectra,
         model.collection,
-        strength,
+        plasmas,
         potential_V,
-    )[0]
-    ion = both_limits(
-        model.ions, model.ion_table, model.ion_spectra, model.collection, strength, -potential_V
-    )[0]
-    escape = model.escape_table(escape_height(potential_V)[0])[0]
-    leaves = escape[..., 1:]
-    both = (
-        electron[..., 0:2]
-        + ion[..., 0:2]
-        + (ion[..., 2:4] - electron[..., 2:4]) * leaves
-        - electron[..., 4:6]
     )
-    return both[..., 0], both[..., 1], model.photo_saturation_A_m2 * escape[..., 0]
+    ion = limits_of_plasmas(
+        model.ions, model.ion_table, model.ion_spectra, model.collection, plasmas, -potential_V
+    )
+    bare = electron[..., 0:2] + ion[..., 0:2] - electron[..., 4:6]
+    gross = np.abs(electron).reshape(*electron.shape[:-1], 3, 2).sum(axis=-2)
+    gross = gross + np.abs(ion).reshape(*ion.shape[:-1], 2, 2).sum(axis=-2)
+    limits = np.concatenate([bare, ion[..., 2:4] - electron[..., 2:4]], axis=-1)
+    return limits, np.concatenate([gross, gross], axis=-1)

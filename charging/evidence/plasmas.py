@@ -150,6 +150,12 @@ def plasma_checks() -> Iterator[Check]:
             partial(_kappa_over_maxwellian, kappa),
         )  # fmt: skip
     yield Check(
+        "directional flux of 1 keV electrons, kappa 4, 500 eV, 1 cm-3",
+        "kappa distribution, spectrum", 4.6055169e8, "m-2 s-1 sr-1 eV-1", 1e-6,
+        "2 E f/m^2 with the kappa distribution by another program", "closed form",
+        partial(Kappa(1e6, 500.0, 4.0).flux, np.array(1000.0), m_e),
+    )  # fmt: skip
+    yield Check(
         "Debye length of a kappa distribution over a Maxwellian's, kappa 3",
         "kappa distribution, Debye length", 0.774597, "1", 1e-5,
         "sqrt((2 kappa - 3)/(2 kappa - 1))", "closed form", partial(_kappa_debye, 3.0),

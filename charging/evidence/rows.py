@@ -7,8 +7,10 @@ from collections.abc import Callable, Iterable, Iterator
 from charging.evidence.check import Check, Row, evaluate
 from charging.evidence.critical import critical_checks
 from charging.evidence.dielectrics import dielectric_checks
+from charging.evidence.low_orbit import low_orbit_checks
 from charging.evidence.orbits import orbit_checks
 from charging.evidence.plasmas import plasma_checks
+from charging.evidence.regions import region_checks
 from charging.evidence.sunlight import sunlight_checks
 from charging.evidence.yields import yield_checks
 
@@ -19,6 +21,8 @@ TOPICS: dict[str, Callable[[], Iterable[Check]]] = {
     "plasma": plasma_checks,
     "dielectrics": dielectric_checks,
     "orbit": orbit_checks,
+    "regions": region_checks,
+    "low orbit": low_orbit_checks,
 }
 """Topics in the order of the table."""
 

@@ -1,59 +1,50 @@
 """Linearly implicit time march of a stiff charge balance, member by member.
 
-The integrator is RODAS, a six-stage, stiffly accurate, L-stable Rosenbrock
-method of order 4 with an embedded method of order 3 and a dense output of order
-3 (Hairer & Wanner 1996, Solving Ordinary Differential Equations II, sec. VI.4
-and IV.7; coefficients from memory, its orders are tested). It solves
-``M dy/dt = f(t, y)`` with a constant mass matrix for a block of members at once;
-every member has its own time and step size, so that a member's numbers do not
-depend on its company.
+The integrators are Rosenbrock methods with dense output (see `rosenbrock`). They
+solve ``M dy/dt = f(t, y)`` with a constant mass matrix for a block of members at
+once; every member has its own time and step size, so that a member's numbers do
+not depend on its company.
 """
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
 from charging.errors import NoSolutionError
+from charging.network.rosenbrock import RODAS, Method
 
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
-GAMMA = 0.25
-# stage times and the factors of df/dt, in steps
-ALPHA = (0.0, 0.386, 0.21, 0.63, 1.0, 1.0)
-GAMMA_T = (0.25, -0.1043, 0.1035, -0.0362, 0.0, 0.0)
-A = (
-    (),
-    (1.544,),
-    (0.9466785280815826, 0.2557011698983284),
-    (3.314825187068521, 2.896124015972201, 0.9986419139977817),
-    (1.221224509226641, 6.019134481288629, 12.53708332932087, -0.687886036105895),
-    (1.221224509226641, 6.019134481288629, 12.53708332932087, -0.687886036105895, 1.0),
-)
-C = (
-    (),
-    (-5.6688,),
-    (-2.430093356833875, -0.2063599157091915),
-    (-0.1073529058151375, -9.594562251023355, -20.47028614809616),
-    (7.496443313967647, -10.24680431464352, -33.99990352819905, 11.7089089320616),
-    (
-        8.083246795921522,
-        -7.981132988064893,
-        -31.52159432874371,
-        16.31930543123136,
-        -6.058818238834054,
-    ),
-)
-DENSE_2 = (10.12623508344586, -7.487995877610167, -34.80091861555747, -7.992771707568823,
-           1.025137723295662)  # fmt: skip
-DENSE_3 = (-0.6762803392801253, 6.087714651680015, 16.43084320892478, 24.76722511418386,
-           -6.594389125716872)  # fmt: skip
-
 SAFETY, LARGEST_FACTOR, SMALLEST_FACTOR = 0.9, 5.0, 0.2
 TIME_DIFFERENCE = 1e-4  # df/dt is a forward difference over this share of the step
+
+
+class StuckError(NoSolutionError):
+    """A member found no step.
+
+    Attributes
+    ----------
+    member : int
+    time_s, step_s : float
+    state : ndarray [n]
+    attempts : int
+    error : float
+        Of the last attempt, over what is allowed; infinite where a stage left the domain.
+    """
+
+    def __init__(
+        self, member: int, time_s: float, state: Array, step_s: float, attempts: int, error: float
+    ) -> None:
+        super().__init__(
+            f"no step at {time_s:.6f} s after the start: step {step_s:.1e} s "
+            f"after {attempts} attempts"
+        )
+        self.member, self.time_s, self.state = member, time_s, state
+        self.step_s, self.attempts, self.error = step_s, attempts, error
 
 
 class System(Protocol):
@@ -61,32 +52,40 @@ class System(Protocol):
 
     @property
     def mass(self) -> Array:
-        """Mass matrix [n, n]."""
+        """Mass matrix [n, n], or one per member [M, n, n]."""
         ...
 
-    def rhs(self, member: Index, time_s: Array, y: Array) -> Array:
-        """Return f [m, n] for members `member` [m] at `time_s` [m], `y` [m, n]."""
+    def moments(self, member: Index, time_s: Array) -> Sequence[Any]:
+        """Return what `rates_at` must know of the times [K, m], K items of any kind."""
         ...
 
-    def rhs_and_jacobian(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array]:
-        """Return f [m, n] and its derivative by y [m, n, n]."""
+    def rates_at(self, member: Index, moment: Any, y: Array) -> Array:
+        """Return f [m, n] for members `member` [m] at their moments and `y` [m, n]."""
+        ...
+
+    def start(self, member: Index, moment: Any, later: Any, y: Array) -> tuple[Array, Array, Array]:
+        """Return f [m, n], its derivative by y [m, n, n], and f of the same y at `later`."""
         ...
 
     def controlled(self, y: Array) -> Array:
-        """Return the quantities [m, q] (linear in y) whose error is kept small."""
+        """Return the quantities [..., q] (linear in y) whose error is kept small."""
         ...
 
-    def admissible(self, y: Array) -> NDArray[np.bool_]:
+    def admissible(self, member: Index, y: Array) -> NDArray[np.bool_]:
         """Tell [m] whether a state lies where the right-hand side is defined."""
         ...
 
 
 @dataclass(frozen=True, slots=True)
 class Tolerance:
-    """Local error allowed per step and controlled quantity: absolute + relative·|value|."""
+    """Local error allowed per step and controlled quantity: absolute + relative·|value|.
+
+    `method` is RODAS where accuracy counts, RODAS3 where a volt or a percent will do.
+    """
 
     absolute: float
     relative: float
+    method: Method = RODAS
 
 
 @dataclass(frozen=True, slots=True)
@@ -133,6 +132,7 @@ def march(
     first_step_s: float = 1e-6,
     largest_step_s: float = np.inf,
     attempts: int = 200_000,
+    record: "Record | None" = None,
 ) -> list[Trajectory]:
     """March a block of members from `span_s[0]` to `span_s[1]`.
 
@@ -153,14 +153,17 @@ def march(
         ends, however long the step: only this keeps the dense output right between them.
     attempts : int
         Largest number of tries per member.
+    record : Record, optional
+        What is to be done with each step instead of keeping all of them.
 
     Returns
     -------
-    list of Trajectory, one per member
+    list of Trajectory
+        One per member; empty with a `record` of your own.
 
     Raises
     ------
-    NoSolutionError
+    StuckError
         The step fell below 1e-13 of the time or the attempts ran out.
     """
     start, end = span_s
@@ -173,7 +176,8 @@ def march(
     tried = np.zeros(members, dtype=np.intp)
     last_step, last_error = np.zeros(members), np.full(members, 1e-2)
     refused = np.zeros(members, dtype=np.bool_)
-    log: list[tuple[Index, Array, Array, Array, Array, Array, Array]] = []
+    log = StepLog() if record is None else record
+    exponent = -1.0 / tolerance.method.order
     active = np.arange(members)
     while active.size:
         room = stops[goal[active]] - t[active]
@@ -182,23 +186,21 @@ def march(
         step = np.where(lands, room, np.where(h[active] > 0.5 * room, 0.5 * room, h[active]))
         # what holds before a jump holds up to it: no stage of a step that ends there looks over
         latest = np.nextafter(stops[goal[active]], -np.inf)
-        y1, error, c2, c3 = _rodas_step(
-            system, active, t[active], y[active], step, latest, tolerance
-        )
+        y1, error, c2, c3 = _step(system, active, t[active], y[active], step, latest, tolerance)
         tried[active] += 1
         good = error <= 1.0
-        factor = SAFETY * np.maximum(error, 1e-8) ** -0.25
+        factor = SAFETY * np.maximum(error, 1e-8) ** exponent
         # predictive control (Gustafsson 1991, ACM Trans. Math. Softw. 17, 533): errors that
         # grow from step to step shorten the next one before it is refused
         trend = SAFETY * step / np.where(last_step[active] > 0.0, last_step[active], step)
-        trend = trend * (last_error[active] / np.maximum(error, 1e-8) ** 2) ** 0.25
+        trend = trend * (last_error[active] / np.maximum(error, 1e-8) ** 2) ** -exponent
         factor = np.where(good & (last_step[active] > 0.0), np.minimum(factor, trend), factor)
         factor = np.clip(factor, SMALLEST_FACTOR, LARGEST_FACTOR)
         factor = np.where(good & refused[active], np.minimum(factor, 1.0), factor)
         refused[active] = ~good
         done = active[good]
         last_step[done], last_error[done] = step[good], np.maximum(error[good], 1e-2)
-        log.append((done, t[done], step[good], y[done], y1[good], c2[good], c3[good]))
+        log.steps(done, t[done], step[good], y[done], y1[good], c2[good], c3[good])
         t[done] = np.where(lands[good], stops[goal[done]], t[done] + step[good])
         y[done] = y1[good]
         h[active] = step * np.where(good, factor, np.minimum(factor, 0.9))
@@ -209,15 +211,13 @@ def march(
                       | (tried[still] >= attempts)]  # fmt: skip
         if stuck.size:
             m = int(stuck[0])
-            raise NoSolutionError(
-                f"no step at {t[m]:.6f} s after the start: step {h[m]:.1e} s "
-                f"after {tried[m]} attempts"
-            )
+            last = float(error[np.flatnonzero(active == m)[0]])
+            raise StuckError(m, float(t[m]), y[m].copy(), float(h[m]), int(tried[m]), last)
         active = still
-    return [_collect(log, m, int(tried[m])) for m in range(members)]
+    return log.trajectories(tried) if isinstance(log, StepLog) else []
 
 
-def _rodas_step(
+def _step(
     system: System,
     member: Index,
     t: Array,
@@ -227,56 +227,86 @@ def _rodas_step(
     tolerance: Tolerance,
 ) -> tuple[Array, Array, Array, Array]:
     """Try one step; return y1, error norm (inf where a stage left the domain), c2, c3."""
-    f0, jacobian = system.rhs_and_jacobian(member, t, y)
+    method = tolerance.method
+    count = len(method.alpha)
     delta = TIME_DIFFERENCE * h
-    f_t = (system.rhs(member, t + delta, y) - f0) / delta[:, None]
-    mass_h = system.mass / h[:, None, None]
-    inverse = np.linalg.inv(mass_h / GAMMA - jacobian)  # small and used six times
-    stages: list[Array] = []
-    f = f0
+    fresh = [i for i in range(1, count) if method.evaluates(i)]
+    ahead = [np.minimum(t + method.alpha[i] * h, latest) for i in fresh]
+    now, later, *others = system.moments(member, np.stack([t, t + delta, *ahead]))
+    moment = dict(zip(fresh, others, strict=True))
+    f, jacobian, f_later = system.start(member, now, later, y)
+    h_ = h[:, None]
+    f_t = (f_later - f) * (h_ / delta[:, None])
+    mass = system.mass
+    mass_h = (mass if mass.ndim == 2 else mass[member]) / h_[..., None]
+    inverse = np.linalg.inv(mass_h / method.gamma - jacobian)  # small and used by every stage
+    stages = np.empty((count, *y.shape))
     inside = np.ones(len(h), dtype=np.bool_)
     state = y
-    for i in range(6):
-        if i:
-            state = y.copy()
-            for a, stage in zip(A[i], stages, strict=True):
-                state += a * stage
-            inside &= system.admissible(state)
-            state = np.where(inside[:, None], state, y)  # rejected below
-            f = system.rhs(member, np.minimum(t + ALPHA[i] * h, latest), state)
+    for i in range(count):
+        a, c = method.rows[i]
+        if i in moment:
+            state = y + (a * stages[:i]).sum(axis=0)
+            fits = system.admissible(member, state)
+            if not fits.all():
+                inside &= fits
+                state = np.where(inside[:, None], state, y)  # rejected below
+            f = system.rates_at(member, moment[i], state)
         right = f
-        if GAMMA_T[i]:
-            right = right + (GAMMA_T[i] * h)[:, None] * f_t
+        if method.gamma_t[i]:
+            right = right + method.gamma_t[i] * f_t
         if i:
-            mix = np.zeros_like(y)
-            for c, stage in zip(C[i], stages, strict=True):
-                mix += c * stage
+            mix = (c * stages[:i]).sum(axis=0)
             right = right + (mass_h * mix[:, None, :]).sum(axis=-1)
-        stages.append((inverse * right[:, None, :]).sum(axis=-1))
-    y1 = state + stages[5]
-    inside &= system.admissible(y1)
-    scale = tolerance.absolute + tolerance.relative * np.maximum(
-        np.abs(system.controlled(y)), np.abs(system.controlled(y1))
-    )
-    error = np.max(np.abs(system.controlled(stages[5])) / scale, axis=-1)
+        stages[i] = (inverse * right[:, None, :]).sum(axis=-1)
+    y1 = state + stages[-1]
+    inside &= system.admissible(member, y1)
+    size = np.abs(system.controlled(np.stack([y, y1, stages[-1]])))
+    scale = tolerance.absolute + tolerance.relative * np.maximum(size[0], size[1])
+    error = np.max(size[2] / scale, axis=-1)
     error = np.where(inside & np.isfinite(error), error, np.inf)
-    c2 = sum(d * s for d, s in zip(DENSE_2, stages[:5], strict=True))
-    c3 = sum(d * s for d, s in zip(DENSE_3, stages[:5], strict=True))
-    return y1, error, np.asarray(c2), np.asarray(c3)
+    c2, c3 = ((dense * stages).sum(axis=0) for dense in method.dense)
+    return y1, error, c2, c3
 
 
-def _collect(
-    log: list[tuple[Index, Array, Array, Array, Array, Array, Array]], member: int, attempts: int
-) -> Trajectory:
-    def column(number: int) -> Array:
-        return np.concatenate([entry[number][entry[0] == member] for entry in log])
+class Record(Protocol):
+    """What is done with the accepted steps of a block."""
 
-    return Trajectory(
-        start_s=column(1),
-        step_s=column(2),
-        y_start=column(3),
-        y_end=column(4),
-        c2=column(5),
-        c3=column(6),
-        attempts=attempts,
-    )
+    def steps(
+        self,
+        member: Index,
+        start_s: Array,
+        step_s: Array,
+        y0: Array,
+        y1: Array,
+        c2: Array,
+        c3: Array,
+    ) -> None:
+        """Take one step of each of some members [m]; states and polynomials [m, n]."""
+        ...  # fmt: skip
+
+
+class StepLog:
+    """Keeps every step."""
+
+    def __init__(self) -> None:
+        self._log: list[tuple[Index, Array, Array, Array, Array, Array, Array]] = []
+
+    def steps(
+        self, member: Index, start_s: Array, step_s: Array, y0: Array, y1: Array, c2: Array,
+        c3: Array,
+    ) -> None:  # fmt: skip
+        """Keep one step of each of some members."""
+        self._log.append((member, start_s, step_s, y0, y1, c2, c3))
+
+    def trajectories(self, attempts: Index) -> list[Trajectory]:
+        """Steps by member; `attempts` [M] is kept beside them."""
+        member, *columns = (np.concatenate(part) for part in zip(*self._log, strict=True))
+        order = np.argsort(member, kind="stable")
+        ends = np.searchsorted(member[order], np.arange(len(attempts) + 1))
+        found = []
+        for m, tried in enumerate(attempts):
+            own = order[ends[m] : ends[m + 1]]
+            start_s, step_s, y0, y1, c2, c3 = (column[own] for column in columns)
+            found.append(Trajectory(start_s, step_s, y0, y1, c2, c3, int(tried)))
+        return found

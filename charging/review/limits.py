@@ -1,20 +1,30 @@
-"""Design limits as data, and how a predicted value stands against them."""
+"""Design limits of a case, and how a predicted value stands against them."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from math import log10
 from typing import Literal
 
 from charging.case import Case, Limit
+from charging.review.criteria import CRITERIA, Criterion, Kind
 
-Kind = Literal["normal", "inverted", "field"]
 Verdict = Literal["within", "exceeded", "not assessable"]
 
 KIND_MEANING: dict[Kind, str] = {
     "normal": "surface below structure",
     "inverted": "surface above structure",
     "field": "field in the dielectric",
+    "neighbour normal": "dielectric below a neighbouring conductor",
+    "neighbour inverted": "dielectric above a neighbouring conductor",
+    "neighbour": "difference between neighbours",
+    "energy": "energy stored between a surface and what carries it",
+    "structure": "structure against the plasma",
 }
-UNITS: dict[Kind, str] = {"normal": "V", "inverted": "V", "field": "V m-1"}
+UNITS: dict[Kind, str] = {
+    kind: {"field": "V m-1", "energy": "J"}.get(kind, "V") for kind in KIND_MEANING
+}
+RUN_KINDS: tuple[Kind, ...] = ("normal", "inverted", "field")
+"""Kinds that a run judges; a review judges all."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -25,14 +35,17 @@ class Requirement:
     ----------
     kind : Kind
     allowed : float
-        Magnitude [V] or [V m-1] before the margin policy.
+        Magnitude [V], [V m-1] or [J] before the margin policy.
     surfaces : tuple of str or None
         None: every surface.
     requirement_id, document, issue, clause, basis : str
-        basis: "standard" (text seen), "case" (given by the case file).
+        basis: "standard", "recollection" (text not seen), "case" (given by the case file).
     margin_factor : float
         The value must stay below allowed / margin_factor.
     margin_basis : str
+    verified : bool
+        Whether the clause was read; without that nothing is "within" it.
+    note : str
     """
 
     kind: Kind
@@ -45,6 +58,8 @@ class Requirement:
     basis: str
     margin_factor: float = 1.0
     margin_basis: str = "none"
+    verified: bool = True
+    note: str = ""
 
     @property
     def limit(self) -> float:
@@ -56,36 +71,36 @@ class Requirement:
         return self.surfaces is None or surface in self.surfaces
 
 
-def _ecss(kind: Kind, allowed: float, clause: str) -> Requirement:
+def _published(one: Criterion) -> Requirement:
     return Requirement(
-        kind=kind,
-        allowed=allowed,
+        kind=one.kind,
+        allowed=one.allowed,
         surfaces=None,
-        requirement_id=f"ECSS-E-ST-20-06C {clause}",
-        document="ECSS-E-ST-20-06C",
-        issue="31 July 2008",  # Rev.1 of 15 May 2019 replaces it; its text was not seen
-        clause=clause,
-        basis="standard",
+        requirement_id=f"{one.document} {one.clause}".strip(),
+        document=one.document,
+        issue=one.issue,
+        clause=one.clause,
+        basis="standard" if one.verified else "recollection",
+        verified=one.verified,
+        note=one.note,
     )
 
 
-DEFAULTS = (
-    _ecss("normal", 1000.0, "6.2.1 a.1"),
-    _ecss("field", 1e7, "6.2.1 a.2"),
-    _ecss("inverted", 100.0, "6.2.1 a.3"),
-)
+DEFAULTS = tuple(_published(one) for one in CRITERIA["ECSS"])
 """ECSS-E-ST-20-06C (31 July 2008), clause 6.2.1 a: the limits without a case's own."""
 
 
-def requirements(case: Case) -> tuple[Requirement, ...]:
+def requirements(
+    case: Case, kinds: Sequence[Kind] = tuple(KIND_MEANING)
+) -> tuple[Requirement, ...]:
     """Limits of a case: a ``[[limit]]`` replaces the default of its kind and scope, else adds.
 
     A limit for all surfaces replaces the default of its kind; one for named surfaces
-    replaces it for these surfaces only.
+    replaces it for these surfaces only. `kinds` selects.
     """
     own = [_own(limit, i) for i, limit in enumerate(case.limit)]
     found = []
-    for default in DEFAULTS:
+    for default in map(_published, CRITERIA[case.review.criteria]):
         same = [r for r in own if r.kind == default.kind]
         if any(r.surfaces is None for r in same):
             continue
@@ -95,11 +110,13 @@ def requirements(case: Case) -> tuple[Requirement, ...]:
             found.append(default)
         elif rest:
             found.append(replace(default, surfaces=rest))
-    return (*found, *own)
+    return tuple(r for r in (*found, *own) if r.kind in kinds)
 
 
 def _own(limit: Limit, number: int) -> Requirement:
-    allowed = limit.allowed_V_m if limit.kind == "field" else limit.allowed_V
+    allowed = {"field": limit.allowed_V_m, "energy": limit.allowed_J}.get(
+        limit.kind, limit.allowed_V
+    )
     assert allowed is not None  # the case reader refused a limit without
     policy = limit.margin_policy
     return Requirement(
@@ -113,6 +130,8 @@ def _own(limit: Limit, number: int) -> Requirement:
         basis="case",
         margin_factor=1.0 if policy is None else policy.factor,
         margin_basis="none" if policy is None else policy.basis,
+        verified=limit.clause_verified,
+        note=limit.reason or "",
     )
 
 
@@ -121,7 +140,7 @@ class Standing:
     """A value against a requirement.
 
     value carries its sign (normal: <= 0); margin = limit - |value|, negative when
-    exceeded; margin_dB None where the value is 0.
+    exceeded; margin_dB None where the value is 0, 20 log10 of the ratio (energy: 10 log10).
     """
 
     requirement: Requirement
@@ -134,18 +153,24 @@ class Standing:
 def standing(requirement: Requirement, value: float) -> Standing:
     """Compare a signed worst value with a requirement.
 
-    For "normal" only a negative value, for "inverted" only a positive one counts.
+    For a normal gradient only a negative value, for an inverted one only a positive counts.
     """
-    relevant = {
-        "normal": max(0.0, -value),
-        "inverted": max(0.0, value),
-        "field": abs(value),
-    }[requirement.kind]
+    relevant = size_of(requirement.kind, value)
     limit = requirement.limit
+    per_decade = 10.0 if requirement.kind == "energy" else 20.0
     return Standing(
         requirement=requirement,
         value=value,
         margin=limit - relevant,
-        margin_dB=20.0 * log10(limit / relevant) if relevant > 0.0 else None,
+        margin_dB=per_decade * log10(limit / relevant) if relevant > 0.0 else None,
         exceeded=relevant > limit,
     )
+
+
+def size_of(kind: Kind, value: float) -> float:
+    """Magnitude of a signed value that counts against a limit of a kind, >= 0."""
+    if kind in ("normal", "neighbour normal"):
+        return max(0.0, -value)
+    if kind in ("inverted", "neighbour inverted"):
+        return max(0.0, value)
+    return abs(value)

@@ -34,13 +34,14 @@ def sentence(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
         "field": f"holds {size} across its film",
     }[requirement.kind]
     return (
-        f"{judgement.surface} {what} at {_when(loaded, mode, peak.time_s)}; allowed {limit} "
+        f"{judgement.surface} {what} at {when(loaded, mode, peak.time_s)}; allowed {limit} "
         f"({requirement.requirement_id}); law {peak.law}. "
-        f"{_driver(loaded, mode, judgement)}"
+        f"{driver(loaded, mode, mode.laws.index(peak.law), judgement.surface, peak.time_s)}."
     )
 
 
-def _when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
+def when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
+    """Say a time: UTC, how long after which event, in which mode."""
     text = iso_time(loaded.case.epoch, time_s)
     for eclipse in mode.around.eclipses:
         start, end = eclipse.umbra_start, eclipse.umbra_end
@@ -55,7 +56,7 @@ def _when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
         name = mode.plasmas[last.plasma].name
         text += f", {span(round(time_s) - round(last.onset_s))} after the onset of '{name}'"
     if not mode.around.episodes and not mode.around.eclipses:
-        text = f"{span(time_s)} after the start in mode '{mode.name}'"
+        text = f"{span(time_s)} after the start"
     # a peak at the edge of a mode was reached before it
     leg = mode.way.legs[int(mode.around.leg(np.array(np.nextafter(time_s, 0.0))))]
     if leg.modes:
@@ -63,30 +64,34 @@ def _when(loaded: LoadedCase, mode: ModeRun, time_s: float) -> str:
     return text
 
 
-def _driver(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> str:
-    """Name the largest currents on the surface and on what holds structure."""
-    member = mode.laws.index(judgement.peak.law)
-    time = np.array([judgement.peak.time_s])
+def driver(loaded: LoadedCase, mode: ModeRun, member: int, surface: str, time_s: float) -> str:
+    """Name the largest currents on a surface, if any is given, and on what holds structure."""
+    time = np.array([time_s])
     state = mode.trajectories[member](time)
     arriving = mode.balance.flows(member, time, state)
     flows = arriving.surface_A_m2[0]
     names = loaded.case.names
-    own = flows[names.index(judgement.surface)]
-    up, down = int(np.argmax(own)), int(np.argmin(own))
-    text = (
-        f"Currents there: {WORDS[MECHANISMS[up]]} {1e6 * own[up]:+.2g}, "
-        f"{WORDS[MECHANISMS[down]]} {1e6 * own[down]:+.2g} µA/m2"
-    )
+    text = "Currents there"
+    if surface:
+        own = flows[names.index(surface)]
+        up, down = int(np.argmax(own)), int(np.argmin(own))
+        text += (
+            f": {WORDS[MECHANISMS[up]]} {1e6 * own[up]:+.2g}, "
+            f"{WORDS[MECHANISMS[down]]} {1e6 * own[down]:+.2g} µA/m2"
+        )
     on_structure = [i for i, node in enumerate(mode.net.surface_node) if node == 0]
     if on_structure:
-        net = flows[on_structure].sum(axis=-1) * mode.net.area_m2[on_structure]
+        net = flows[on_structure].sum(axis=-1) * mode.net.of(member).area_m2[on_structure]
         pulls = on_structure[int(np.argmin(net))]
         if net.min() < 0.0:
             text += f"; structure is drawn down by '{names[pulls]}' ({1e6 * net.min():+.2g} µA)"
     for name, current in zip(mode.balance.emitters.names, arriving.emitter_A[0], strict=True):
         if current > 0.0:
             text += f"; emitter '{name}' gives structure {1e6 * current:+.3g} µA"
-    return text + "."
+    strings = () if mode.balance.strings is None else mode.balance.strings.names
+    for name, current in zip(strings, arriving.string_A[0], strict=True):
+        text += f"; string '{name}' gives structure {1e6 * current:+.3g} µA"
+    return text
 
 
 def first_fixes(loaded: LoadedCase, judgements: Sequence[Judgement]) -> dict[str, list[str]]:
@@ -97,13 +102,14 @@ def first_fixes(loaded: LoadedCase, judgements: Sequence[Judgement]) -> dict[str
     fixes: dict[str, list[str]] = {}
     for judgement in unmet(judgements):
         surface = next(s for s in loaded.case.surface if s.name == judgement.surface)
-        names = fixes.setdefault(_first_fix(surface), [])
+        names = fixes.setdefault(first_fix(surface), [])
         if surface.name not in names:
             names.append(surface.name)
     return fixes
 
 
-def _first_fix(surface: Surface) -> str:
+def first_fix(surface: Surface) -> str:
+    """Suggest what to try first on a surface; nothing was run with it."""
     if surface.floating:
         return "a bleed resistor to structure ([[link]])"
     if surface.material.startswith("cover glass"):

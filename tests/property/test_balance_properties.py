@@ -173,7 +173,8 @@ def solve(monkeypatch: pytest.MonkeyPatch, current: Callable[[Array], Array]) ->
         return current(potential), (current(potential + h) - current(potential - h)) / (2.0 * h)
 
     monkeypatch.setattr(balance, "net_current", net)
-    model = SimpleNamespace(electron_spectra=(), ion_spectra=())
+    monkeypatch.setattr(balance, "gross_current", lambda *_: 1.0)
+    model = SimpleNamespace(electron_spectra=(), ion_spectra=(), escape_breaks_V=())
     return floating_potentials(model, 0.0)  # type: ignore[arg-type]
 
 

@@ -11,9 +11,24 @@ import pytest
 from mpmath import mp
 from typer.testing import CliRunner
 
+from charging.case import load_case
+from charging.cautions import cautions
 from charging.cli import app
-from charging.currents.emission import SECONDARY_LAWS, backscatter_yield, emitter, law_of
+from charging.currents.balance import floating_potentials
+from charging.currents.collection import SPHERE
+from charging.currents.emission import (
+    SECONDARY_LAWS,
+    backscatter_yield,
+    electron_tables,
+    emitter,
+    law_of,
+)
+from charging.currents.surface import surface_model
+from charging.currents.uncharged import what_decides
+from charging.orbit_run import run_case
 from charging.point import floating_point
+from environments.catalogue import load_plasma
+from environments.spectrum import solar_spectrum
 from materials import MaterialError, library_text, load_material, read_material
 from materials.backscatter import (
     ANGLE_LAWS,
@@ -25,7 +40,7 @@ from materials.backscatter import (
     substrate_share,
 )
 from materials.record import EMISSION_LAWS
-from materials.secondary import LAW_FACTS, YIELD_LAWS, fitted_range_eV
+from materials.secondary import LAW_FACTS, YIELD_LAWS, YieldLaw, fitted_range_eV
 
 
 @pytest.mark.parametrize("angle", ANGLE_LAWS)
@@ -147,12 +162,24 @@ def test_onset_command() -> None:
     rows = json.loads(done.stdout)
     assert list(rows[0]) == [
         "material", "critical_temperature_eV", "anticritical_temperature_eV", "law",
-        "backscatter", "angle",
+        "backscatter", "angle", "first_crossover_eV", "second_crossover_eV", "law_fitted_to_eV",
+        "law_spread_eV", "as_printed",
     ]  # fmt: skip
+    for row in rows:
+        same = [r for r in rows if (r["material"], r["angle"]) == (row["material"], row["angle"])]
+        found = [r["critical_temperature_eV"] for r in same]
+        assert row["law_spread_eV"] == [min(found), max(found)]
+        assert row["law_fitted_to_eV"] > 1000.0
+        # a cold flux cannot charge where every single energy releases more than it brings
+        assert row["first_crossover_eV"] < row["second_crossover_eV"]
+        assert row["anticritical_temperature_eV"] < row["first_crossover_eV"]
+        assert row["as_printed"]["critical_temperature_eV"] > 0.4 * row["critical_temperature_eV"]
     assert (rows[0]["law"], rows[0]["angle"]) == ("sanders_inouye_1979", "isotropic")
     assert {row["material"] for row in rows} == {"polyimide film", "gold"}
     text = CliRunner().invoke(app, ["onset", "bare collector", "gold"]).stdout
     assert "over the laws" in text
+    assert "draine_salpeter_1979: 8 x/(1 + x)^3" in text
+    assert "E2 eV" in text
     assert "charges at any" in text
 
 
@@ -179,3 +206,77 @@ def test_point_takes_every_law() -> None:
         done = CliRunner().invoke(app, [*arguments, "--law", law])
         assert done.exit_code == 0, done.output
         assert json.loads(done.stdout)["law"] == law
+
+
+def test_a_case_takes_every_law() -> None:
+    from charging.case_tables import Emission
+
+    for law in ("both", *YIELD_LAWS):
+        assert Emission(secondary_law=law).secondary_law == law
+    allowed = set(Emission.model_json_schema()["properties"]["secondary_law"]["enum"])
+    assert allowed == {"both", *YIELD_LAWS}
+    with pytest.raises(ValueError):
+        Emission(secondary_law="vaughan_1989")
+
+
+ECSS = "ECSS geostationary worst case"
+
+
+@pytest.mark.parametrize("name", ["alumina", "cover glass, MgF2-coated", "polyimide film"])
+def test_what_leaves_a_dark_dielectric_uncharged_is_what_roots_say(name: str) -> None:
+    """The sentences follow from floating potentials, computed by tables, at both incidences."""
+    record, around = load_material(name), load_plasma(ECSS)
+
+    def charged(law: YieldLaw, isotropic: bool) -> bool:
+        model = surface_model([record], [around], solar_spectrum(), law=law, radius_m=1.0)
+        hot = model.electrons.temperature_eV
+        table = electron_tables([emitter(record, law, isotropic=isotropic)], hot, SPHERE)
+        return floating_potentials(replace(model, electron_table=table), 0.0).reached_V < -100.0
+
+    isotropic = {law: charged(law, True) for law in SECONDARY_LAWS}
+    left = [law for law in SECONDARY_LAWS if not isotropic[law]]
+    texts = list(what_decides(record, around, radius_m=1.0))
+    assert any("the law decides" in text for text in texts) == (0 < len(left) < 2)
+    by_angle = any(charged(law, False) for law in left)
+    assert any("the angle factor decides" in text for text in texts) == by_angle
+    if name == "polyimide film":
+        assert texts == []
+    else:
+        assert left == ["lin_joy_2005"]
+        notes = floating_point(name, ECSS, law="lin_joy_2005").notes
+        assert any("angle factor decides" in note for note in notes)
+
+
+def test_run_says_which_assumption_leaves_a_dark_dielectric_uncharged(tmp_path) -> None:
+    case = tmp_path / "case.toml"
+    case.write_text(f"""title = "dark"
+[orbit]
+kind = "fixed"
+illumination = 0.0
+sun_direction = [1.0, 0.0, 0.0]
+duration_h = 0.001
+[plasma]
+use = "{ECSS}"
+accept_assumed = "a test"
+[body]
+radius_m = 1.0
+[[surface]]
+name = "face"
+material = "alumina"
+area_m2 = 1.0
+thickness_m = 1e-4
+temperature_K = 290.0
+normal = [0.0, 0.0, 1.0]
+attached_to = "structure"
+[[surface]]
+name = "back"
+material = "gold"
+area_m2 = 1.0
+normal = [0.0, 0.0, -1.0]
+""")
+    loaded = load_case(case)
+    texts = cautions(loaded, run_case(loaded).modes[0])
+    dark = [text for text in texts if text.startswith(f'dark in plasma "{ECSS}": alumina')]
+    assert len(dark) == 2
+    assert "the law decides" in dark[0]
+    assert "the angle factor decides" in dark[1]

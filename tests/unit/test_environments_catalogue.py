@@ -202,3 +202,24 @@ def test_environments_import_neither_materials_nor_charging():
                     else []
                 )
                 assert not [n for n in names if n.split(".")[0] in ("materials", "charging")]
+
+
+@pytest.mark.parametrize(
+    ("law", "key", "nearest", "owner"),
+    [
+        ("maxwellian", "spectrum_fil", "spectrum_file", "tabulated"),
+        ("maxwellian", "spectrum_file", None, "tabulated"),
+        ("maxwellian", "pitch_angl", "pitch_angle", "fontheim"),
+        ("kappa", "pitch_angle", None, "flat and maxwellian"),
+        ("fontheim", "pitch_angel", "pitch_angle", None),
+        ("tabulated", "spectrumfile", "spectrum_file", None),
+        ("maxwellian", "temprature_eV", "temperature_eV", None),
+    ],
+)
+def test_a_key_of_another_law_is_named_with_its_law(law, key, nearest, owner):
+    row = {"species": "electron", "law": law, key: "isotropic"}
+    with pytest.raises(EnvironmentDataError) as caught:
+        read_plasma({"title": "t", "source": "t", "population": [row]})
+    assert caught.value.key == ("population", 0, key)
+    assert caught.value.nearest == nearest
+    assert (f'"{owner}"' in caught.value.problem) == (owner is not None)

@@ -9,7 +9,15 @@ import pytest
 
 from charging.case import LoadedCase, load_case_text
 from charging.orbit_run import ModeRun, solve_mode
-from charging.review.limits import DEFAULTS, Kind, Requirement, requirements, standing
+from charging.review.limits import (
+    DEFAULTS,
+    KIND_MEANING,
+    RUN_KINDS,
+    UNITS,
+    Requirement,
+    requirements,
+    standing,
+)
 from charging.summary import mode_summary, worst
 
 CASE = """\
@@ -53,7 +61,8 @@ def with_limits(*tables: str, text: str = ACCEPTED) -> LoadedCase:
 
 
 def found(loaded: LoadedCase) -> set[tuple[str, float, tuple[str, ...] | None]]:
-    return {(r.kind, r.limit, r.surfaces) for r in requirements(loaded.case)}
+    """Limits against structure and in dielectrics; those of pairs follow the same rules."""
+    return {(r.kind, r.limit, r.surfaces) for r in requirements(loaded.case, RUN_KINDS)}
 
 
 def test_defaults_are_the_published_ones() -> None:
@@ -119,7 +128,7 @@ def test_margin_policy_divides_the_limit() -> None:
     assert own.basis == "case"
 
 
-NORMAL, FIELD, INVERTED = DEFAULTS
+NORMAL, FIELD, INVERTED = DEFAULTS[:3]
 
 
 @pytest.mark.parametrize(
@@ -225,6 +234,16 @@ def test_judged_value_is_the_worst_of_both_laws(solved: ModeRun) -> None:
                 assert peak.law == pick(by_law, key=lambda law: by_law[law])
 
 
-def test_kinds_are_the_three_of_the_case_file() -> None:
-    kinds: set[Kind] = {r.kind for r in DEFAULTS}
-    assert kinds == {"normal", "inverted", "field"}
+def test_pairs_have_the_figures_of_the_same_clause() -> None:
+    """6.2.1 a speaks of adjacent conductors: structure, or a neighbour that floats."""
+    by_kind = {r.kind: r for r in DEFAULTS}
+    for kind in ("normal", "inverted"):
+        pair = by_kind[f"neighbour {kind}"]  # type: ignore[index]
+        own = by_kind[kind]  # type: ignore[index]
+        assert (pair.limit, pair.clause) == (own.limit, own.clause)
+
+
+def test_kinds_have_units_and_words() -> None:
+    assert set(KIND_MEANING) == set(UNITS)
+    assert {r.kind for r in DEFAULTS} < set(KIND_MEANING)
+    assert {UNITS[kind] for kind in RUN_KINDS} == {"V", "V m-1"}

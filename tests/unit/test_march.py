@@ -21,8 +21,29 @@ ANYTHING = Tolerance(absolute=1e30, relative=0.0)
 """Accepts every step, so that breaks alone set the step size."""
 
 
+class Plain:
+    """A system that needs to know of a time the time alone."""
+
+    def rhs_and_jacobian(self, member: Index, time_s: Array, y: Array) -> tuple[Array, Array]:
+        raise NotImplementedError
+
+    def rhs(self, member: Index, time_s: Array, y: Array) -> Array:
+        raise NotImplementedError
+
+    def moments(self, member: Index, time_s: Array) -> list[Array]:
+        return list(time_s)
+
+    def rates_at(self, member: Index, moment: Array, y: Array) -> Array:
+        return self.rhs(member, moment, y)
+
+    def start(
+        self, member: Index, moment: Array, later: Array, y: Array
+    ) -> tuple[Array, Array, Array]:
+        return *self.rhs_and_jacobian(member, moment, y), self.rhs(member, later, y)
+
+
 @dataclass(frozen=True)
-class Problem:
+class Problem(Plain):
     """``M y' = f(t, y)`` of a two-variable stiff system with a parameter per member.
 
     M (y0, y1)' = (-rate (y0 - cos t) + 0.3 y0 y1, sin 3t - y1^3 - y0)
@@ -52,7 +73,7 @@ class Problem:
     def controlled(self, y: Array) -> Array:
         return y
 
-    def admissible(self, y: Array) -> NDArray[np.bool_]:
+    def admissible(self, member: Index, y: Array) -> NDArray[np.bool_]:
         return (np.abs(y) < 1e3).all(axis=-1)
 
     def reference(self, member: int, start: Array, times: Array) -> Array:
@@ -147,7 +168,7 @@ def test_stiff_problem_within_tolerance_of_radau() -> None:
 
 
 @dataclass(frozen=True)
-class Decay:
+class Decay(Plain):
     """y' = -rate (y - cos t)."""
 
     rate: float
@@ -162,7 +183,7 @@ class Decay:
     def controlled(self, y: Array) -> Array:
         return y
 
-    def admissible(self, y: Array) -> NDArray[np.bool_]:
+    def admissible(self, member: Index, y: Array) -> NDArray[np.bool_]:
         return np.ones(len(y), dtype=np.bool_)
 
 
@@ -195,7 +216,7 @@ def test_a_fast_mode_costs_few_steps(longest: float, between: float) -> None:
 
 
 @dataclass(frozen=True)
-class Ramp:
+class Ramp(Plain):
     """y' = |t - kink|: polynomial on both sides, so exact when stepped on."""
 
     kink: float
@@ -210,7 +231,7 @@ class Ramp:
     def controlled(self, y: Array) -> Array:
         return y
 
-    def admissible(self, y: Array) -> NDArray[np.bool_]:
+    def admissible(self, member: Index, y: Array) -> NDArray[np.bool_]:
         return np.ones(len(y), dtype=np.bool_)
 
 
@@ -278,7 +299,7 @@ def assert_same(one: Trajectory, other: Trajectory) -> None:
 
 
 @dataclass(frozen=True)
-class BlowUp:
+class BlowUp(Plain):
     """y' = y^2: infinite at t = 1 from y = 1."""
 
     limit: float
@@ -293,8 +314,8 @@ class BlowUp:
     def controlled(self, y: Array) -> Array:
         return y
 
-    def admissible(self, y: Array) -> NDArray[np.bool_]:
-        return (np.abs(y) < self.limit).all(axis=-1)
+    def admissible(self, member: Index, y: Array) -> NDArray[np.bool_]:
+        return np.asarray((np.abs(y) < self.limit).all(axis=-1))
 
 
 def test_a_solution_that_leaves_the_domain_is_an_error_that_says_when() -> None:

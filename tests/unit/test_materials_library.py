@@ -281,7 +281,6 @@ def set_path(document: dict[str, Any], path: tuple[str | int, ...], entry: objec
         (("work_funktion_eV",), {}, ("work_funktion_eV",), "unknown key"),
         (("work_function_eV",), ..., ("work_function_eV",), "missing"),
         (("work_function_eV",), 5.1, ("work_function_eV",), "no table"),
-        (("work_function_eV", "source"), ..., ("work_function_eV", "source"), "missing"),
         (("work_function_eV", "source"), " ", ("work_function_eV", "source"), "no text"),
         (("work_function_eV", "basis"), "guess", ("work_function_eV", "basis"), "not allowed"),
         (("work_function_eV", "spread"), ..., ("work_function_eV", "spread"), "missing"),

@@ -227,7 +227,7 @@ def test_states_outside_the_tables_or_the_conduction_law_are_refused(
     y[1, 0] = 3e5
     y[2, 1] = 1.2e5  # 1.2e9 V/m in 100 µm
     y[3, 0], y[3, 1] = -1.5e5, -6e4
-    assert balance.admissible(y).tolist() == [True, False, False, False]
+    assert balance.admissible(np.zeros(4, dtype=np.intp), y).tolist() == [True, False, False, False]
 
 
 def test_error_norm_sees_absolute_and_differential_potentials(balance: ChargeBalance) -> None:

@@ -221,8 +221,8 @@ def test_flare_factors_reach_spectrum_table_and_case() -> None:
     text = CASE.read_text(encoding="utf-8")
     assert text.count("[sun]\n") == 1
     loaded = load_case_text(text.replace("[sun]\n", '[sun]\nflare = {"X-ray" = 100.0}\n'))
-    sun = spectrum_of(loaded)
-    quiet = spectrum_of(load_case_text(text))
+    sun = spectrum_of(loaded.case)
+    quiet = spectrum_of(load_case_text(text).case)
     x_ray = np.array([band == "X-ray" for band in sun.band])
     ratio = sun.photon_flux_m2_s / quiet.photon_flux_m2_s
     assert ratio == pytest.approx(np.where(x_ray, 100.0, 1.0))

@@ -6,6 +6,8 @@ from pathlib import Path
 
 import pytest
 
+from charging.arguments import as_plasma
+from charging.case import load_case
 from charging.case_library import Sources, find_plasma
 from charging.errors import InputError
 from charging.point import floating_point
@@ -69,3 +71,64 @@ def test_missing_spectrum_names_file_and_line(folder: Path) -> None:
         find_plasma("arc.toml", Sources(folder / "case.toml"))
     assert caught.value.line == 7
     assert "no such file" in str(caught.value)
+
+
+ALONE = """title = "electrons alone"
+source = "a test"
+
+[[population]]
+species = "electron"
+density = "1 cm-3"
+temperature = "1 keV"
+"""
+NEGATIVE = """
+[[population]]
+mass_u = 16.0
+charge_number = -1
+density = "1 cm-3"
+temperature = "1 keV"
+"""
+CASE = """title = "dark"
+[orbit]
+kind = "fixed"
+illumination = 0.0
+sun_direction = [1.0, 0.0, 0.0]
+duration_h = 0.1
+[plasma]
+use = "alone.toml"
+[body]
+radius_m = 1.0
+[[surface]]
+name = "face"
+material = "gold"
+area_m2 = 1.0
+normal = [0.0, 0.0, 1.0]
+"""
+
+
+def test_electrons_alone_are_refused_with_file_and_line_and_can_still_be_looked_at(
+    tmp_path: Path,
+) -> None:
+    file = tmp_path / "alone.toml"
+    file.write_text(ALONE)
+    (tmp_path / "case.toml").write_text(CASE)
+    refused = (
+        lambda: load_case(tmp_path / "case.toml"),
+        lambda: floating_point("gold", str(file)),
+    )
+    for ask in refused:
+        with pytest.raises(InputError, match="holds no positive ions") as caught:
+            ask()
+        assert caught.value.line == 4
+        assert "alone.toml" in str(caught.value)
+    assert as_plasma(str(file)).populations[0].temperature_eV == 1e3
+
+
+def test_negative_ions_are_refused_when_they_are_read(tmp_path: Path) -> None:
+    file = tmp_path / "negative.toml"
+    file.write_text(ALONE + NEGATIVE)
+    with pytest.raises(InputError, match="negative ions, which are not modelled") as caught:
+        as_plasma(str(file))
+    assert caught.value.line == 11
+    assert "charge_number = -1" in str(caught.value)
+    assert "negative.toml" in str(caught.value)

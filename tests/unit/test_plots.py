@@ -18,7 +18,7 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from matplotlib.text import Text
 
-from charging.dataset import ALL_MECHANISMS, REGION_MASKS
+from charging.dataset import ALL_MECHANISMS
 from charging.errors import InputError
 from charging.plot_currents import structure_patches, worst_moments
 from charging.plot_page import Page, spread_out, text_width_in, voltage_ticks
@@ -33,6 +33,7 @@ from charging.plots import (
     plot_all,
     potentials_page,
 )
+from charging.result_plasma import REGION_MASKS
 
 START = np.datetime64("2031-03-20T00:00:00", "ns")
 LIMITS = [

@@ -99,8 +99,8 @@ def test_lookup_against_direct_path(electrons: str, collection: str) -> None:
     worst = (np.abs(net - direct.by_mechanism.sum(axis=-1)) / gross).max()
     bend = (np.abs(slope - direct.slope) * np.abs(v) / gross).max()
     print(f"{worst:.1e} {bend:.1e}")
-    assert worst < 3e-7
-    assert bend < 1e-4
+    assert worst < 1e-8
+    assert bend < 1e-5
 
 
 def test_repelled_is_the_same_in_every_geometry() -> None:

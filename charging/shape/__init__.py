@@ -1,0 +1,1 @@
+"""Geometry of the spacecraft: panels, field, shadow, picture."""

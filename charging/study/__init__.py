@@ -1,0 +1,1 @@
+"""Studies: coatings and uncertain numbers varied over many members of one case."""
