@@ -186,9 +186,13 @@ def test_a_folder_that_refuses_is_named(tmp_path: Path, place: str) -> None:
     case(tmp_path)
     target = tmp_path / place
     with pytest.raises(InputError, match="--out"):
-        check_target(target)
-        with result_folder(target):
-            pytest.fail("entered")
+        enter(target)
+
+
+def enter(target: Path) -> None:
+    check_target(target)
+    with result_folder(target):
+        pytest.fail("entered")
 
 
 # --- kills, pipes, two at once --------------------------------------------------------------------
