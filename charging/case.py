@@ -144,7 +144,8 @@ def load_case(
         Anything that cannot be used, with file, line, key, value and what is allowed.
     """
     path = Path(path)
-    return _loaded(read_toml(path), path, Sources(path, allow_outside), orbit_only)
+    toml = read_toml(path, absent="A commented case to start from: halflit case new --out FILE")
+    return _loaded(toml, path, Sources(path, allow_outside), orbit_only)
 
 
 def load_case_text(

@@ -126,15 +126,18 @@ def _barriers(loaded: LoadedCase, mode: ModeRun) -> list[str]:
         )
     if balance.barriers is None or not balance.models:
         return found
+    least = 1.0
     for member, path in enumerate(mode.trajectories):
         which = np.full(len(path.y_end), member)
         times = path.start_s + path.step_s
+        standing = balance.vacuum(which, balance.table.prepared(which, mode.around.at(times)[0]))
+        least = least if standing is None else min(least, float(standing.min()))
         surface_V = mode.net.potentials(path.y_end)[:, mode.net.surface_node]
         worst = overcount(
             balance.models[member].electrons,
             mode.around.strength(times),
             surface_V,
-            balance.heights(which, path.y_end),
+            balance.heights(which, path.y_end, mode.around.at(times)[0]),
         )
         if worst.share > NOTICEABLE:
             found.append(
@@ -142,4 +145,9 @@ def _barriers(loaded: LoadedCase, mode: ModeRun) -> list[str]:
                 f'too many electrons are collected on "{loaded.case.names[worst.surface]}" '
                 f"({mode.laws[member]})"
             )
+    if least < 1.0:
+        found.append(
+            f"barriers fade, down to {least:.0%}, where the electron Debye length is shorter than "
+            "the body's radius; that they are gone at a tenth of it is assumed"
+        )
     return found

@@ -148,7 +148,7 @@ def mode_dataset(run: CaseRun, mode: ModeRun, member: int = 0) -> xr.Dataset:
         "structure_potential": node_potential[:, 0],
         "differential_potential": surface - node_potential[:, 0],
         "electric_field": field,
-        "barrier_height": mode.balance.heights(np.full(len(times), member), state).T,
+        "barrier_height": mode.balance.heights(np.full(len(times), member), state, setting).T,
         "current_density": by_mechanism,
         "emitter_current": emitted,
         "string_current": strung,

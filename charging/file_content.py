@@ -8,7 +8,7 @@ from pathlib import Path
 from charging.errors import InputError
 
 
-def bytes_of(path: Path, file: str, most: int) -> bytes:
+def bytes_of(path: Path, file: str, most: int, *, absent: str | None = None) -> bytes:
     """Return the content of an ordinary file.
 
     Parameters
@@ -19,6 +19,8 @@ def bytes_of(path: Path, file: str, most: int) -> bytes:
         How messages call it.
     most : int
         Bytes allowed.
+    absent : str, optional
+        What to do where there is no such file.
 
     Raises
     ------
@@ -34,7 +36,7 @@ def bytes_of(path: Path, file: str, most: int) -> bytes:
         with path.open("rb") as stream:
             content = stream.read(most + 1)
     except FileNotFoundError:
-        raise InputError("there is no such file", file=file) from None
+        raise InputError("there is no such file", file=file, next_step=absent) from None
     except (OSError, ValueError, RuntimeError) as error:
         reason = getattr(error, "strerror", None) or "not a usable path"
         raise InputError(f"cannot be read: {reason.lower()}", file=file) from None

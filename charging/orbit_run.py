@@ -39,8 +39,8 @@ LARGEST_TURN = 1.0 / 48.0
 LARGEST_TURN_IN_REGIONS = 1.0 / 360.0
 """The same where the plasma changes along the orbit, by 1 degree, as thick as an auroral arc."""
 
-SETTLING_S = 1e12
-"""Length of the march with frozen surroundings that finds an equilibrium start."""
+SETTLING_S, SETTLING_ATTEMPTS = 1e12, 20_000
+"""Length of the march with frozen surroundings that finds an equilibrium, and its tries."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -338,5 +338,6 @@ def settled(
         span_s=(0.0, SETTLING_S),
         tolerance=tolerance,
         first_step_s=FIRST_STEP_S,
+        attempts=SETTLING_ATTEMPTS,
     )
     return np.stack([trajectory.y_end[-1] for trajectory in reached])

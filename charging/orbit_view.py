@@ -17,6 +17,7 @@ from charging.case import LoadedCase
 from charging.clock import iso_time
 from charging.errors import InputError
 from charging.flight import eclipses_of, revolution_s, trajectory_of
+from charging.orbit_regions import Stay, add_regions, region_finder, stays
 from charging.written_file import written_file
 from environments.eclipse import Eclipse
 from environments.ephemeris_table import write_orbit_netcdf
@@ -73,6 +74,8 @@ class OrbitReport:
     beta_angle_deg, beta_angle_end_deg : float or None
         Sun above the orbit plane [deg] at start and end, positive on the side of r × v; None
         for a fixed case.
+    regions : tuple of Stay
+        Stays in regions of space; empty where the plasma of the case is not theirs.
     """
 
     title: str
@@ -85,6 +88,7 @@ class OrbitReport:
     moon: bool
     beta_angle_deg: float | None
     beta_angle_end_deg: float | None
+    regions: tuple[Stay, ...] = ()
 
 
 def orbit_report(loaded: LoadedCase) -> OrbitReport:
@@ -127,6 +131,7 @@ def orbit_report(loaded: LoadedCase) -> OrbitReport:
         moon=case.sun.moon,
         beta_angle_deg=float(ends[0]),
         beta_angle_end_deg=float(ends[1]),
+        regions=stays(loaded),
     )
 
 
@@ -142,7 +147,8 @@ def orbit_dataset(loaded: LoadedCase) -> xr.Dataset:
     -------
     xarray.Dataset
         What `write_orbit` writes: position, velocity, sun_direction, sun_distance, illumination,
-        beta_angle, and the place in the Earth's dipole field within its years; CF-1.11.
+        beta_angle, the place in the Earth's dipole field within its years, and the region of
+        space where the case takes its plasma from regions; CF-1.11.
 
     Raises
     ------
@@ -202,6 +208,9 @@ def write_orbit(loaded: LoadedCase, target: Path, *, option: str = "file") -> Or
             _attributes(loaded, trajectory, report),
             magnetic=_dipole_known(trajectory, case.duration_s),
         )
+        find = region_finder(loaded)
+        if find is not None:
+            add_regions(scratch, find)
     return report
 
 

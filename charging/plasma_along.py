@@ -143,9 +143,13 @@ class PlasmaAlong:
 
     def unfed_wakes(self) -> NDArray[np.bool_]:
         """Whether surfaces [S] stand at some time in a wake that no light ions fill."""
-        if self.streams is None:
-            return np.zeros(0, dtype=bool)
-        stream = self.streams.stream(self.table[:, len(self.basis) :])
+        return np.asarray(self.unfed_at(self.knots_s).any(axis=0))
+
+    def unfed_at(self, time_s: Array) -> NDArray[np.bool_]:
+        """Whether surfaces [m, S] stand at times [m] in a wake that no light ions fill."""
+        stream = self.at(time_s)[1]
+        if stream is None or self.streams is None:
+            return np.zeros((len(time_s), 0), dtype=bool)
         mass = np.array([one.mass_kg for one in self.streams.species])
         thermal = np.sqrt(2.0 * e * stream.temperature_eV / mass)
         speed = np.where(stream.speed_m_s > 0.0, stream.speed_m_s, 1.0)
@@ -156,8 +160,9 @@ class PlasmaAlong:
             stream.ram_m_s / speed[:, None, :],
         )
         # where half of the ions or more stream
-        streaming = stream.density_m3.sum(axis=-1) > 0.5 * self._electrons()
-        return np.asarray((~fed & streaming[:, None]).any(axis=0))
+        electrons = np.interp(time_s, self.knots_s, self._electrons())
+        streaming = stream.density_m3.sum(axis=-1) > 0.5 * electrons
+        return np.asarray(~fed & streaming[:, None])
 
     def _electrons(self) -> Array:
         """Density of the electrons at the knots [m-3]."""

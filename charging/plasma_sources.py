@@ -152,6 +152,11 @@ def _with_arc(
     return _sampled(found)._replace(arc=Arc(arc, share))
 
 
+def regions_sampler(case: Case, way: Path, files: CaseFiles) -> Sampler:
+    """Regions along the way of a case with its own activity, without an arc."""
+    return _regions(case, way, activity_of(case, None, files), None)
+
+
 def _regions(case: Case, way: Path, activity: Activity, arc: Plasma | None) -> Sampler:
     def sample(time_s: Array) -> Sampled:
         stamps = moments(case, time_s)

@@ -14,6 +14,7 @@ currents bend, δ is an order of magnitude and no more. A quick look therefore g
 from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import pairwise
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -34,12 +35,16 @@ LONGEST_S = 1200.0
 
 FEWEST = 48
 BEFORE_S = 1e-3  # before surroundings switch
-ROUGH = Tolerance(absolute=1.0, relative=1e-2, method=RODAS3)
-"""Of the march with frozen surroundings that leads to a balance where Newton's method does not."""
+ROUGH = Tolerance(absolute=0.1, relative=1e-4, method=RODAS3)
+"""Of the march with frozen surroundings that leads to a balance where Newton's method does not.
+
+Coarser than the volts behind barriers of kilovolts it wanders about the balance."""
 
 FARTHEST_V, FARTHEST_SHARE = 5.0, 0.3
 """Newton's method may move a potential by this and this share; else a march decides the branch."""
 
+STRIDE_V, STRIDE_SHARE = 2.0, 0.2  # of one step of a relaxation
+RELAXING, RESTING_S = 200, 1e7  # its steps at most; the last of them is longer than this
 ITERATIONS = 8
 CLOSE_V, CLOSE_SHARE = 1e-3, 1e-6
 """A balance is found when a last step of Newton's method is smaller."""
@@ -150,13 +155,44 @@ def _balances(balance: ChargeBalance, times: Array, start: Array) -> tuple[Array
     for k, time in enumerate(times.tolist()):
         found, jacobian, good = _newton(balance, time, y)
         if k == 0 or not good.all():
-            reached = settled(balance, y, ROUGH, time)
-            polished, slope, _ = _newton(balance, time, reached)
             lost = everyone if k == 0 else np.flatnonzero(~good)
-            found[lost], jacobian[lost] = polished[lost], slope[lost]
+            reached, slope, settles = _newton(balance, time, _relaxed(balance, time, y))
+            if not settles[lost].all():
+                reached, slope, _ = _newton(balance, time, settled(balance, y, ROUGH, time))
+            found[lost], jacobian[lost] = reached[lost], slope[lost]
         y = found
         states[:, k], slopes[:, k] = found, jacobian
     return states, slopes
+
+
+def _relaxed(balance: ChargeBalance, time_s: float, start: Array) -> Array:
+    """Roughly where potentials go from `start` [M, n] when a moment lasts.
+
+    Implicit Euler steps that grow as the potentials slow down (pseudo-transient
+    continuation, Kelley & Keyes 1998, SIAM J. Numer. Anal. 35, 508).
+    """
+    which, when = np.arange(len(start)), np.full(len(start), time_s)
+    mass = balance.mass if balance.mass.ndim == 3 else balance.mass[None]
+    y, step_s = start.copy(), np.full(len(start), 1e-6)
+    rate, jacobian = balance.rhs_and_jacobian(which, when, y)
+    for _ in range(RELAXING):
+        change = np.linalg.solve(mass / step_s[:, None, None] - jacobian, rate[..., None])[..., 0]
+        size = np.abs(balance.controlled(change))
+        reach = STRIDE_V + STRIDE_SHARE * np.abs(balance.controlled(y))
+        tried = y + change
+        fits = (size <= reach).all(axis=-1) & balance.admissible(which, tried)
+        tried[~fits] = y[~fits]
+        late, jacobian = balance.rhs_and_jacobian(which, when, tried)
+        # slower by how much, in volts per second
+        slows = [
+            np.abs(np.linalg.solve(mass, r[..., None])[..., 0]).max(axis=-1) for r in (rate, late)
+        ]
+        ratio = slows[0] / np.maximum(slows[1], 1e-300)
+        step_s *= np.where(fits, np.clip(2.0 * ratio, 0.5, 10.0), 0.2)
+        y, rate = tried, late
+        if (fits & (size <= 0.1 * reach).all(axis=-1) & (step_s > RESTING_S)).all():
+            break
+    return y
 
 
 def _newton(
@@ -172,7 +208,10 @@ def _newton(
     reach = FARTHEST_V + FARTHEST_SHARE * np.abs(balance.controlled(start))
     for _ in range(ITERATIONS):
         rate, jacobian = balance.rhs_and_jacobian(which, when, y)
-        step = -np.matmul(np.linalg.pinv(jacobian), rate[..., None])[..., 0]
+        try:
+            step = np.asarray(-np.linalg.solve(jacobian, rate[..., None])[..., 0], np.float64)
+        except np.linalg.LinAlgError:
+            return start, jacobian, np.zeros(len(start), dtype=np.bool_)
         step[done | ~good] = 0.0
         y = y + step
         moved = np.abs(balance.controlled(y - start))
@@ -203,32 +242,55 @@ def _lags(times: Array, states: Array, jacobian: Array, mass: Array, first: Arra
     return lag
 
 
-def surface_rows(look: QuickMode, surfaces: Sequence[str]) -> list[dict[str, float | str]]:
-    """Per surface the worse of all laws: extremes [V] against plasma and structure, lag, times.
+def quick_document(loaded: LoadedCase, looks: Sequence[QuickMode]) -> dict[str, Any]:
+    """A quick look as plain data: the worse of all laws for every surface, in every mode."""
+    modes = [
+        {
+            "mode": look.name,
+            "moments": len(look.times_s),
+            "structure": _row(look, look.structure_V, look.lag_V[..., 0], 0),
+            "surfaces": [
+                {"surface": surface.name, "material": surface.material, **_surface_row(look, i)}
+                for i, surface in enumerate(loaded.case.surface)
+            ],
+        }
+        for look in looks
+    ]
+    largest = max(_across(look) for look in looks)
+    lag = max(float(np.abs(look.surface_lag_V).max()) for look in looks)
+    return {
+        "title": loaded.case.title,
+        "kind": "quasi-steady quick look, no verdict",
+        "laws": [member.law for member in looks[0].members],
+        "largest_lag_share": lag / max(largest, 1.0),
+        "modes": modes,
+    }
 
-    Lags and charging times are those at the moment of the largest lag.
-    """
-    volts, lag = look.surface_V, look.surface_lag_V
-    against = volts - look.structure_V[..., None]
-    rows: list[dict[str, float | str]] = []
-    for i, name in enumerate(surfaces):
-        own = np.abs(lag[..., i])
-        member, at = np.unravel_index(int(np.argmax(own)), own.shape)
-        low = np.unravel_index(int(np.argmin(against[..., i])), own.shape)
-        high = np.unravel_index(int(np.argmax(against[..., i])), own.shape)
-        charging = float(look.charging_s[member, at, look.net.surface_node[i]])
-        rows.append(
-            {
-                "surface": name,
-                "lowest_V": float(volts[..., i].min()),
-                "highest_V": float(volts[..., i].max()),
-                "below_structure_V": float(against[low][i]),
-                "below_structure_after_s": float(look.times_s[low[1]]),
-                "above_structure_V": float(against[high][i]),
-                "above_structure_after_s": float(look.times_s[high[1]]),
-                "largest_lag_V": float(lag[member, at, i]),
-                "largest_lag_after_s": float(look.times_s[at]),
-                "charging_time_s": charging,
-            }
-        )
-    return rows
+
+def _across(look: QuickMode) -> float:
+    """Largest difference to structure of any surface [V]."""
+    return float(np.abs(look.surface_V - look.structure_V[..., None]).max())
+
+
+def _surface_row(look: QuickMode, surface: int) -> dict[str, float | None]:
+    volts = look.surface_V[..., surface]
+    against = volts - look.structure_V
+    node = int(look.net.surface_node[surface])
+    row = _row(look, volts, look.surface_lag_V[..., surface], node)
+    for key, at in (("below", int(np.argmin(against))), ("above", int(np.argmax(against)))):
+        row[f"{key}_structure_V"] = float(against.flat[at])
+        row[f"{key}_structure_after_s"] = float(look.times_s[at % len(look.times_s)])
+    return row
+
+
+def _row(look: QuickMode, volts: Array, lag: Array, node: int) -> dict[str, float | None]:
+    """Extremes of potentials [M, T], largest lag [M, T], and the charging time of a node then."""
+    at = int(np.argmax(np.abs(lag)))
+    charging = float(look.charging_s[..., node].flat[at])
+    return {
+        "lowest_V": float(volts.min()),
+        "highest_V": float(volts.max()),
+        "largest_lag_V": float(lag.flat[at]),
+        "largest_lag_after_s": float(look.times_s[at % len(look.times_s)]),
+        "charging_time_s": charging if np.isfinite(charging) else None,
+    }

@@ -66,17 +66,22 @@ def limit_row(loaded: LoadedCase, mode: ModeRun, judgement: Judgement) -> dict[s
         "mode": judgement.mode,
         "plasma": mode.plasma_at(judgement.peak.time_s) if stand.value else None,
         "age": "begin",
-        "value": stand.value,
+        "value": stand.value if judgement.peak.assessable else None,
         "allowed": requirement.limit,
         "unit": UNITS[requirement.kind],
-        "margin": stand.margin,
-        "margin_dB": stand.margin_dB,
+        "margin": stand.margin if judgement.peak.assessable else None,
+        "margin_dB": stand.margin_dB if judgement.peak.assessable else None,
         "time": _moment_of(loaded, judgement.peak),
         "clause": requirement.clause or None,
         "law": judgement.peak.law,
         "verdict": judgement.verdict,
         "reason": judgement.reason,
     }
+
+
+def _told(peak: Peak) -> float | None:
+    """Value of a peak, or None where no voltage is to be given."""
+    return peak.value if peak.assessable else None
 
 
 def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> dict[str, Any]:
@@ -88,13 +93,13 @@ def mode_document(loaded: LoadedCase, mode: ModeRun, summary: ModeSummary) -> di
             {
                 "surface": peaks.surface,
                 "material": peaks.material,
-                "lowest_V": peaks.lowest.value,
-                "highest_V": peaks.highest.value,
-                "worst_normal_V": peaks.normal.value,
+                "lowest_V": _told(peaks.lowest),
+                "highest_V": _told(peaks.highest),
+                "worst_normal_V": _told(peaks.normal),
                 "worst_normal_time": _moment_of(loaded, peaks.normal),
-                "worst_inverted_V": peaks.inverted.value,
+                "worst_inverted_V": _told(peaks.inverted),
                 "worst_inverted_time": _moment_of(loaded, peaks.inverted),
-                "largest_field_V_m": peaks.field.value,
+                "largest_field_V_m": _told(peaks.field),
                 "verdict": worst([j.verdict for j in judged]),
                 "bonded": peaks.bonded,
                 "limits": [limit_row(loaded, mode, j) for j in judged],

@@ -1,7 +1,7 @@
 """Worst potentials of a run, from the march's own steps, against the limits."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,13 +23,21 @@ INSIDE_STEP = np.arange(11) / 10.0
 """Points of every step of the march at which peaks are looked for, both ends included."""
 
 
+NO_VOLTAGE_V = 1e-9
+"""A difference below this is that of a bonded surface."""
+
+
 @dataclass(frozen=True, slots=True)
 class Peak:
-    """An extreme value, its time [s after the start], and the law that gave it."""
+    """An extreme value, its time [s after the start], and the law that gave it.
+
+    `assessable` is False in a wake that no light ions fill: no voltage is to be given then.
+    """
 
     value: float
     time_s: float
     law: str
+    assessable: bool = True
 
 
 @dataclass(frozen=True, slots=True)
@@ -109,6 +117,14 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
         value, time, law = max(found, key=lambda f: f[0] if largest else -f[0])
         return Peak(value, time, law)
 
+    along = mode.around.along
+
+    def told(number: int, found: Peak) -> Peak:
+        if along is None or along.streams is None:
+            return found
+        unfed = bool(along.unfed_at(np.array([found.time_s]))[0, number])
+        return replace(found, assessable=not unfed or abs(found.value) < NO_VOLTAGE_V)
+
     surfaces = []
     absolute = [net.potentials(y) for y in states]
     for i, surface in enumerate(loaded.case.surface):
@@ -124,11 +140,11 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
             SurfacePeaks(
                 surface=surface.name,
                 material=loaded.materials[surface.material].name,
-                lowest=peak(own, False),
-                highest=peak(own, True),
-                normal=peak(difference, False),
-                inverted=peak(difference, True),
-                field=high if abs(high.value) >= abs(low.value) else low,
+                lowest=told(i, peak(own, False)),
+                highest=told(i, peak(own, True)),
+                normal=told(i, peak(difference, False)),
+                inverted=told(i, peak(difference, True)),
+                field=told(i, high if abs(high.value) >= abs(low.value) else low),
                 bonded=bool(node == 0),
             )
         )
@@ -173,6 +189,11 @@ def _judge(loaded: LoadedCase, mode: ModeRun, requirement: Requirement,
     ]
     stand = standing(requirement, peak.value)
     assumed = mode.assumed
+    if not peak.assessable:
+        return Judgement(
+            found.surface, mode.name, stand, peak, "not assessable",
+            "wake ion current not assessable: no ions as light as He+ pass there",
+        )  # fmt: skip
     if stand.exceeded:
         verdict: Verdict = "exceeded"
         reason = f"beyond {requirement.requirement_id}"

@@ -27,7 +27,7 @@ class TomlFile:
     lines: dict[KeyPath, int]
 
 
-def read_toml(path: Path, *, file: str | None = None) -> TomlFile:
+def read_toml(path: Path, *, file: str | None = None, absent: str | None = None) -> TomlFile:
     """Return the document of a TOML file.
 
     Parameters
@@ -36,6 +36,8 @@ def read_toml(path: Path, *, file: str | None = None) -> TomlFile:
         Where it is.
     file : str, optional
         How messages call it; default: the path as given.
+    absent : str, optional
+        What to do where there is no such file.
 
     Raises
     ------
@@ -43,7 +45,9 @@ def read_toml(path: Path, *, file: str | None = None) -> TomlFile:
         Missing, no file, unreadable, above 1 MB, no UTF-8 or no TOML.
     """
     file = str(path) if file is None else file
-    return parse_toml(_decoded(bytes_of(path, file, LARGEST_FILE_BYTES), file), file=file)
+    return parse_toml(
+        _decoded(bytes_of(path, file, LARGEST_FILE_BYTES, absent=absent), file), file=file
+    )
 
 
 def parse_toml(text: str, *, file: str) -> TomlFile:

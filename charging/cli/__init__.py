@@ -28,7 +28,6 @@ app = typer.Typer(
     "decide. Crewed use needs its own safety process.",
     pretty_exceptions_enable=False,
     no_args_is_help=True,
-    add_completion=False,
 )
 
 

@@ -119,6 +119,14 @@ def orbit_document(found: OrbitReport) -> dict[str, object]:
         "eclipses": eclipse_rows(found.epoch, found.eclipses),
         "beta_angle_deg": found.beta_angle_deg,
         "beta_angle_end_deg": found.beta_angle_end_deg,
+        "regions": [
+            {
+                "region": stay.region,
+                "start": iso_time(found.epoch, stay.start_s),
+                "end": iso_time(found.epoch, stay.end_s),
+            }
+            for stay in found.regions
+        ],
     }
 
 
@@ -158,7 +166,43 @@ def print_orbit(found: OrbitReport, document: dict[str, object]) -> None:
         )
     else:
         print("no eclipse")
+    if found.regions:
+        _print_regions(found)
     print(
         "Flattened Earth, Sun within 0.001 deg; eclipses by the Moon "
         + ("within some 15 s." if found.moon else "are not looked for ([sun] moon = true).")
+    )
+
+
+MOST_STAYS_SHOWN = 40
+
+
+def _print_regions(found: OrbitReport) -> None:
+    """Stays in regions, or where there are many, the share of each region."""
+    print()
+    if len(found.regions) <= MOST_STAYS_SHOWN:
+        print_table(
+            [
+                (
+                    stay.region,
+                    iso_time(found.epoch, stay.start_s),
+                    iso_time(found.epoch, stay.end_s),
+                    f"{(stay.end_s - stay.start_s) / 60.0:.1f}",
+                )
+                for stay in found.regions
+            ],
+            ("region with the\nlargest share", "from\nUTC", "to\nUTC", "\nmin"),
+            "lllr",
+        )
+        return
+    total: dict[str, list[float]] = {}
+    for stay in found.regions:
+        total.setdefault(stay.region, []).append(stay.end_s - stay.start_s)
+    print_table(
+        [
+            (name, str(len(own)), f"{sum(own) / found.duration_s:.1%}")
+            for name, own in sorted(total.items(), key=lambda item: -sum(item[1]))
+        ],
+        ("region with the\nlargest share", "\nstays", "of the\ntime"),
+        "lrr",
     )

@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
+from charging.cli.options import wrote
 from charging.cli.output import print_json, print_table
 from charging.cli.runs import Json
 
@@ -18,7 +20,13 @@ def register(app: typer.Typer) -> None:
     app.command(epilog="Example: halflit evidence --json > evidence.json")(evidence)
 
 
-def evidence(json: Json = False) -> None:
+def evidence(
+    json: Json = False,
+    html: Annotated[
+        Path | None,
+        typer.Option("--html", metavar="FILE", show_default=False, help="Page for a report."),
+    ] = None,
+) -> None:
     """Published figures beside ours, recomputed now: for a verification report.
 
     Rows count where the figure stands in a source seen or in closed form and owes nothing to
@@ -31,6 +39,13 @@ def evidence(json: Json = False) -> None:
     from charging.evidence.rows import evidence as recomputed
 
     rows = recomputed()
+    if html is not None:
+        from charging.evidence.page import evidence_page
+        from charging.written_file import written_file
+
+        with written_file(html, option="--html") as scratch:
+            scratch.write_text(evidence_page(rows), encoding="utf-8")
+        wrote(html)
     if json:
         print_json(
             [
@@ -48,44 +63,10 @@ def evidence(json: Json = False) -> None:
 
 
 def _print(rows: list[Row]) -> None:
-    groups = (
-        ("counted", [row for row in rows if row.counted]),
-        (
-            "not counted: figures from memory, calibrations, shared inputs",
-            [row for row in rows if not row.counted],
-        ),
-    )
-    for title, group in groups:
+    from charging.evidence.page import HEAD, cells, groups, sum_up
+
+    for title, group in groups(rows):
         print(title)
-        print_table(
-            [
-                (
-                    row.quantity,
-                    f"{row.published:.6g}",
-                    f"{row.ours:.6g}",
-                    row.unit,
-                    _size(row.deviation, row),
-                    _size(row.tolerance, row),
-                    row.basis,
-                    "agrees" if row.ok else "DIFFERS",
-                    row.source,
-                )
-                for row in group
-            ],
-            ("quantity", "published", "ours", "unit", "off by", "allowed", "basis", "", "source"),
-            "lrrlrrlll",
-        )
+        print_table([cells(row) for row in group], HEAD, "lrrlrrlll")
         print()
-    counted = groups[0][1]
-    print(
-        f"{sum(row.ok for row in counted)} of {len(counted)} counted rows agree, "
-        f"{sum(row.ok for row in groups[1][1])} of {len(groups[1][1])} of the others."
-    )
-
-
-def _size(value: float, row: Row) -> str:
-    if row.measure == "factor":
-        return f"x{value:.3g}"
-    if row.measure == "absolute":
-        return f"{value:.2g} {row.unit}" if row.unit != "1" else f"{value:.2g}"
-    return f"{100.0 * value:.2g} %"
+    print(sum_up(rows))

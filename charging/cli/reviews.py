@@ -53,6 +53,15 @@ def review(
     fixes: Annotated[
         bool, typer.Option("--fixes/--no-fixes", help="Look for fixes of exceeded limits.")
     ] = True,
+    corners: Annotated[
+        bool | None,
+        typer.Option(
+            "--corners/--no-corners",
+            show_default=False,
+            help="Run the spreads of properties; nothing is within without them "
+            "[default: yes, unless the plasma changes along the orbit].",
+        ),
+    ] = None,
     workers: Workers = None,
     allow_outside: AllowOutside = False,
     json: Json = False,
@@ -70,8 +79,16 @@ def review(
         _leave_if_sweep(case, json=json)
     loaded = load_case_or_result(case, allow_outside=allow_outside)
     target = review_target(case, out)
-    options = Options(fixes=fixes, workers=workers or usual_workers(), progress=_told())
+    options = Options(
+        fixes=fixes,
+        workers=workers or usual_workers(),
+        progress=_told(),
+        notes=lambda text: print(f"note: {text}", file=sys.stderr, flush=True),
+        corners=corners,
+    )
     found = review_case(loaded, options)
+    if options.progress is not None:
+        print(file=sys.stderr)
     document = review_document(found)
     write_review(found, document, target)
     if json:
@@ -100,11 +117,15 @@ def _leave_if_sweep(folder: Path, *, json: bool) -> None:
     raise typer.Exit(EXIT[verdict])
 
 
-def _told() -> Callable[[int], None] | None:
+def _told() -> Callable[[int, int], None] | None:
     """Count runs on a terminal; nothing elsewhere."""
     if not sys.stderr.isatty():
         return None
-    return lambda done: print(f"\r{done} runs", end="", file=sys.stderr, flush=True)
+
+    def tell(done: int, planned: int) -> None:
+        print(f"\r{done} of {planned} runs or more", end="", file=sys.stderr, flush=True)
+
+    return tell
 
 
 def usual_workers() -> int:
@@ -122,7 +143,7 @@ def _print_review(found: Review, document: dict[str, Any]) -> None:
                 row["against"],
                 row["kind"],
                 _value(row["nominal_value"], row["unit"]),
-                _value(row["corner_value"], row["unit"]),
+                _maybe(row["corner_value"], row["unit"]),
                 _value(row["allowed"], row["unit"], sign=False),
                 _value(row["margin"], row["unit"]),
                 "-" if row["margin_dB"] is None else f"{row['margin_dB']:+.1f}",
@@ -154,11 +175,17 @@ def _print_review(found: Review, document: dict[str, Any]) -> None:
     for scene in document["scenes"]:
         print(f"\n{scene['mode']}, plasma {scene['plasma']}: {scene['sheath']['text']}.")
     draws = found.ensemble
-    print(
-        f"\nCorner: every property at the end of its spread that makes the limit worse, checked "
-        f"by {draws.draws} draws\n(seed {draws.seed}) in every governing combination; "
-        f"{document['members']} runs in all. Laws: exponential and E^-0.67, the worse governs."
-    )
+    if not found.searched:
+        print(
+            "\nSpreads of properties were not run, so nothing is called within and no fixes were "
+            "looked for."
+        )
+    else:
+        print(
+            f"\nCorner: every property at the end of its spread that makes the limit worse, "
+            f"checked by {draws.draws} draws\n(seed {draws.seed}) in every governing combination; "
+            f"{document['members']} runs in all. Laws: exponential and E^-0.67, the worse governs."
+        )
     for text in document["sentences"]:
         print(f"\n- {text}")
     if found.fixes is not None and found.fixes.single:

@@ -37,6 +37,10 @@ AllowOutside = Annotated[
     bool, typer.Option("--allow-outside", help="Let the case name files outside its own folder.")
 ]
 Json = Annotated[bool, typer.Option("--json", help="Print JSON instead of a table.")]
+Quick = Annotated[
+    bool,
+    typer.Option("--quick", help="Balance of currents at some moments only; no files, no verdict."),
+]
 
 MOST_ECLIPSES = 20
 """More are counted, not printed."""
@@ -55,6 +59,7 @@ def run(
     case: CaseFile,
     out: OutDir = None,
     allow_outside: AllowOutside = False,
+    quick: Quick = False,
     json: Json = False,
 ) -> None:
     """Run a case along its orbit; write potentials, plots and a verdict.
@@ -62,6 +67,15 @@ def run(
     Exit 0 computed (the verdict is printed), 2 bad input, 3 no solution.
     """
     from charging.case import load_case
+
+    if quick:
+        from charging.cli.quick import print_quick_look
+        from charging.errors import InputError
+
+        if out is not None:
+            raise InputError("--out: a quick look writes nothing; leave out --out or --quick")
+        print_quick_look(load_case(case, allow_outside=allow_outside), json=json)
+        return
     from charging.orbit_run import CaseRun, solve_mode
     from charging.result_folder import check_target
     from charging.results import write_results
@@ -164,24 +178,28 @@ def _print_mode(mode: dict[str, Any], clock: Callable[[str], str]) -> None:
         return "-" if time is None else clock(time)
 
     def size(row: dict[str, Any], side: str) -> str:
-        return "-" if row[f"worst_{side}_time"] is None else volts(row[f"worst_{side}_V"])
+        return "-" if row[f"worst_{side}_time"] is None else told(row[f"worst_{side}_V"])
+
+    def told(value: float | None) -> str:
+        return "not assessable" if value is None else volts(value)
 
     rows = []
     for row in mode["surfaces"]:
-        tight = min(row["limits"], key=lambda limit: limit["margin"] / limit["allowed"])
+        known = [limit for limit in row["limits"] if limit["margin"] is not None] or row["limits"]
+        tight = min(known, key=lambda limit: (limit["margin"] or 0.0) / limit["allowed"])
         rows.append(
             (
                 row["surface"],
                 row["material"],
-                volts(row["lowest_V"]),
-                volts(row["highest_V"]),
+                told(row["lowest_V"]),
+                told(row["highest_V"]),
                 size(row, "normal"),
                 when(row, "normal"),
                 size(row, "inverted"),
                 when(row, "inverted"),
                 {"normal": "-", "inverted": "+", "field": ""}[tight["kind"]]
                 + _value(tight["allowed"], tight["unit"], sign=False),
-                _value(tight["margin"], tight["unit"]),
+                "-" if tight["margin"] is None else _value(tight["margin"], tight["unit"]),
                 f"{row['verdict']}, bonded" if row["bonded"] else row["verdict"],
             )
         )

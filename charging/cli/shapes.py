@@ -37,7 +37,7 @@ def shape(
     allow_outside: AllowOutside = False,
     json: Json = False,
 ) -> None:
-    """Areas, capacitances and views of the [[shape]] tables of a case, and a picture of them.
+    """Areas, capacitances and views of the shapes of a case, and a picture of them.
 
     A result colours the picture by its potentials; a case shows light and shadow.
     """

@@ -95,8 +95,9 @@ def _print(title: str, report: SweepReport, folder: str, confidence: float) -> N
     print(f"{one_line(title)}: {document['members']} members, {document['draws']} per choice")
     print(f"({document['conditional_on']})\n")
     print_ranking(document)
+    print(f"For a verdict: halflit review {folder}")
     if report.indices:
-        print(f"\nSobol indices of {report.rows[0].choice}, {100 * confidence:g} % intervals")
+        print(f"\nSobol indices of {report.studied.choice}, {100 * confidence:g} % intervals")
         print_table(
             [
                 (
@@ -111,56 +112,66 @@ def _print(title: str, report: SweepReport, folder: str, confidence: float) -> N
         )
     worst = document["worst_case"]
     if worst is not None:
-        where = ", ".join(f"{path} = {value:.4g}" for path, value in worst["at"].items())
+        of = f" of {report.studied.choice}" if len(report.rows) > 1 else ""
         print(
-            f"\nworst case found: {worst['severity']:.2f} of a limit at {where}\n"
+            f"\nworst case{of} found: {worst['limit']} {worst['value']:+.4g}, "
+            f"{worst['severity']:.2f} times what is allowed, at"
+        )
+        for path, value in worst["at"].items():
+            print(f"  {path} = {value:.4g}")
+        print(
             f"({worst['evaluations']} evaluations, {worst['agreeing_starts']} of "
-            f"{worst['starts']} starts agree"
+            f"{worst['starts']} starts within 1 % of it"
             + ("" if worst["converged"] else "; stopped by the number of evaluations")
             + ")"
         )
-    pictures = "heat_map.png, drivers.png" if report.rows[0].drivers else "heat_map.png"
+    pictures = "heat_map.png, drivers.png" if report.studied.drivers else "heat_map.png"
     print(f"\n{folder}/: sweep.nc, ranking.json, ranking.csv, {pictures}")
 
 
 def print_ranking(document: dict[str, Any]) -> None:
     """Print the choices of a ranking in order."""
-    percent = f"{100.0 * document['confidence']:g} %"
+    drawn = document["draws"] > 1
     rows = document["rows"]
-    print_table(
-        [
-            (
-                str(number),
-                row["choice"],
-                f"{row['worst_V']:+.0f}",
-                f"{row['kind']}, {row['surface']}",
+    percent = f"{100.0 * document['confidence']:g} %"
+    table = []
+    for number, row in enumerate(rows[:MOST_ROWS], 1):
+        known = [
+            str(number),
+            row["choice"],
+            f"{row['worst_V']:+.0f}" if row["worst_V"] else "0",
+            f"{row['kind']}, {row['surface']}" if row["worst_V"] else "-",
+        ]
+        if drawn:
+            known += [
                 f"{row['exceed_probability']:.3g}",
                 f"{row['interval'][0]:.3g} to {row['interval'][1]:.3g}",
                 row["kept_with_confidence"],
                 row["driver"] or "-",
-            )
-            for number, row in enumerate(rows[:MOST_ROWS], 1)
-        ],
-        (
-            "rank",
-            "choice",
-            "worst\nV",
-            "worst differential",
+            ]
+        else:
+            known.append("exceeded" if row["exceed_probability"] else "kept")
+        table.append(tuple(known))
+    heads: tuple[str, ...] = ("rank", "choice", "worst\nV", "worst differential")
+    if drawn:
+        heads += (
             "exceeds\na limit",
             f"interval\n{percent}",
             f"keeps limits\nwith {percent}",
             "driven by",
-        ),
-        "rlrlrlll",
-    )
+        )
+        print_table(table, heads, "rlrlrlll")
+    else:
+        print_table(table, (*heads, "limits"), "rlrll")
     if len(rows) > MOST_ROWS:
         print(f"... and {len(rows) - MOST_ROWS} more in ranking.csv")
-    kept = [row["choice"] for row in rows if row["kept_with_confidence"] == "yes"]
-    answer = "; ".join(kept[:MOST_ROWS]) if kept else "none of the choices"
-    print(f"\nWithin limits with {percent} confidence: {answer}.")
+    if drawn:
+        kept = [row["choice"] for row in rows if row["kept_with_confidence"] == "yes"]
+        answer = "; ".join(kept[:MOST_ROWS]) if kept else "none of the choices"
+        print(f"\nWithin limits with {percent} confidence: {answer}.")
+        print("Probabilities are conditional on assumed spreads.")
     if document["failed"]:
         print(f"{document['failed']} members found no solution and count as exceeding.")
-    print("Probabilities are conditional on assumed spreads. For a verdict: halflit review FOLDER.")
 
 
 def print_sweep_review(document: dict[str, Any]) -> None:

@@ -5,7 +5,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.currents.collection import SheathWeight, thick_geometry
+from charging.currents.collection import SheathWeight, rounded_pull, thick_geometry
 from charging.currents.populations import Populations
 from charging.currents.spectra import SpectrumTable
 from charging.currents.tables import YieldTable
@@ -122,24 +122,23 @@ def _thermal_terms(
     charge = group.charge_number[which]
     pull = pull_V[..., None]
     reduced = charge / group.temperature_eV[which]
-    attracted = pull > 0.0
-    u = np.where(attracted, pull, 0.0) * reduced
-    boltzmann = np.exp(np.where(attracted, 0.0, pull) * reduced)
-    d_boltzmann = np.where(attracted, 0.0, boltzmann * reduced)
+    attracting, rise = rounded_pull(pull, group.temperature_eV[which] / charge)
+    u = attracting * reduced
+    boltzmann = np.exp((pull - attracting) * reduced)
+    d_boltzmann = boltzmann * reduced * (1.0 - rise)
     present = strength[..., group.plasma[which]]
     thermal = (group.thermal_current_A_m2[which] * present)[..., None, :]
     factor = thick.factor(u)
-    d_factor = np.where(attracted, thick.slope(u) * reduced, 0.0)
+    d_factor = thick.slope(u) * reduced * rise
     current = np.stack([boltzmann, boltzmann * factor], axis=-1)
     d_current = np.stack([d_boltzmann, d_boltzmann * factor + boltzmann * d_factor], axis=-1)
 
     surfaces, kinds = u.shape[-2:]
-    energy = (np.where(attracted, pull, 0.0) * charge).reshape(*u.shape[:-2], surfaces * kinds)
+    energy = (attracting * charge).reshape(*u.shape[:-2], surfaces * kinds)
     found, d_found = table(energy)
     columns = found.shape[-1]
     found = found.reshape(*u.shape, columns)
-    d_found = d_found.reshape(*u.shape, columns) * charge[:, None]
-    d_found = np.where(attracted[..., None], d_found, 0.0)
+    d_found = d_found.reshape(*u.shape, columns) * (charge * rise)[..., None]
     particles = 1.0 / charge[:, None]  # yields are per particle
     released = particles * boltzmann[..., None] * found
     d_released = particles * (d_boltzmann[..., None] * found + boltzmann[..., None] * d_found)

@@ -14,7 +14,6 @@ References
 Besse & Rubin (1980), J. Geophys. Res. 85, 2324 (from memory).
 """
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import NamedTuple
 
@@ -31,11 +30,8 @@ JOIN_V = 0.1
 """A barrier joins max(V, 0) over this height [V]; the join errs by 15 % of it at most."""
 
 NEAREST, FARTHEST = 5e-4, 0.02  # where the coordinate ceases to be logarithmic, in t and 1 − t
-POINTS, EVERY = 49, 2  # distances; every second is looked at first
+POINTS = 49
 NEWTON = 2  # steps from the root of a straight derivative across a cell of 0.24
-LEFT_OUT = 1.0  # of the rises to the neighbouring points: what a minimum may hide between them
-
-HIDDEN = 0.125  # the same, for a parabola
 
 
 def _distances() -> tuple[Array, Array]:
@@ -49,8 +45,6 @@ def _distances() -> tuple[Array, Array]:
 
 COORDINATE, DISTANCES = _distances()
 STEP = float(COORDINATE[1] - COORDINATE[0])
-FACTORS = np.arange(5.0, 0.0, -1.0)  # of the derivative of a quintic
-ENDS = STEP ** np.arange(4.0, -1.0, -1.0)
 
 
 class Heights(NamedTuple):
@@ -80,124 +74,81 @@ class BarrierField:
     ----------
     surface, node : ndarray of int [P]
         Surface and node of each patch: one node may have patches on several sides.
-    first : ndarray [n, P·K'], seldom : ndarray of int [K']
-        Weights at every few distances and derivatives at both ends, for the first look, and
-        the indices of these distances.
-    near : ndarray [P, K, n]
-        Weights at `DISTANCES`; at infinity 0, on the surface 1 of the own node.
-    pieces : ndarray [P, K-1, 6, n]
-        Splines between them.
+    falls : ndarray [n, P·K]
+        Derivatives of the weights by the coordinate at `DISTANCES`.
+    pieces : ndarray [P, K-1, n, 6]
+        Quintics of the weights between them.
     """
 
     surface: Index
     node: Index
-    first: Array
-    seldom: Index
-    near: Array
+    falls: Array
     pieces: Array
 
     def heights(self, node_V: Array, surface_V: Array) -> Array:
         """Height [V, m, S] for node potentials [m, n] and surface potentials [m, S]."""
         height = escape_height(surface_V)[0]
-        for member, patch, start, count in self._candidates(node_V):
+        member, patch, _, _, least = self._minima(node_V)
+        if member.size:
             surface = self.surface[patch]
-            saddle, _ = self._saddle(patch, node_V[member], start, count)
-            excess = surface_V[member, surface] - saddle - height[member, surface]
-            height[member, surface] += _join(excess)[0]
+            excess = surface_V[member, surface] - least - height[member, surface]
+            # of several minima on one normal the lowest counts
+            join = np.zeros_like(height)
+            np.maximum.at(join, (member, surface), _join(excess)[0])
+            height += join
         return height
 
     def heights_and_slopes(self, node_V: Array, surface_V: Array) -> Heights:
         """`heights` and their derivatives."""
         height, own = escape_height(surface_V)
-        found = []
-        for member, patch, start, count in self._candidates(node_V):
-            surface = self.surface[patch]
-            saddle, weight = self._saddle(patch, node_V[member], start, count)
-            excess = surface_V[member, surface] - saddle - height[member, surface]
-            active = excess > 0.0
-            member, patch, surface = member[active], patch[active], surface[active]
-            join, d_join = _join(excess[active])
-            height[member, surface] += join
-            own[member, surface] *= 1.0 - d_join
-            rows = -d_join[:, None] * weight[active]
-            rows[np.arange(len(rows)), self.node[patch]] += d_join
-            found.append((member, surface, rows))
-        if not found:
-            none = np.zeros(0, dtype=np.intp)
-            return Heights(height, own, none, none, np.zeros((0, node_V.shape[1])))
-        member, surface, rows = (np.concatenate(part) for part in zip(*found, strict=True))
+        member, patch, cell, u, least = self._minima(node_V)
+        surface = self.surface[patch]
+        excess = surface_V[member, surface] - least - height[member, surface]
+        active = np.flatnonzero(excess > 0.0)
+        place = member[active] * surface_V.shape[1] + surface[active]
+        if len(np.unique(place)) < len(place):
+            order = np.lexsort((-excess[active], place))
+            first = np.diff(place[order], prepend=-1) > 0
+            active = active[order[first]]
+        member, patch, surface = member[active], patch[active], surface[active]
+        join, d_join = _join(excess[active])
+        height[member, surface] += join
+        own[member, surface] *= 1.0 - d_join
+        u = u[active]
+        u2, u3 = u * u, u * u * u
+        powers = np.stack([u3 * u2, u2 * u2, u3, u2, u, np.ones_like(u)], axis=-1)
+        weights = (self.pieces[patch, cell[active]] * powers[:, None, :]).sum(axis=-1)
+        rows = -d_join[:, None] * weights
+        rows[np.arange(len(rows)), self.node[patch]] += d_join
         return Heights(height, own, member, surface, rows)
 
-    def _candidates(self, node_V: Array) -> Iterable[tuple[Index, Index, Index, int]]:
-        """Members and patches [A] that may have a minimum below the plasma and the patch.
+    def _minima(self, node_V: Array) -> tuple[Index, Index, Index, Array, Array]:
+        """Minima [A] along the normals: member, patch, cell, place in it and potential [V].
 
-        With each group: where to look, as first distance [A] and number of distances.
+        The derivative rises through zero in the cell; a maximum and a minimum inside one cell
+        are not seen.
         """
-        count = len(self.seldom)
+        patches = len(self.surface)
         # one product of small arrays per member: nothing is summed over members
-        found = np.matmul(node_V[:, None, :], self.first)[:, 0]
-        found = found.reshape(len(node_V), len(self.surface), count + 2)
-        phi, middle = found[..., :count], found[..., 1 : count - 1]
-        left, right = middle - phi[..., : count - 2], middle - phi[..., 2:]
-        on_surface = phi[..., 0]
-        ends = np.minimum(on_surface, 0.0)
-        # the lowest of three points may hide a lower value between them
-        minima = (left <= 0.0) & (right <= 0.0)
-        minima &= middle + LEFT_OUT * (left + right) < ends[..., None]
-        # right at the surface, or so far out that only the slope at infinity tells
-        near = (found[..., count] < 0.0) & (on_surface <= 0.0) & (middle[..., 0] >= on_surface)
-        far = (found[..., count + 1] > 0.0) & (on_surface >= 0.0) & (middle[..., -1] >= 0.0)
-        number = minima.sum(axis=-1) + near + far
-        member, patch = np.nonzero(number == 1)
-        if member.size:
-            start = np.where(near, 0, np.where(far, count - 3, np.argmax(minima, axis=-1)))
-            yield member, patch, EVERY * start[member, patch], 2 * EVERY + 1
-        member, patch = np.nonzero(number > 1)
-        if member.size:
-            yield member, patch, np.zeros_like(member), len(COORDINATE)
-
-    def _saddle(self, patch: Index, node_V: Array, start: Index, count: int) -> tuple[Array, Array]:
-        """Least potential [A] along the normals of patches [A], and weights there [A, n].
-
-        Looks at `count` distances from `start` [A].
-        """
-        near = self.near[patch[:, None], start[:, None] + np.arange(count)]
-        phi = (near * node_V[:, None, :]).sum(axis=-1)
-        last = len(COORDINATE) - 1
-        middle = phi[:, 1:-1]
-        left, right = middle - phi[:, :-2], middle - phi[:, 2:]
-        hidden = np.where((left <= 0.0) & (right <= 0.0), left + right, 0.0)
-        bound = phi.copy()
-        bound[:, 1:-1] += HIDDEN * hidden
-        lowest = np.argmin(bound, axis=1)
-        # the derivative tells on which side of the lowest point the minimum lies
-        k = start + lowest
-        cell = np.minimum(k, last - 1)
-        slope = (self.pieces[patch, cell, -2] * node_V).sum(axis=-1)
-        weights = self.pieces[patch, cell - ((slope > 0.0) & (k > 0) & (k < last))]
-        c = (weights * node_V[:, None, :]).sum(axis=-1)  # [A, 6]
-        first, second = c[:, :-1] * FACTORS, c[:, :-2] * (FACTORS[:-1] * (FACTORS[:-1] - 1.0))
+        slope = np.matmul(node_V[:, None, :], self.falls).reshape(len(node_V) * patches, POINTS)
+        falls = slope < 0.0
+        row, cell = np.divmod(np.flatnonzero(falls[:, :-1] & ~falls[:, 1:]), POINTS - 1)
+        member, patch = np.divmod(row, patches)
+        at_0, at_1 = slope[row, cell], slope[row, cell + 1]
+        quintic = (self.pieces[patch, cell] * node_V[member][:, :, None]).sum(axis=1)
+        c5, c4, c3, c2, c1, c0 = np.ascontiguousarray(quintic.T)
+        b5, b4, b3, b2 = 20.0 * c5, 12.0 * c4, 6.0 * c3, 2.0 * c2
+        a5, a4, a3 = 5.0 * c5, 4.0 * c4, 3.0 * c3
         # where the derivative crosses zero, first as if it were straight
-        at_0, at_1 = first[:, -1], (first * ENDS).sum(axis=-1)
-        crosses = (at_0 < 0.0) & (at_1 > 0.0)
-        u = STEP * np.divide(at_0, at_0 - at_1, out=(at_0 < 0.0) * 1.0, where=crosses)
+        u = STEP * at_0 / (at_0 - at_1)
         for _ in range(NEWTON):
-            powers = _powers(u)
-            fall = (first * powers[:, 1:]).sum(axis=-1)
-            bend = (second * powers[:, 2:]).sum(axis=-1)
-            u = u - np.divide(fall, bend, out=np.zeros_like(u), where=crosses & (bend > 0.0))
+            fall = (((a5 * u + a4) * u + a3) * u + b2) * u + c1
+            bend = ((b5 * u + b4) * u + b3) * u + b2
+            bends = bend > 0.0
+            u = u - np.where(bends, fall, 0.0) / np.where(bends, bend, 1.0)
             u = np.minimum(np.maximum(u, 0.0), STEP)
-        powers = _powers(u)
-        least = (c * powers).sum(axis=-1)
-        return least, (weights * powers[..., None]).sum(axis=1)
-
-
-def _powers(u: Array) -> Array:
-    """Powers 5 to 0 of u [A], [A, 6]."""
-    found = np.ones((len(u), 6))
-    for n in range(4, -1, -1):
-        np.multiply(found[:, n + 1], u, out=found[:, n])
-    return found
+        least = ((((c5 * u + c4) * u + c3) * u + c2) * u + c1) * u + c0
+        return member, patch, cell, u, least
 
 
 def _join(excess_V: Array) -> tuple[Array, Array]:
@@ -227,17 +178,12 @@ def barrier_field(surface: Index, node: Index, weights: Array) -> BarrierField:
     at_end = (
         pieces[:, -1] * (np.arange(5, -1, -1) * STEP ** np.arange(4.0, -2.0, -1.0))[:, None]
     ).sum(axis=1)
-    seldom = np.arange(0, len(COORDINATE), EVERY)
-    first = np.concatenate(
-        [weights[:, seldom], pieces[:, 0, None, -2], at_end[:, None]], axis=1
-    )  # [P, K'+2, n]
+    falls = np.concatenate([pieces[:, :, -2], at_end[:, None]], axis=1)  # [P, K, n]
     return BarrierField(
         surface=np.asarray(surface, dtype=np.intp),
         node=np.asarray(node, dtype=np.intp),
-        first=np.ascontiguousarray(first.reshape(-1, first.shape[-1]).T),
-        seldom=seldom,
-        near=np.ascontiguousarray(weights),
-        pieces=np.ascontiguousarray(pieces),
+        falls=np.ascontiguousarray(falls.reshape(-1, falls.shape[-1]).T),
+        pieces=np.ascontiguousarray(np.swapaxes(pieces, -1, -2)),
     )
 
 

@@ -93,6 +93,47 @@ def thick_geometry(collection: str) -> Geometry:
     return CYLINDER if collection == "cylinder" else SPHERE
 
 
+ROUNDING_V, ROUNDING_OF_T = 0.05, 0.25
+"""Half-width of the rounded corner at 0 V [V], and the most as a share of the temperature."""
+COLD_EV = 10.0
+"""Temperature from which the corner stays: what hotter plasmas bring hardly bends at 0 V."""
+
+
+def rounded_pull(pull_V: Array, temperature_eV: Array) -> tuple[Array, Array]:
+    r"""Attracting part of a potential [V] and its derivative, the corner at 0 V rounded.
+
+    The thin-sheath current of a Maxwellian has a corner at 0 V, where attraction begins; an
+    implicit integrator freezes on it. With the half-width d = min(`ROUNDING_V`, T/4), 0 from
+    `COLD_EV` on, this is exactly max(pull, 0) outside ±d, and inside a polynomial with three
+    continuous derivatives, at most 0.137 d above it. The repelling part is what is left,
+    :math:`r = a - pull \ge 0`, so nothing is counted twice; the current errs by 3.4 percent at
+    most, at 0 V, and by 0.7 percent for 1 eV.
+
+    Examples
+    --------
+    >>> [x.tolist() for x in rounded_pull(np.array([-0.1, 0.0, 0.1]), np.array(1.0))]
+    [[0.0, 0.0068359375, 0.1], [0.0, 0.5, 1.0]]
+    """
+    value = np.maximum(pull_V, 0.0)
+    slope = np.asarray(pull_V > 0.0, dtype=np.float64)
+    if not bool((np.abs(pull_V) < ROUNDING_V).any()):
+        return np.asarray(value), slope
+    d = np.minimum(ROUNDING_V, ROUNDING_OF_T * temperature_eV)
+    d = np.where(temperature_eV < COLD_EV, d, 0.0)
+    inside = np.abs(pull_V) < d
+    if not bool(inside.any()):
+        return np.asarray(value), slope
+    s = np.where(inside, pull_V, 0.0) / np.where(d > 0.0, d, 1.0)
+    s2 = s * s
+    # the integral of the odd polynomial that joins -1/2 to 1/2 with three flat derivatives
+    rise = s * (35.0 - s2 * (35.0 - s2 * (21.0 - 5.0 * s2))) / 32.0
+    even = (4.375 + s2 * (17.5 - s2 * (8.75 - s2 * (3.5 - 0.625 * s2)))) / 32.0
+    return (
+        np.where(inside, d * (even + 0.5 * s), value),
+        np.where(inside, 0.5 + rise, slope),
+    )
+
+
 class SheathWeight(NamedTuple):
     """Length [m], thick-sheath share 0…1 and its derivative by potential [1/V]."""
 

@@ -2,7 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Final
+from typing import Final, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,6 +16,21 @@ _ROOT: Final = 6.0  # its root is smooth from the empty wake to the focused ram 
 _LEAST_ANGLES, _MOST_ANGLES, _FINE_ANGLE = 41, 121, 241
 _FINE_SPEED: Final = 33
 _END: Final = 1e4
+
+
+class FocusPlace(NamedTuple):
+    """Four neighbours in speed and angle, rows of the table and weights, each [..., Q, 4]."""
+
+    first: NDArray[np.intp]
+    weight: Array
+
+
+class Focused(NamedTuple):
+    """Flux in units of that at rest, its derivative by u, and the flux at u = 0, [..., Q]."""
+
+    flux: Array
+    slope: Array
+    free: Array
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,36 +73,51 @@ class FocusTable:
         tuple of ndarray, shape (..., Q)
         """
         S, mu, u = np.broadcast_arrays(speed_ratio, cosine, attraction)
+        found = self.along(self.place(S, mu), u)
+        return found.flux, found.slope
+
+    def place(self, speed_ratio: Array, cosine: Array) -> FocusPlace:
+        """Where speeds and angles [..., Q] stand in the table, for any attraction."""
         _, speeds, angles, knots, _ = self.rows.shape
         q = np.arange(self.rows.shape[0])
-        i, p = _cell((S - self.speed_low) / self.speed_step, speeds)
-        j, r = _cell(np.arccos(np.clip(mu, -1.0, 1.0)) * ((angles - 1) / np.pi), angles)
-        t = np.log1p(u)
+        i, p = _cell((speed_ratio - self.speed_low) / self.speed_step, speeds)
+        angle = np.arccos(np.minimum(np.maximum(cosine, -1.0), 1.0))
+        j, r = _cell(angle * ((angles - 1) / np.pi), angles)
+        first = ((q * speeds + i) * angles + j) * knots
+        first, p, r = np.broadcast_arrays(first, p, r)
+        corners = knots * np.array([0, 1, angles, angles + 1])
+        one = (1.0 - p) * (1.0 - r), (1.0 - p) * r, p * (1.0 - r), p * r
+        return FocusPlace(first[..., None] + corners, np.stack(one, axis=-1))
+
+    def along(self, place: FocusPlace, attraction: Array) -> Focused:
+        """Flux at places in the table and attractions u [..., Q]; see `flux`."""
+        knots = self.rows.shape[3]
+        flat = self.rows.reshape(-1, 2)
+        t = np.log1p(attraction)
         k, z = _cell(t / self.per_knot, knots)
         end = np.expm1((knots - 1) * self.per_knot)
-        flat = self.rows.reshape(-1, 2)
-        first = ((q * speeds + i) * angles + j) * knots + k
-        found = np.zeros((2, 2, *S.shape))
-        for di, wi in ((0, 1.0 - p), (1, p)):
-            for dj, wj in ((0, 1.0 - r), (1, r)):
-                place = first + (di * angles + dj) * knots
-                for dk in (0, 1):
-                    pair = flat[place + dk]
-                    weight = wi * wj
-                    found[dk, 0] += weight * pair[..., 0]
-                    found[dk, 1] += weight * pair[..., 1]
-        (y0, d0), (y1, d1) = found
-        d0, d1 = d0 * self.per_knot, d1 * self.per_knot
+        low = place.first + k[..., None]
+        weight = place.weight[..., None]
+        left, right = (flat[low] * weight).sum(axis=-2), (flat[low + 1] * weight).sum(axis=-2)
+        y0, d0 = left[..., 0], left[..., 1] * self.per_knot
+        y1, d1 = right[..., 0], right[..., 1] * self.per_knot
+        free = (flat[place.first, 0] * place.weight).sum(axis=-1)
         b, c = 3.0 * (y1 - y0) - 2.0 * d0 - d1, 2.0 * (y0 - y1) + d0 + d1
         root = np.maximum(y0 + z * (d0 + z * (b + z * c)), 0.0)
-        rise = (d0 + z * (2.0 * b + 3.0 * z * c)) / (self.per_knot * (1.0 + np.minimum(u, end)))
-        flux, slope = root**_ROOT, _ROOT * root ** (_ROOT - 1.0) * rise
-        # beyond the end: a u + b sqrt(u), with the value and the slope there
-        far = u > end
-        distance, last = np.sqrt(np.where(far, u, end)), np.sqrt(end)
-        line, bend = 2.0 * slope - flux / end, 2.0 * (flux / last - slope * last)
-        grown = line * distance**2 + bend * distance
-        return np.where(far, grown, flux), np.where(far, line + 0.5 * bend / distance, slope)
+        held = np.minimum(attraction, end)
+        rise = (d0 + z * (2.0 * b + 3.0 * z * c)) / (self.per_knot * (1.0 + held))
+        fifth = root * (root * root) ** 2
+        flux, slope = root * fifth, _ROOT * fifth * rise
+        free = np.maximum(free, 0.0)
+        free = ((free * free) * free) ** 2
+        far = attraction > end
+        if bool(far.any()):
+            # a u + b sqrt(u), with the value and the slope at the end
+            distance, last = np.sqrt(np.where(far, attraction, end)), np.sqrt(end)
+            line, bend = 2.0 * slope - flux / end, 2.0 * (flux / last - slope * last)
+            flux = np.where(far, line * distance**2 + bend * distance, flux)
+            slope = np.where(far, line + 0.5 * bend / distance, slope)
+        return Focused(flux, slope, free)
 
 
 def focus_table(
@@ -135,6 +165,6 @@ def focus_table(
 
 def _cell(x: Array, size: int) -> tuple[NDArray[np.intp], Array]:
     """Left knot of a unit grid and the distance from it, ends held."""
-    held = np.clip(x, 0.0, size - 1.0)
+    held = np.minimum(np.maximum(x, 0.0), size - 1.0)
     k = np.minimum(held.astype(np.intp), size - 2)
     return k, np.asarray(held - k)

@@ -164,7 +164,9 @@ class NetCurrents:
         """What streaming ions bring; None where there are none."""
         if self.streams is None or setting.stream is None:
             return None
-        return self.streams.of(self.table[which]).arrived(potential_V, setting.stream, sheath)
+        place = None if setting.kept is None else setting.kept.focus
+        own = self.streams.of(self.table[which])
+        return own.arrived(potential_V, setting.stream, sheath, place)
 
     def _photocurrent(self, which: Index, setting: Setting) -> Array:
         """Photocurrent density [A m-2, m, S] of which nothing is held back."""
@@ -198,7 +200,11 @@ class NetCurrents:
     def prepared(self, which: Index, setting: Setting) -> Setting:
         """Add to the setting of members [m] what follows from it alone."""
         debye, child = self.sheath.squares(self.table[which], setting.strength)
-        return setting._replace(kept=Kept(debye, child, self._photocurrent(which, setting)))
+        place = None
+        if self.streams is not None and setting.stream is not None:
+            place = self.streams.place(setting.stream)
+        photo = self._photocurrent(which, setting)
+        return setting._replace(kept=Kept(debye, child, photo, place))
 
 
 def _powers(x: Array, count: int) -> Array:

@@ -12,9 +12,9 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.constants import e
 
-from charging.currents.collection import SheathWeight
+from charging.currents.collection import SheathWeight, rounded_pull
 from charging.currents.flow import plane_limit
-from charging.currents.focus_table import FocusTable, focus_table
+from charging.currents.focus_table import FocusPlace, FocusTable, focus_table
 from environments.species import Species
 from materials.record import Material
 
@@ -101,7 +101,22 @@ class StreamModel:
             self.focus,
         )
 
-    def arrived(self, potential_V: Array, stream: Stream, sheath: SheathWeight) -> Arrived:
+    def place(self, stream: Stream) -> FocusPlace | None:
+        """Where a stream stands in the table of focused orbits: the same for all potentials."""
+        if self.focus is None:
+            return None
+        thermal = np.sqrt(2.0 * e * stream.temperature_eV / self.mass_kg)[..., None, :]
+        speed = stream.speed_m_s[..., None, :]
+        cosine = stream.ram_m_s / np.where(speed > 0.0, speed, 1.0)
+        return self.focus.place(speed / thermal, cosine)
+
+    def arrived(
+        self,
+        potential_V: Array,
+        stream: Stream,
+        sheath: SheathWeight,
+        place: FocusPlace | None = None,
+    ) -> Arrived:
         """Currents on surfaces at potentials [..., S].
 
         Parameters
@@ -110,14 +125,21 @@ class StreamModel:
         stream : Stream
         sheath : SheathWeight
             Share of the thick limit and its slope, each [..., S].
+        place : FocusPlace, optional
+            From `place`, where many potentials share a moment.
         """
         phi = potential_V[..., None]
         density, temperature = stream.density_m3[..., None, :], stream.temperature_eV[..., None, :]
+        # ions are attracted by negative potentials; the corner at 0 V is rounded
+        pull, rise = rounded_pull(-phi, temperature / self.charge_number)
         current, slope = plane_limit(
-            phi, density, temperature, self.mass_kg, self.charge_number, 1.0, stream.ram_m_s
+            phi + pull, density, temperature, self.mass_kg, self.charge_number, 1.0, stream.ram_m_s
         )
-        if self.focus is not None and bool(np.any(potential_V < 0.0)):
-            gain, d_gain = self._focused(phi, density, temperature, stream)
+        slope = slope * (1.0 - rise)
+        if self.focus is not None and bool(np.any(pull > 0.0)):
+            own = self.place(stream) if place is None else place
+            assert own is not None
+            gain, d_gain = self._focused(pull, rise, density, temperature, own)
             weight, d_weight = sheath.weight[..., None], sheath.slope[..., None]
             slope = slope + weight * d_gain + d_weight * gain
             current = current + weight * gain
@@ -139,7 +161,7 @@ class StreamModel:
         )
 
     def _focused(
-        self, phi: Array, density: Array, temperature: Array, stream: Stream
+        self, pull_V: Array, rise: Array, density: Array, temperature: Array, place: FocusPlace
     ) -> tuple[Array, Array]:
         """What a thick sheath brings beyond a thin one [..., S, Q], and its slope by potential.
 
@@ -147,14 +169,10 @@ class StreamModel:
         """
         assert self.focus is not None
         thermal = np.sqrt(2.0 * e * temperature / self.mass_kg)
-        speed = stream.speed_m_s[..., None, :]
-        pull = np.maximum(-phi * self.charge_number / temperature, 0.0)
-        cosine = stream.ram_m_s / np.where(speed > 0.0, speed, 1.0)
-        both = np.stack([pull, np.zeros_like(pull)])
-        (flux, free), (by_pull, _) = self.focus.flux(speed / thermal, cosine, both)
+        per_volt = self.charge_number / temperature
+        found = self.focus.along(place, pull_V * per_volt)
         scale = e * self.charge_number * density * thermal / (2.0 * np.sqrt(np.pi))
-        by_volt = np.where(phi < 0.0, -self.charge_number / temperature, 0.0)
-        return scale * (flux - free), scale * by_pull * by_volt
+        return scale * (found.flux - found.free), -scale * found.slope * rise * per_volt
 
 
 def focus_of(species: Sequence[Species], density: Array, temperature: Array,

@@ -27,6 +27,7 @@ from charging.currents.emission import (
     line_ends_V,
     photo_saturation_A_m2,
 )
+from charging.currents.focus_table import FocusPlace
 from charging.currents.populations import (
     Populations,
     electron_sheath,
@@ -218,12 +219,14 @@ class Kept(NamedTuple):
     """What follows from a `Setting` alone, for members [m].
 
     sheath_m2 : ndarray [m, 1], Debye length squared; child_m2 : ndarray [m, 1], squared length
-    of a Child sheath at 1 V; photo_A_m2 : ndarray [m, S], photocurrent before escape.
+    of a Child sheath at 1 V; photo_A_m2 : ndarray [m, S], photocurrent before escape;
+    focus : place of streaming ions in the table of their orbits, or None.
     """
 
     sheath_m2: Array
     child_m2: Array
     photo_A_m2: Array
+    focus: FocusPlace | None = None
 
 
 class Setting(NamedTuple):

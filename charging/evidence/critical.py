@@ -61,24 +61,25 @@ def critical_checks() -> Iterator[Check]:
             value, "eV", 2e-3, QUADRATURE, "derived",
             partial(_printed_onset_eV, peak, energy, back, upper=True),
         )  # fmt: skip
-    for what, peak, energy, back, value in (
-        ("polyimide", 2.1, 150.0, 0.07, 500.0),
-        ("fluoropolymer", 3.0, 300.0, 0.09, 1400.0),
-        ("silica", 2.4, 400.0, 0.12, 1700.0),
-        ("magnesium oxide", 4.0, 400.0, 0.12, 2500.0),
+    for what, peak, energy, back, value, allowed in (
+        ("polyimide", 2.1, 150.0, 0.07, 500.0, 0.15),
+        ("fluoropolymer", 3.0, 300.0, 0.09, 1400.0, 0.1),
+        ("silica", 2.4, 400.0, 0.12, 1700.0, 0.15),
+        ("magnesium oxide", 4.0, 400.0, 0.12, 2500.0, 0.1),
     ):
         yield Check(
             f"critical temperature at normal incidence, {what}", "critical temperature, published",
-            value, "eV", 0.15, LAI, "memory",
+            value, "eV", allowed, LAI, "memory",
             partial(_printed_onset_eV, peak, energy, back, upper=True),
         )  # fmt: skip
     basis: Basis = "memory"
     for name, value in (
         ("polyimide film", 800.0), ("FEP film, silvered", 2100.0), ("fused silica", 2600.0),
-        ("oxidised aluminium", 2000.0), ("silver", 2700.0), ("gold", 4900.0),
+        ("cover glass", 2200.0), ("oxidised aluminium", 2000.0), ("silver", 2700.0),
+        ("gold", 4900.0),
     ):  # fmt: skip
         yield Check(
             f"critical temperature of {name}, isotropic, own record",
-            "critical temperature of the library", value, "eV", 0.3, LAI, basis,
+            "critical temperature of the library", value, "eV", 0.25, LAI, basis,
             partial(_library_onset_eV, name),
         )  # fmt: skip

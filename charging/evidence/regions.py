@@ -82,6 +82,10 @@ def region_checks() -> Iterator[Check]:
             SHUE, "closed form", partial(magnetopause_flaring, bz, pressure),
         )  # fmt: skip
     yield Check(
+        "magnetopause across the Sun line, Bz 0 nT, 2 nPa", "magnetopause 1998", 15.4278, "RE",
+        1e-3, SHUE, "closed form", partial(magnetopause_radius, 0.0, 0.0, 2.0),
+    )  # fmt: skip
+    yield Check(
         "magnetopause by the older fit, 4 nPa, Bz -2.4 nT", "magnetopause against older fit",
         8.96790, "RE", 0.02, "Shue et al. 1997, figure printed in an open library's documentation",
         "handbook", partial(magnetopause_standoff, -2.4, 4.0),

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from charging.currents.barrier import escape_height
 from charging.currents.barrier_field import Barriers, Heights
 from charging.currents.lookup import NetCurrents
+from charging.currents.shielding import shielded, shielded_height, vacuum_share
 from charging.currents.surface import Setting, SurfaceModel, surface_currents
 from charging.currents.tables import REACH_V
 from charging.network.emitters import NO_EMITTERS, Emitters
@@ -75,6 +76,7 @@ class Moment(NamedTuple):
     working : ndarray [m, E], 1 for emitters that work, or None without emitters
     induced_S_m : ndarray [m, F], conductivity by radiation, which no field enhances, or None
     ends : Ends of the strings, or None without strings
+    vacuum : ndarray [m, 1], share of the barriers that stand, or None where they stand whole
     """
 
     setting: Setting
@@ -84,6 +86,7 @@ class Moment(NamedTuple):
     working: Array | None
     induced_S_m: Array | None = None
     ends: Ends | None = None
+    vacuum: Array | None = None
 
 
 def _split(whole: Any, parts: int) -> list[Any]:
@@ -153,8 +156,9 @@ class ChargeBalance:
         setting, temperature = self.around.at(whole_s)
         film = temperature[..., self.net.film_surface]
         release, jump = enhancement_scales(film, self.net.each("film_permittivity", which))
+        setting = self.table.prepared(which, setting)
         whole = Moment(
-            self.table.prepared(which, setting),
+            setting,
             self._conductivity(which, film),
             release,
             jump,
@@ -163,6 +167,7 @@ class ChargeBalance:
             None
             if self.strings is None
             else self.strings.moment(which, setting, self.around.string_ends_V(whole_s)),
+            self.vacuum(which, setting),
         )
         return [whole] if len(time_s) == 1 else _split(whole, len(time_s))
 
@@ -186,7 +191,7 @@ class ChargeBalance:
         potential = self._surface_potential(y)
         height = None
         if self.barriers is not None:
-            height = self.barriers.heights(member, self.net.potentials(y), potential)
+            height = self._heights(member, moment.vacuum, y, potential)
         current = self.table.current(member, potential, moment.setting, height)
         rate = self._rates(member, current, self._film_current(member, moment, y), y)
         if moment.working is not None:
@@ -203,6 +208,8 @@ class ChargeBalance:
             current, slope = self.table.current_and_slope(member, potential, moment.setting)
         else:
             found = self.barriers.heights_and_slopes(member, net.potentials(y), potential)
+            if moment.vacuum is not None:
+                found = shielded(found, escape_height(potential), moment.vacuum)
             current, by_potential, by_height = self.table.slopes(
                 member, potential, moment.setting, found.height_V
             )
@@ -310,7 +317,7 @@ class ChargeBalance:
                 light=light, illumination=1.0 if illumination is None else illumination
             )
         which = np.full(len(time_s), member)
-        height = self.heights(which, y)
+        height = self.heights(which, y, setting)
         by_mechanism = surface_currents(
             self.models[member], potential, setting, height
         ).by_mechanism
@@ -326,12 +333,26 @@ class ChargeBalance:
             )
         return Flows(by_mechanism, film, self._links(which, y), emitted, *strung)
 
-    def heights(self, member: Index, y: Array) -> Array:
+    def heights(self, member: Index, y: Array, setting: Setting) -> Array:
         """What photo- and secondary electrons must climb to leave [V, m, S]."""
-        potential = self.net.potentials(y)[:, self.net.surface_node]
+        vacuum = self.vacuum(member, self.table.prepared(member, setting))
+        return self._heights(member, vacuum, y, self._surface_potential(y))
+
+    def _heights(self, member: Index, vacuum: Array | None, y: Array, potential: Array) -> Array:
         if self.barriers is None:
             return escape_height(potential)[0]
-        return self.barriers.heights(member, self.net.potentials(y), potential)
+        whole = self.barriers.heights(member, self.net.potentials(y), potential)
+        if vacuum is None:
+            return whole
+        return shielded_height(escape_height(potential)[0], whole, vacuum)
+
+    def vacuum(self, member: Index, setting: Setting) -> Array | None:
+        """Share of the barriers that stand [m, 1], of a prepared setting; None where all do."""
+        if self.barriers is None or setting.kept is None:
+            return None
+        radius_m2 = self.table.sheath.radius_m2[self.table.table[member]][:, None]
+        share = vacuum_share(setting.kept.sheath_m2, radius_m2)
+        return share if bool((share < 1.0).any()) else None
 
     def node_currents(self, flows: Flows, member: int = 0) -> Array:
         """Net current of a member into every node [A, m, n], conduction and links included."""

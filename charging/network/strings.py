@@ -18,6 +18,7 @@ import numpy as np
 from numpy.polynomial.legendre import leggauss
 from numpy.typing import NDArray
 
+from charging.currents.focus_table import FocusPlace
 from charging.currents.lookup import NetCurrents
 from charging.currents.streams import Stream
 from charging.currents.surface import Kept, Setting, SurfaceModel, surface_currents
@@ -254,5 +255,10 @@ def _repeated(setting: Setting, times: int) -> Setting:
         light=many(setting.light),
         illumination=many(lit) if isinstance(lit, np.ndarray) else lit,
         stream=None if stream is None else Stream(*(many(part) for part in stream)),
-        kept=None if kept is None else Kept(*(many(part) for part in kept)),
+        kept=None
+        if kept is None
+        else Kept(
+            *(many(part) for part in kept[:3]),
+            None if kept.focus is None else FocusPlace(*(many(part) for part in kept.focus)),
+        ),
     )

@@ -164,7 +164,9 @@ def reasons_against(
         names = [f"{p.key} of {p.material}" for p in driving]
         more = f" and {len(names) - NAMES_SHOWN} more" if len(names) > NAMES_SHOWN else ""
         found.append(f"no source for {', '.join(names[:NAMES_SHOWN])}{more}")
-    if not corner.trivial:
+    if not corner.searched:
+        found.append("spreads of properties were not run (halflit review --corners runs them)")
+    elif not corner.trivial:
         total = corner.draws.count + corner.draws.failed
         if total < LEAST_DRAWS:
             found.append(f"the corner was checked by {total} draws, fewer than {LEAST_DRAWS}")

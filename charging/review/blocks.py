@@ -25,7 +25,7 @@ from charging.review.space import Variant, Workshop
 from charging.spacecraft import surface_materials
 from charging.surroundings import Surroundings
 
-BLOCK, FULL_BLOCK, FEWEST = 128, 24, 4
+BLOCK, FULL_BLOCK, FEWEST = 256, 24, 4
 """Members in one block: with coarse tables, with full ones, along an orbit with its plasma."""
 
 SCREENING = replace(ENSEMBLE_TOLERANCE, method=RODAS3)
@@ -151,13 +151,16 @@ def _work(job: Job, pickled: bytes) -> tuple[list[list[float]], list[list[float]
 class Runner:
     """Runs blocks here, or on `workers` processes; the numbers are the same.
 
-    `progress` is told how many members have been run; `members` counts them.
+    `progress` is told how many members have been run of how many; `members` counts them.
     """
 
-    def __init__(self, workers: int = 1, progress: Callable[[int], None] | None = None) -> None:
+    def __init__(
+        self, workers: int = 1, progress: Callable[[int, int], None] | None = None
+    ) -> None:
         self.members = 0
+        self.workers = workers
+        self._planned = 0
         self._progress = progress
-        self._workers = workers
         self._bench = Bench()
         self._pickles: dict[int, tuple[LoadedCase, str, bytes]] = {}
         self._pool: ProcessPoolExecutor | None = None
@@ -174,6 +177,14 @@ class Runner:
         if self._pool is not None:
             self._pool.shutdown(wait=True, cancel_futures=True)
             self._pool = None
+
+    def expect(self, members: int) -> None:
+        """Say how many more members will be asked for, as far as that is known."""
+        self._planned = self.members + members
+
+    def each(self, work: Callable[..., bytes], rows: Sequence[tuple[object, ...]]) -> list[bytes]:
+        """Results of a function of a module for rows of arguments, on the processes."""
+        return [f.result() for f in [self._started().submit(work, *row) for row in rows]]
 
     def solve(
         self,
@@ -197,6 +208,8 @@ class Runner:
             In the order asked; nan where a member finds no solution.
         """
         token, pickled = self._token(loaded)
+        count = sum(len(variants) for _, variants in asked)
+        self._planned = max(self._planned, self.members + count)
         jobs, orders = [], []
         for scene, variants in asked:
             alike: dict[frozenset[str], list[int]] = {}
@@ -206,7 +219,7 @@ class Runner:
             for same in alike.values():
                 order += same
                 # even blocks: no process waits for a full one while another has a sliver
-                for rows in np.array_split(same, self._pieces(len(same))):
+                for rows in np.array_split(same, self._pieces(len(same), count)):
                     chosen = tuple(variants[i] for i in rows)
                     jobs.append(Job(token, scene, chosen, tuple(wanted)))
             orders.append(order)
@@ -226,33 +239,35 @@ class Runner:
             )
         return found
 
-    def _pieces(self, count: int) -> int:
-        """Number of blocks: no larger than they may be, and one for every process if worth it."""
-        needed = -(-count // BLOCK)
-        if self._workers > 1 and count >= 2 * LEAST_BLOCK:
-            needed = -(-max(needed, 2) // 2) * 2
-        return needed
+    def _pieces(self, count: int, whole: int) -> int:
+        """Number of blocks: no larger than they may be, and work for every process."""
+        largest = min(BLOCK, max(-(-whole // self.workers), LEAST_BLOCK))
+        return -(-count // largest)
 
     def _answers(
         self, jobs: Sequence[Job], loaded: LoadedCase, pickled: bytes
     ) -> list[tuple[list[list[float]], list[list[float]]]]:
-        if self._workers < 2 or len(jobs) < 2:
+        if self.workers < 2 or len(jobs) < 2:
             if jobs and not self._bench.knows(jobs[0].case):
                 self._bench.keep(jobs[0].case, loaded)
             return [self._told(job, self._bench.run(job)) for job in jobs]
-        if self._pool is None:
-            self._pool = ProcessPoolExecutor(self._workers, mp_context=get_context("spawn"))
+        pool = self._started()
         futures: list[Future[tuple[list[list[float]], list[list[float]]]]] = [
-            self._pool.submit(_work, job, pickled) for job in jobs
+            pool.submit(_work, job, pickled) for job in jobs
         ]
         return [self._told(job, future.result()) for job, future in zip(jobs, futures, strict=True)]
+
+    def _started(self) -> ProcessPoolExecutor:
+        if self._pool is None:
+            self._pool = ProcessPoolExecutor(self.workers, mp_context=get_context("spawn"))
+        return self._pool
 
     def _told(
         self, job: Job, answer: tuple[list[list[float]], list[list[float]]]
     ) -> tuple[list[list[float]], list[list[float]]]:
         self.members += len(job.variants)
         if self._progress is not None:
-            self._progress(self.members)
+            self._progress(self.members, max(self._planned, self.members))
         return answer
 
     def _token(self, loaded: LoadedCase) -> tuple[str, bytes]:

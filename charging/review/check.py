@@ -6,6 +6,7 @@ import json
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
+from time import perf_counter
 from typing import Any
 
 from charging.case import LoadedCase, load_case, load_case_text
@@ -18,7 +19,8 @@ from charging.review.fixes import Fixes, find_fixes
 from charging.review.limits import Requirement, Verdict, requirements
 from charging.review.nominal import Cell, Place, governing, nominal_cells
 from charging.review.scenes import Scene, scenes
-from charging.review.sensitivity import Corner, Ensemble
+from charging.review.sensitivity import Corner, Ensemble, unsearched
+from charging.review.space import properties, varied
 from charging.summary import worst
 
 FLOOR = 0.01
@@ -31,13 +33,17 @@ class Options:
 
     draws : random draws per governing combination; None: as the case says (at least 500).
     fixes : whether fixes are looked for; workers : processes; progress : told how many
-    members have been run.
+    members have been run, of how many as far as known; notes : told what takes long.
+    corners : whether spreads of properties are run; None: yes, unless the plasma changes along
+    the orbit, where a single run takes seconds and a search hours.
     """
 
     draws: int | None = None
     fixes: bool = True
     workers: int = 1
-    progress: Callable[[int], None] | None = None
+    progress: Callable[[int, int], None] | None = None
+    notes: Callable[[str], None] | None = None
+    corners: bool | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,6 +85,11 @@ class Review:
     ensemble: Ensemble
     members: int
 
+    @property
+    def searched(self) -> bool:
+        """Whether corners of the spreads were looked for."""
+        return all(row.corner.searched for row in self.rows)
+
 
 def review_case(loaded: LoadedCase, options: Options | None = None) -> Review:
     """Run and judge every mode, plasma and age of a case.
@@ -100,34 +111,50 @@ def review_case(loaded: LoadedCase, options: Options | None = None) -> Review:
     options = options or Options()
     with Runner(options.workers, options.progress) as runner:
         found = _review(loaded, options, runner)
-        if not options.fixes:
-            return found[0]
-        return _with_fixes(*found, options, runner)
+        if not options.fixes or not found.searched:
+            return found
+        return _with_fixes(found, options, runner)
 
 
-def _review(
-    loaded: LoadedCase, options: Options, runner: Runner
-) -> tuple[Review, tuple[Corner, ...]]:
+def _review(loaded: LoadedCase, options: Options, runner: Runner, *, trial: bool = False) -> Review:
+    """Review a case; as a trial of a design it ends where a first corner exceeds a limit."""
     case = loaded.case
     limits = requirements(case)
     pairs = judged(case, limits)
     wanted = list(dict.fromkeys(quantity for _, quantity in pairs))
     shown = list(dict.fromkeys((*wanted, *informative(case))))
     asked = scenes(loaded)
-    cells = nominal_cells(loaded, asked, shown)
+    started = perf_counter()
+    cells = nominal_cells(loaded, asked, shown, runner)
+    nominal = sum(len(cell.variants) for cell in cells)
+    each_s = (perf_counter() - started) / nominal
     places = governing(cells, shown)
     floors = [FLOOR * min(r.limit for r, q in pairs if q == one) for one in wanted]
     ensemble = Ensemble(
         case.review.draws if options.draws is None else options.draws, case.review.seed
     )
     before = runner.members
-    found = corners(loaded, cells, places[: len(wanted)], wanted, floors, ensemble, runner)
-    nominal = sum(len(cell.variants) for cell in cells)
+    along = loaded.case.plasma.changes
+    found: tuple[Corner, ...]
+    if options.corners is False or (options.corners is None and along):
+        found = unsearched(loaded, cells, places[: len(wanted)], wanted)
+    else:
+        if along and options.notes is not None:
+            fewest = ensemble.draws + 2 * len(varied(properties(loaded, "end")))
+            options.notes(
+                f"the plasma changes along the orbit, so every run takes as long as a single one: "
+                f"at least {fewest} runs of about {each_s:.1f} s, "
+                f"{fewest * each_s / 60.0 / runner.workers:.0f} min on {runner.workers} processes; "
+                "--no-corners leaves them out"
+            )
+        least = [floor / FLOOR for floor in floors] if trial else None
+        of_limits = places[: len(wanted)]
+        found = corners(loaded, cells, of_limits, wanted, floors, ensemble, runner, least)
     by_quantity: dict[Quantity, tuple[Place, Corner]] = {
         one: (place, corner) for one, place, corner in zip(wanted, places, found, strict=False)
     }
     rows = assessed(loaded, cells, [(r, q, *by_quantity[q]) for r, q in pairs])
-    review = Review(
+    return Review(
         loaded=loaded,
         limits=limits,
         scenes=asked,
@@ -141,7 +168,6 @@ def _review(
         ensemble=ensemble,
         members=runner.members - before + nominal,
     )
-    return review, found
 
 
 def overall(rows: Sequence[Row]) -> Verdict:
@@ -149,11 +175,9 @@ def overall(rows: Sequence[Row]) -> Verdict:
     return worst([row.verdict for row in rows]) if rows else "not assessable"
 
 
-def _with_fixes(
-    review: Review, found: tuple[Corner, ...], options: Options, runner: Runner
-) -> Review:
+def _with_fixes(review: Review, options: Options, runner: Runner) -> Review:
     def again(changed: LoadedCase) -> tuple[Verdict, tuple[Row, ...], int]:
-        result, _ = _review(changed, options, runner)
+        result = _review(changed, options, runner, trial=True)
         return result.verdict, result.rows, result.members
 
     fixes = find_fixes(review.loaded, review.cells, review.rows, runner, again)

@@ -52,6 +52,11 @@ ASSUMPTIONS = (
         "Fails where one cause moves several, such as one contaminant on all surfaces.",
     ),
     (
+        "Without shapes, barriers are those of round caps on a sphere; sun-tracking wings have "
+        "none.",
+        "Fails for booms, wings and boxes with large overhanging parts.",
+    ),
+    (
         "Capacitance between outer faces through space is left out unless a shape is given.",
         "Fails within the first milliseconds of a jump of structure.",
     ),

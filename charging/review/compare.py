@@ -68,7 +68,7 @@ def compare(before: Reviewed, after: Reviewed) -> dict[str, Any]:
     if before.document["hashes"]["code"] != after.document["hashes"]["code"]:
         inputs.append(_changed("program code", before.document["hashes"]["code"][:12],
                                after.document["hashes"]["code"][:12]))  # fmt: skip
-    for key in ("draws", "seed"):
+    for key in ("draws", "seed", "corners"):
         pair = before.document["settings"][key], after.document["settings"][key]
         if pair[0] != pair[1]:
             inputs.append(_changed(f"review {key}", *pair))

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from charging.case import LoadedCase
 from charging.review.blocks import Runner
-from charging.review.extremes import STRUCTURE, Extremes, Quantity, node_of
+from charging.review.extremes import Extremes, Quantity, bonded
 from charging.review.limits import size_of
 from charging.review.nominal import Cell, Place
 from charging.review.sensitivity import (
@@ -37,12 +37,18 @@ from charging.review.space import (
 )
 
 Array = NDArray[np.float64]
+Combo = tuple[int, Variant]
+"""Cell and variant without settings."""
 
 BEATEN = 0.05
 """Share by which a draw may exceed the corner before the corner is extended."""
 
 NEGLIGIBLE = 0.01
 """Changes below this share of the limit are not told apart from none."""
+
+NEAR = 0.05
+"""A quantity may be searched where its nominal value is this share short of its worst, so that
+few combinations serve all quantities; its corner is run where it is worst as well."""
 
 MOST_ROUNDS = 3
 TRIED_AGAIN = 12
@@ -57,6 +63,7 @@ def corners(
     floors: Sequence[float],
     options: Ensemble,
     runner: Runner,
+    enough: Sequence[float] | None = None,
 ) -> tuple[Corner, ...]:
     """Find and check the corner of every quantity.
 
@@ -71,10 +78,14 @@ def corners(
         Changes of each quantity below which nothing is told apart.
     options : Ensemble
     runner : Runner
+    enough : sequence of float, optional
+        Sizes; where the first corner of any quantity is beyond, nothing is drawn.
     """
     search = _Search(loaded, cells, places, wanted, floors, options, runner)
     search.sensitivities()
     search.first_corners()
+    if enough is not None and search.beyond(enough):
+        return search.found()
     search.draws()
     for _ in range(MOST_ROUNDS):
         if not search.extend():
@@ -95,20 +106,20 @@ class _Search:
     ) -> None:
         self.loaded, self.cells, self.places = loaded, cells, places
         self.wanted, self.floors, self.options, self.runner = wanted, floors, options, runner
-        case = loaded.case
-        self.live = [
-            q
-            for q, one in enumerate(wanted)
-            if one.surface == "" or node_of(case, one.surface) != STRUCTURE
-        ]
+        self.live = [q for q, one in enumerate(wanted) if not bonded(loaded.case, one)]
         # a quantity that is nowhere above its floor governs nothing; others' draws watch it
-        combos: dict[tuple[int, Variant], list[int]] = {}
-        for q in self.live:
-            if self._size(q, places[q].value) > floors[q]:
-                combos.setdefault(self._combo(q), []).append(q)
-        if not combos and self.live:
-            combos[self._combo(self.live[0])] = [self.live[0]]
+        heard = [q for q in self.live if self._size(q, places[q].value) > floors[q]]
+        self.homes = self._homes(heard or self.live[:1])
+        combos: dict[Combo, list[int]] = {}
+        for q, home in self.homes.items():
+            combos.setdefault(home, []).append(q)
         self.combos = combos
+        runner.expect(
+            sum(
+                1 + options.draws + 2 * len(varied(properties(loaded, variant.age)))
+                for _, variant in combos
+            )
+        )
         self.effects: dict[int, tuple[Sensitivity, ...]] = {}
         self.settings: dict[int, Settings] = dict.fromkeys(self.live, ())
         self.value = {q: places[q].value for q in self.live}
@@ -118,7 +129,24 @@ class _Search:
         self.drawn: list[tuple[int, Variant, list[Settings], Extremes]] = []
         self.extended: set[int] = set()
 
-    def _combo(self, q: int) -> tuple[int, Variant]:
+    def _homes(self, heard: Sequence[int]) -> dict[int, Combo]:
+        """Combination to search each quantity in: few that come near the worst of all."""
+        size = {
+            (c, variant): np.array([self._size(q, float(cell.worst.value[v, q])) for q in heard])
+            for c, cell in enumerate(self.cells)
+            for v, variant in enumerate(cell.variants)
+        }
+        worst = np.array([self._size(q, self.places[q].value) for q in heard])
+        near = {combo: own >= (1.0 - NEAR) * worst for combo, own in size.items()}
+        left = np.ones(len(heard), dtype=np.bool_)
+        chosen: list[Combo] = []
+        while left.any():
+            chosen.append(max(near, key=lambda combo: int((near[combo] & left).sum())))
+            left &= ~near[chosen[-1]]
+        return {q: max(chosen, key=lambda combo: size[combo][i]) for i, q in enumerate(heard)}
+
+    def _combo(self, q: int) -> Combo:
+        """Where a quantity is worst at the values of the records."""
         place = self.places[q]
         return place.cell, self.cells[place.cell].variants[place.variant]
 
@@ -158,29 +186,27 @@ class _Search:
         self._run_corners(self.live)
         self.first = dict(self.value)
 
+    def beyond(self, enough: Sequence[float]) -> bool:
+        """Whether the size of any quantity at its corner is more than enough."""
+        return any(self._size(q, self.value[q]) > enough[q] for q in self.live)
+
     def _run_corners(self, rows: Sequence[int]) -> None:
         """Run settings of rows in every scene and age with the law and collection that govern."""
         ages = self.loaded.case.review.ages
-        wanted: dict[Variant, None] = {}
-        for q in rows:
-            start = self.at[q][1]
-            for age in ages:
-                wanted.setdefault(replace(start, age=age, settings=self.settings[q]))
-        variants = list(wanted)
+        plans = {q: self._plan(q) for q in rows}
+        variants = list(dict.fromkeys(variant for plan in plans.values() for variant in plan))
         asked = []
         for cell in self.cells:
             collections = {v.collection for v in cell.variants}
             asked.append((cell.scene, [v for v in variants if v.collection in collections]))
         solved = self.runner.solve(self.loaded, asked, self.wanted)
         for q in rows:
-            start = self.at[q][1]
             table = self.by_cell.get(q, np.zeros((len(self.cells), len(ages))))
             for c, ((_, run), found) in enumerate(zip(asked, solved, strict=True)):
-                for a, age in enumerate(ages):
-                    variant = replace(start, age=age, settings=self.settings[q])
+                for variant in plans[q]:
                     if variant not in run:
                         continue
-                    row = run.index(variant)
+                    row, a = run.index(variant), ages.index(variant.age)
                     value = float(found.value[row, q])
                     if self._size(q, value) >= self._size(q, float(table[c, a])):
                         table[c, a] = value
@@ -188,6 +214,18 @@ class _Search:
                         self.value[q] = value
                         self.at[q] = (c, variant, float(found.time_s[row, q]))
             self.by_cell[q] = table
+
+    def _plan(self, q: int) -> list[Variant]:
+        """Corner of a quantity at every age, as searched and where it is worst without it."""
+        at = dict.fromkeys(
+            (v.law, v.collection)
+            for v in (self.at[q][1], self._combo(q)[1], self.homes.get(q, self._combo(q))[1])
+        )
+        return [
+            Variant(age, law, collection, self.settings[q])
+            for law, collection in at
+            for age in self.loaded.case.review.ages
+        ]
 
     def draws(self) -> None:
         """Solve the same random draws in every governing combination."""
@@ -216,9 +254,10 @@ class _Search:
         return best
 
     def _own_draws(self, q: int, worst: int) -> Array:
-        """Values of a quantity in the combination that governs it, else where it was worst."""
-        combos = list(self.combos)
-        k = combos.index(self._combo(q)) if self._combo(q) in combos else worst
+        """Values of a quantity in the combination that it is searched in, else where worst."""
+        if not self.drawn:
+            return np.zeros(0)
+        k = list(self.combos).index(self.homes[q]) if q in self.homes else worst
         values = self.drawn[k][3].value[:, q]
         return np.asarray(values[np.isfinite(values)])
 

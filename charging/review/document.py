@@ -18,6 +18,13 @@ from charging.review.claims import (
     probability,
 )
 from charging.review.criteria import energy_class
+from charging.review.document_runs import (
+    barriers_of,
+    governing_jumps,
+    region_rows,
+    shape_numbers,
+    timeline_rows,
+)
 from charging.review.extremes import Quantity
 from charging.review.fixes import Fixes, named
 from charging.review.limits import UNITS, Requirement, size_of
@@ -54,6 +61,11 @@ def review_document(review: Review) -> dict[str, Any]:
         "worst_pairs": worst_pairs(review),
         "stored_energy": stored_energy(review),
         "structure": _structure(review),
+        "timeline": timeline_rows(loaded.case.epoch, review.cells),
+        "regions": region_rows(loaded.case.epoch, loaded.case.duration_s, review.cells),
+        "jumps": governing_jumps(review),
+        "barriers": barriers_of(review),
+        "geometry": shape_numbers(review),
         "sensitivities": [_sensitivity_row(row) for row in _distinct(review)],
         "laws_and_collections": [_spread_row(review, row) for row in _distinct(review)],
         "fixes": None if review.fixes is None else fixes_document(review.fixes),
@@ -81,6 +93,7 @@ def settings_of(review: Review) -> dict[str, Any]:
         "draws": review.ensemble.draws,
         "seed": review.ensemble.seed,
         "fixes": review.fixes is not None,
+        "corners": review.searched,
         "ages": list(review.loaded.case.review.ages),
     }
 
@@ -115,7 +128,7 @@ def limit_row(review: Review, row: Row) -> dict[str, Any]:
         "law": row.variant.law,
         "collection": row.variant.collection,
         "nominal_value": row.nominal.value,
-        "corner_value": corner.value,
+        "corner_value": corner.value if corner.searched else None,
         "governs": "corner" if row.at_corner else "nominal",
         "corner_extended": corner.extended,
         "corner_first_value": corner.first,
@@ -172,7 +185,7 @@ def _matrix_row(review: Review, row: Row) -> dict[str, Any]:
                     "plasma": cell.scene.plasma,
                     "age": age,
                     "nominal": nominal,
-                    "corner": corner,
+                    "corner": corner if row.corner.searched else None,
                     "exceeded": size_of(kind, governing) > row.requirement.limit,
                 }
             )
@@ -286,7 +299,8 @@ def _sensitivity_row(row: Row) -> dict[str, Any]:
         "against": row.quantity.against,
         "kind": row.quantity.kind,
         "unit": UNITS[row.quantity.kind],
-        "nominal": row.nominal.value,
+        # at the same law, collection and place as the reruns, which may be a little less
+        "nominal": next((s.nominal for s in row.corner.sensitivities), row.nominal.value),
         "properties": [
             {
                 "material": s.of.material,

@@ -69,6 +69,11 @@ def _floats(surface: Surface) -> bool:
     return surface.floating or surface.thickness_m is not None
 
 
+def bonded(case: Case, quantity: Quantity) -> bool:
+    """Whether a quantity is that of a surface without a node of its own, so always zero."""
+    return quantity.surface != "" and node_of(case, quantity.surface) == STRUCTURE
+
+
 def quantities(case: Case, requirement: Requirement) -> Iterator[Quantity]:
     """Return what a requirement concerns in a case.
 

@@ -5,6 +5,8 @@ from __future__ import annotations
 import io
 import re
 from collections.abc import Mapping, Sequence
+from pathlib import Path
+from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
 
 import numpy as np
@@ -12,6 +14,7 @@ import xarray as xr
 from matplotlib import rc_context
 from matplotlib.axes import Axes
 
+from charging.clock import iso_time
 from charging.dataset import mode_dataset
 from charging.orbit_run import CaseRun
 from charging.plot_page import (
@@ -64,6 +67,8 @@ def figures(review: Review, document: Mapping[str, Any]) -> list[Figure]:
     if live and live[0].corner.sensitivities:
         found.append(_tornado(live[0], document, short, footer))
     cell, member = _shown(review, live)
+    if review.loaded.case.shape:
+        found.append(_shape(review, live, short))
     dataset = mode_dataset(CaseRun(review.loaded, (cell.run,)), cell.run, member)
     what = f"mode {cell.scene.mode}, plasma {cell.scene.plasma}, {cell.variants[member].law}"
     for anchor, draw, caption, description in PAGES:
@@ -111,6 +116,41 @@ def _shown(review: Review, live: Sequence[Row]) -> tuple[Any, int]:
     return review.cells[place.cell], place.variant
 
 
+def _shape(review: Review, live: Sequence[Row], short: str) -> Figure:
+    """Shapes coloured by potential at the worst moment of the worst limit."""
+    from charging.shape.picture import shape_picture  # 3-D axes load only with shapes
+    from charging.shape.views import wings_of
+
+    case = review.loaded.case
+    cell, member = _shown(review, live)
+    time_s = live[0].nominal.time_s if live else 0.0
+    run = cell.run
+    sun, illumination, leg = run.way.sun_in_body(time_s)
+    state = run.trajectories[member](np.array([time_s]))
+    volts = run.balance.net.of(member).potentials(state)[0]
+    nodes = run.balance.net.surface_node
+    when = iso_time(case.epoch, time_s)
+    with TemporaryDirectory() as folder, rc_context({"svg.hashsalt": "figure-shape"}):
+        file = shape_picture(
+            case,
+            Path(folder) / "shape.svg",
+            sun_body=sun if illumination > 0.0 else np.zeros(3),
+            wings=wings_of(leg),
+            potential_V=dict(zip(case.names, volts[nodes].tolist(), strict=True)),
+            structure_V=float(volts[0]),
+            caption=f"{when}, mode {cell.scene.mode}; run {short}",
+        )
+        text = file.read_text(encoding="utf-8")
+    caption = f"Shapes coloured by potential at {when} (mode {cell.scene.mode})"
+    return Figure(
+        "figure-shape",
+        caption,
+        "The spacecraft from two sides with numbered surfaces; names and potentials stand beside "
+        "it.",
+        cleaned(text, "figure-shape", caption),
+    )
+
+
 def _margins(
     rows: Sequence[Mapping[str, Any]], document: Mapping[str, Any], short: str, footer: str
 ) -> Figure:
@@ -125,13 +165,14 @@ def _margins(
         sizes = [
             float(np.clip(_size(row, row[name]) / row["allowed"], SMALLEST, LARGEST))
             for name in ("nominal_value", "corner_value")
+            if row[name] is not None
         ]
         exceeded = row["verdict"] == "exceeded"
         tone = ALARM if exceeded else COLOURS[0]
         mark = {"exceeded": EXCEEDED_MARK, "within": WITHIN_MARK}.get(row["verdict"], UNKNOWN_MARK)
-        axes.plot(sizes, [k, k], color=tone, linewidth=1.0, zorder=2.0)
+        axes.plot(sizes, [k] * len(sizes), color=tone, linewidth=1.0, zorder=2.0)
         axes.plot(sizes[:1], [k], marker="|", markersize=9, color=tone, zorder=3.0)
-        axes.plot(sizes[1:], [k], marker=mark, markersize=6, color=tone, zorder=3.0)
+        axes.plot(sizes[-1:], [k], marker=mark, markersize=6, color=tone, zorder=3.0)
     axes.axvline(1.0, color=INK, linewidth=1.2, linestyle=(0, (9.0, 3.0)))
     axes.set_xscale("log")
     axes.set_xlim(SMALLEST / 1.5, LARGEST * 1.5)
@@ -222,12 +263,16 @@ def svg(page: Page, anchor: str, label: str) -> Markup:
     Texts are drawn as outlines, so that they look the same everywhere; what a reader of the
     screen needs is in the label.
     """
-    from html import escape
-
     target = io.StringIO()
     with rc_context({"svg.hashsalt": anchor, "svg.fonttype": "path"}):
         page.figure.savefig(target, format="svg", metadata={"Date": None, "Creator": None})
-    text = target.getvalue()
+    return cleaned(target.getvalue(), anchor, label)
+
+
+def cleaned(text: str, anchor: str, label: str) -> Markup:
+    """Make an SVG document part of a page: no comments, no metadata, identifiers of its own."""
+    from html import escape
+
     text = re.sub(r"<!--.*?-->", "", text[text.index("<svg") :], flags=re.DOTALL)
     text = re.sub(r"<metadata>.*?</metadata>", "", text, flags=re.DOTALL)
     text = re.sub(r'\bid="', f'id="{anchor}-', text)

@@ -40,6 +40,17 @@ def shown(value: float, unit: str) -> str:
     return f"{value:.3g} V/m"
 
 
+def plain_time(text: str) -> str:
+    """Write a time of a document for people.
+
+    Examples
+    --------
+    >>> plain_time("2031-03-20T12:00:00Z")
+    '2031-03-20 12:00:00 UTC'
+    """
+    return text.replace("T", " ").replace("Z", " UTC")
+
+
 def law_name(law: str) -> str:
     """Name of a law for people.
 

@@ -2,13 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import copyreg
+import io
+import pickle
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from types import MappingProxyType
+from typing import Any
 
 import numpy as np
 
 from charging.case import LoadedCase
 from charging.orbit_run import TOLERANCE, ModeRun, laws_of, solve_mode, surroundings_of
+from charging.review.blocks import Runner
 from charging.review.extremes import Extremes, Quantity, extremes
 from charging.review.limits import size_of
 from charging.review.scenes import Scene, Sheath, sheath
@@ -40,16 +46,40 @@ class Place:
 
 
 def nominal_cells(
-    loaded: LoadedCase, asked: Sequence[Scene], wanted: Sequence[Quantity]
+    loaded: LoadedCase, asked: Sequence[Scene], wanted: Sequence[Quantity], runner: Runner
 ) -> tuple[Cell, ...]:
     """Solve every scene for all ages, laws and allowed collections.
+
+    Several scenes are solved on the processes of the runner.
 
     Raises
     ------
     NoSolutionError
         The march found no step in one of them.
     """
-    return tuple(_cell(loaded, scene, wanted) for scene in asked)
+    if runner.workers < 2 or len(asked) < 2:
+        return tuple(_cell(loaded, scene, wanted) for scene in asked)
+    rows = [(loaded, scene, tuple(wanted)) for scene in asked]
+    return tuple(pickle.loads(packed) for packed in runner.each(_packed_cell, rows))
+
+
+def _packed_cell(loaded: LoadedCase, scene: Scene, wanted: Sequence[Quantity]) -> bytes:
+    target = io.BytesIO()
+    _Pickler(target, pickle.HIGHEST_PROTOCOL).dump(_cell(loaded, scene, wanted))
+    return target.getvalue()
+
+
+def _read_only(values: Mapping[Any, Any]) -> MappingProxyType[Any, Any]:
+    return MappingProxyType(dict(values))
+
+
+class _Pickler(pickle.Pickler):
+    """A pickler that also knows read-only mappings, of which runs are full."""
+
+    dispatch_table: dict[type, Callable[[Any], Any]] = {  # noqa: RUF012 - asked for by pickle
+        **copyreg.dispatch_table,
+        MappingProxyType: lambda values: (_read_only, (dict(values),)),
+    }
 
 
 def _cell(loaded: LoadedCase, scene: Scene, wanted: Sequence[Quantity]) -> Cell:

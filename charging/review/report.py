@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from typing import Any
 
 from charging.review.check import Review
 from charging.review.figures import Figure, figures
 from charging.review.markup import Child, Markup, element, items, joined, section, table
-from charging.review.narrative import law_name, shown
+from charging.review.narrative import law_name, plain_time, shown
 from charging.review.report_parts import (
     assumptions,
     badge,
@@ -17,10 +17,12 @@ from charging.review.report_parts import (
     hashes,
     laws,
     matrix,
+    or_dash,
     plasmas,
     properties,
     sensitivities,
 )
+from charging.review.report_run import geometry, jumps, timeline
 from charging.review.report_style import PAGE, STYLE
 from charging.review.scenes import AGES
 
@@ -42,7 +44,7 @@ def report_html(review: Review, document: Mapping[str, Any]) -> str:
         One self-contained HTML document; no script runs in it, nothing is loaded.
     """
     pictures = {figure.anchor: figure for figure in figures(review, document)}
-    parts = _sections(review, document, pictures)
+    parts = _sections(document, pictures)
     contents = element(
         "nav",
         element("h2", "Contents", id="contents"),
@@ -106,7 +108,7 @@ def _data(document: Mapping[str, Any]) -> dict[str, Any]:
 
 
 def _sections(
-    review: Review, document: Mapping[str, Any], pictures: Mapping[str, Figure]
+    document: Mapping[str, Any], pictures: Mapping[str, Figure]
 ) -> list[tuple[str, str, Child]]:
     def picture(anchor: str) -> Child:
         return _figure(pictures[anchor]) if anchor in pictures else None
@@ -122,7 +124,9 @@ def _sections(
             [_structure(document), picture("figure-potentials"), picture("figure-differentials")],
         ),
         ("currents", "Currents at the worst moments", picture("figure-currents")),
-        ("timeline", "Eclipses and regions", [_timeline(review), picture("figure-detail")]),
+        ("timeline", "Eclipses and regions", [timeline(document), picture("figure-detail")]),
+        ("jumps", "Jumps between branches", jumps(document)),
+        ("geometry", "Geometry and barriers", [geometry(document), picture("figure-shape")]),
         (
             "sensitivities",
             "Sensitivities and corners",
@@ -191,7 +195,7 @@ def _compliance(document: Mapping[str, Any]) -> Child:
                 f"{row['requirement_id']}, {row['kind']}",
                 row["method"],
                 shown(row["nominal_value"], unit),
-                shown(row["corner_value"], unit),
+                or_dash(row["corner_value"], unit),
                 shown(row["allowed"], unit),
                 _margin(row),
                 [badge(row["verdict"]), f" {row['reason']}. Governs: {_place(row)}"],
@@ -250,11 +254,7 @@ def _margin(row: Mapping[str, Any]) -> Child:
 
 def _place(row: Mapping[str, Any]) -> str:
     where = f"{row['mode']}, {row['plasma']}, {AGES[row['age']]}"
-    return f"{where}, {_plain_time(row['time'])}." if row["time"] else f"{where}."
-
-
-def _plain_time(text: str) -> str:
-    return text.replace("T", " ").replace("Z", " UTC")
+    return f"{where}, {plain_time(row['time'])}." if row["time"] else f"{where}."
 
 
 def _pairs(document: Mapping[str, Any]) -> Child:
@@ -290,7 +290,7 @@ def _energy(document: Mapping[str, Any]) -> Child:
                     shown(row["energy_J"], "J"),
                     row["class"],
                     f"{row['mode']}, {AGES[row['age']]}",
-                    "–" if row["time"] is None else _plain_time(row["time"]),
+                    "–" if row["time"] is None else plain_time(row["time"]),
                 )
                 for row in document["stored_energy"]
             ],
@@ -323,35 +323,6 @@ def _structure(document: Mapping[str, Any]) -> Child:
         ],
         numbers=(2, 3, 4),
     )
-
-
-def _timeline(review: Review) -> Child:
-    from charging.clock import iso_time
-
-    epoch = review.loaded.case.epoch
-    rows: list[Sequence[Child]] = []
-    for cell in review.cells:
-        name = f"{cell.scene.mode}, {cell.scene.plasma}"
-        around = cell.run.around
-        for e in around.eclipses[:20]:
-            if e.umbra_start is not None and e.umbra_end is not None:
-                start, end = (iso_time(epoch, t) for t in (e.umbra_start, e.umbra_end))
-                what = f"umbra of the {e.body}, {(e.umbra_end - e.umbra_start) / 60.0:.1f} min"
-                rows.append((name, what, _plain_time(start), _plain_time(end)))
-        for event in around.episodes:
-            start = iso_time(epoch, event.onset_s)
-            end = iso_time(epoch, event.onset_s + event.rise_s + event.hold_s)
-            plasma = cell.run.plasmas[event.plasma].name
-            rows.append((name, f"plasma event {plasma}", _plain_time(start),
-                         f"{_plain_time(end)}, then decay"))  # fmt: skip
-        for leg in cell.run.way.legs:
-            if leg.modes:
-                start, end = (iso_time(epoch, t) for t in (leg.start_s, leg.end_s))
-                what = f"mode {', '.join(leg.modes)}"
-                rows.append((name, what, _plain_time(start), _plain_time(end)))
-    if not rows:
-        return element("p", "No eclipse, event or interval of a mode in any run.")
-    return table("Eclipses, events and intervals", ("run", "what", "from", "to"), rows)
 
 
 def _references(document: Mapping[str, Any]) -> Child:

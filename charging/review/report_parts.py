@@ -61,8 +61,13 @@ def matrix(document: Mapping[str, Any]) -> Child:
     return parts
 
 
+def or_dash(value: float | None, unit: str) -> str:
+    """Write a value, or a dash for what was not run."""
+    return "–" if value is None else shown(value, unit)
+
+
 def _cell(cell: Mapping[str, Any], unit: str) -> Child:
-    text = f"{shown(cell['nominal'], unit)}; {shown(cell['corner'], unit)}"
+    text = f"{shown(cell['nominal'], unit)}; {or_dash(cell['corner'], unit)}"
     if not cell["exceeded"]:
         return text
     return element("span", f"{text} ✗ exceeded", class_="exceeded")
@@ -71,6 +76,12 @@ def _cell(cell: Mapping[str, Any], unit: str) -> Child:
 def sensitivities(document: Mapping[str, Any]) -> Child:
     """Corners, their draws, and what moves each quantity."""
     rows = [row for row in document["limits"] if not row["bonded"]]
+    if not document["settings"]["corners"]:
+        return element(
+            "p",
+            "Spreads of properties were not run, so there is no corner and nothing is called "
+            "within: halflit review --corners runs them.",
+        )
     parts: list[Child] = [
         element(
             "p",
@@ -87,7 +98,7 @@ def sensitivities(document: Mapping[str, Any]) -> Child:
                 (
                     f"{row['surface']} / {row['against']}",
                     row["kind"],
-                    shown(row["corner_value"], row["unit"]),
+                    or_dash(row["corner_value"], row["unit"]),
                     shown(row["draws_largest"], row["unit"]),
                     f"{row['draws']}"
                     + (f", {row['draws_failed']} without solution" if row["draws_failed"] else ""),

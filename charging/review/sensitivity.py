@@ -8,7 +8,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from charging.review.extremes import Quantity
+from charging.case import LoadedCase
+from charging.review.extremes import Quantity, bonded
+from charging.review.limits import size_of
+from charging.review.nominal import Cell, Place
 from charging.review.space import Property, Settings, Variant
 
 Array = NDArray[np.float64]
@@ -72,6 +75,8 @@ class Corner:
         A draw beat the first corner by more than 5 %.
     first : float
         Value of the first corner.
+    searched : bool
+        False where no corner was looked for: the value is the nominal one.
     """
 
     quantity: Quantity
@@ -86,6 +91,7 @@ class Corner:
     draws: Draws
     extended: bool
     first: float
+    searched: bool = True
 
 
 @dataclass(frozen=True, slots=True)
@@ -117,3 +123,35 @@ def sensitivities_of(
         monotone = not (one_side and min(abs(low - nominal), abs(high - nominal)) > floor)
         found.append(Sensitivity(one, low, high, nominal, monotone))
     return tuple(sorted(found, key=lambda s: -s.reach))
+
+
+def unsearched(
+    loaded: LoadedCase, cells: Sequence[Cell], places: Sequence[Place], wanted: Sequence[Quantity]
+) -> tuple[Corner, ...]:
+    """Stand-ins for corners that were not looked for: nominal values, no effects, no draws."""
+    ages, nothing = loaded.case.review.ages, Draws(0, 0, 0.0, np.zeros(0))
+    found = []
+    for q, (quantity, place) in enumerate(zip(wanted, places, strict=True)):
+        table = np.zeros((len(cells), len(ages)))
+        for c, cell in enumerate(cells):
+            for a, age in enumerate(ages):
+                own = [cell.worst.value[v, q] for v, w in enumerate(cell.variants) if w.age == age]
+                table[c, a] = max(own, key=lambda value: size_of(quantity.kind, value))
+        found.append(
+            Corner(
+                quantity=quantity,
+                trivial=bonded(loaded.case, quantity),
+                settings=(),
+                value=place.value,
+                time_s=place.time_s,
+                scene=place.cell,
+                variant=cells[place.cell].variants[place.variant],
+                by_cell=table,
+                sensitivities=(),
+                draws=nothing,
+                extended=False,
+                first=place.value,
+                searched=bonded(loaded.case, quantity),
+            )
+        )
+    return tuple(found)

@@ -61,7 +61,8 @@ def sweep_dataset(plan: Plan, solver: Solver, results: Sequence[Results]) -> xr.
     """One dataset with every member; members of all choices side by side.
 
     Dimensions: member, mode, law, surface, pair, factor. Drawn ranges and varied values are
-    coordinates of `member` by their paths.
+    coordinates of `member` by their paths; names are auxiliary coordinates, as in a result
+    (``dataset.set_xindex("surface_name")``).
     """
     case = plan.loaded.case
     data: dict[str, Any] = {}
@@ -71,14 +72,34 @@ def sweep_dataset(plan: Plan, solver: Solver, results: Sequence[Results]) -> xr.
             data[name] = (dims, value, {"units": unit, "long_name": meaning})
     count = plan.members
     coordinates: dict[str, Any] = {
-        "member": ("member", np.arange(count)),
-        "choice": ("member", np.repeat([c.label for c in plan.choices], plan.draws)),
-        "replicate": ("member", np.tile(solver.replicate, len(plan.choices))),
-        "mode": ("mode", ["base", *(mode.name for mode in case.alternatives)]),
-        "law": ("law", list(laws_of(plan.loaded))),
-        "surface": ("surface", list(case.names)),
-        "pair": ("pair", [f"{a} - {b}" for a, b in neighbours(case)]),
-        "factor": ("factor", list(solver.names)),
+        "member": ("member", np.arange(count), {"units": "1", "long_name": "number of the member"}),
+        "choice": (
+            "member",
+            np.repeat([c.label for c in plan.choices], plan.draws),
+            {"long_name": "choice of the member"},
+        ),
+        "replicate": (
+            "member",
+            np.tile(solver.replicate, len(plan.choices)),
+            {"units": "1", "long_name": "number of the scramble"},
+        ),
+        "mode_name": (
+            "mode",
+            ["base", *(mode.name for mode in case.alternatives)],
+            {"long_name": "name of the mode"},
+        ),
+        "law_name": (
+            "law",
+            list(laws_of(plan.loaded)),
+            {"long_name": "name of the secondary-emission law"},
+        ),
+        "surface_name": ("surface", list(case.names), {"long_name": "name of the surface"}),
+        "pair_name": (
+            "pair",
+            [f"{a} - {b}" for a, b in neighbours(case)],
+            {"long_name": "names of the pair of neighbours"},
+        ),
+        "factor_name": ("factor", list(solver.names), {"long_name": "name of the drawn factor"}),
     }
     for path in plan.choices[0].values:
         values = [choice.values[path] for choice in plan.choices]
@@ -91,11 +112,17 @@ def sweep_dataset(plan: Plan, solver: Solver, results: Sequence[Results]) -> xr.
         coordinates[_variable(one.target.text)] = ("member", own, named)
     if "history_V" in data:
         times = np.linspace(0.0, case.duration_s, HISTORY_POINTS)
-        coordinates["history_time"] = ("history_time", times, {"units": "s"})
+        named = {"units": "s", "long_name": "time after the start"}
+        coordinates["history_time"] = (
+            "history_time",
+            times,
+            {"units": "s", "long_name": "time after the start"},
+        )
     return xr.Dataset(
         data,
         coords=coordinates,
         attrs={
+            "Conventions": "CF-1.11",
             "title": plan.file.title,
             "halflit_version": __version__,
             "seed": str(plan.file.seed),

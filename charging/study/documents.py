@@ -13,14 +13,15 @@ from charging.study.indices import Index
 from charging.study.plan import Plan
 from charging.study.ranking import ChoiceRow
 from charging.study.verdict import choice_verdict
-from charging.study.worst_case import Worst
+from charging.study.worst_case import WorstPlace
 
 
 def ranking_document(
     plan: Plan,
     rows: Sequence[ChoiceRow],
+    studied: ChoiceRow,
     indices: Sequence[Index],
-    worst: Worst | None,
+    worst: WorstPlace | None,
     blocks_sha256: Sequence[str],
 ) -> dict[str, Any]:
     """The content of ranking.json; `blocks_sha256` says which blocks it was made from."""
@@ -35,6 +36,7 @@ def ranking_document(
         "conditional_on": conditions(plan),
         "basis_of_screening": "rank correlation of drawn values with the largest |value|/limit",
         "rows": [_row(plan, row) for row in rows],
+        "studied_choice": studied.choice,
         "sobol_indices": [
             {
                 "factor": one.factor,
@@ -60,18 +62,22 @@ def conditions(plan: Plan) -> str:
     return "conditional on assumed spreads: " + " and ".join(filter(None, (spreads, ranges)))
 
 
-def worst_document(plan: Plan, worst: Worst) -> dict[str, Any]:
+def worst_document(plan: Plan, worst: WorstPlace) -> dict[str, Any]:
     """The worst case found, as JSON."""
+    found = worst.search
     return {
-        "severity": worst.value,
+        "severity": found.value,
+        "limit": worst.limit,
+        "value": worst.value_there,
+        "allowed": worst.allowed if np.isfinite(worst.allowed) else None,
         "at": {
             one.target.text: value_in(one, float(x))
-            for one, x in zip(plan.searched, worst.place, strict=True)
+            for one, x in zip(plan.searched, found.place, strict=True)
         },
-        "evaluations": worst.evaluations,
-        "starts": worst.starts,
-        "agreeing_starts": worst.agreeing,
-        "converged": worst.converged,
+        "evaluations": found.evaluations,
+        "starts": found.starts,
+        "agreeing_starts": found.agreeing,
+        "converged": found.converged,
     }
 
 

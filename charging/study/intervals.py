@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import ndtri, stdtrit
+from scipy.special import stdtrit
 
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
@@ -83,24 +83,12 @@ def ranks(values: Array) -> Array:
 
 def rank_correlation(a: Array, b: Array) -> float:
     """Spearman's rank correlation; 0 where one does not vary."""
+    return float(rank_products(a, b).mean())
+
+
+def rank_products(a: Array, b: Array) -> Array:
+    """Products of standardised ranks [N], whose mean is the rank correlation."""
     x, y = ranks(a), ranks(b)
     x, y = x - x.mean(), y - y.mean()
-    scale = float(np.sqrt((x**2).sum() * (y**2).sum()))
-    return float((x * y).sum()) / scale if scale > 0.0 else 0.0
-
-
-def chance_correlation(draws: int, factors: int, confidence: float) -> float:
-    """Largest rank correlation that `factors` numbers without effect reach by chance.
-
-    The rank correlation of N independent pairs has the standard deviation 1/sqrt(N - 1) (Kendall
-    1948, Rank Correlation Methods, from memory); the chance is shared among the factors
-    (Bonferroni).
-
-    Examples
-    --------
-    >>> round(chance_correlation(401, 1, 0.95), 3)
-    0.098
-    """
-    if draws < 3 or factors == 0:
-        return 1.0
-    return float(ndtri(1.0 - 0.5 * (1.0 - confidence) / factors)) / float(np.sqrt(draws - 1))
+    scale = float(np.sqrt((x**2).mean() * (y**2).mean()))
+    return np.asarray(x * y / scale) if scale > 0.0 else np.zeros(len(x))

@@ -80,7 +80,7 @@ def middle_left_out(text: str, width: int) -> str:
     Examples
     --------
     >>> middle_left_out("material.polyimide film.secondary_yield_peak", 32)
-    'material.polyi…ndary_yield_peak'
+    'material.polyim…ndary_yield_peak'
     """
     text = printable_glyphs(" ".join(text.split()))
     if len(text) <= width:
@@ -101,12 +101,12 @@ def _shown_limits(rows: Sequence[ChoiceRow]) -> list[str]:
     return order[:MOST_COLUMNS]
 
 
-def tornado(plan: Plan, row: ChoiceRow, target: Path) -> None:
+def tornado(row: ChoiceRow, target: Path) -> None:
     """Rank correlation of the strongest factors with the severity, for one choice."""
     drivers = row.drivers[:MOST_DRIVERS]
     height = 1.95 + 0.3 * max(1, len(drivers))
     page = Page(
-        height, f"What drives the first choice: {row.choice}",
+        height, f"What drives: {row.choice}",
         "rank correlation of drawn values with the largest |value|/limit", FOOTER,
     )  # fmt: skip
     axes = page.figure.add_axes((0.44, 0.9 / height, 0.5, 0.3 * max(1, len(drivers)) / height))

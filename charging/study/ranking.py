@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from charging.study.assess import Against, against_limits, severities
-from charging.study.intervals import Probability, chance_correlation, probability, rank_correlation
+from charging.study.intervals import Probability, half_width, probability, rank_products
 from charging.study.plan import Plan
 from charging.study.solve import Results
 
@@ -113,7 +113,7 @@ def _row(
         surface=surface,
         exceed=exceed,
         failed=int(failed.sum()),
-        drivers=_drivers(results["factor_value"], severity, names, confidence),
+        drivers=_drivers(results["factor_value"], severity, names, replicate, confidence),
         limits=tuple(_limit(one, replicate, confidence) for one in against),
     )
 
@@ -150,19 +150,25 @@ def _worst(
 
 
 def _drivers(
-    values: Array, severity: Array, names: Sequence[str], confidence: float
+    values: Array, severity: Array, names: Sequence[str], replicate: Index, confidence: float
 ) -> tuple[tuple[str, float], ...]:
     """Factors whose rank correlation with the severity is more than chance, strongest first.
 
-    Of so many factors the strongest of none that matters would exceed the limit of chance in
-    1 - confidence of all studies.
+    Few points of one sequence in many dimensions hang together, so chance is judged by how
+    much the replicates differ; it is shared among the factors (Bonferroni).
     """
     solved = np.isfinite(severity)
+    own = values[solved]
+    varied = [
+        i for i in range(len(names)) if np.isfinite(own[:, i]).all() and len(own) > 2
+        and np.ptp(own[:, i]) > 0.0
+    ]  # fmt: skip
     found = []
-    for column, name in enumerate(names):
-        own = values[solved, column]
-        if np.isfinite(own).all() and len(own) > 2 and np.ptp(own) > 0.0:
-            found.append((name, rank_correlation(own, severity[solved])))
-    limit = chance_correlation(int(solved.sum()), len(found), confidence)
-    told = [pair for pair in found if abs(pair[1]) > limit]
-    return tuple(sorted(told, key=lambda pair: -abs(pair[1])))
+    for i in varied:
+        products = rank_products(own[:, i], severity[solved])
+        each = 1.0 - (1.0 - confidence) / len(varied)
+        half = half_width(products, replicate[solved], each)
+        correlation = float(products.mean())
+        if abs(correlation) > half:
+            found.append((names[i], correlation))
+    return tuple(sorted(found, key=lambda pair: -abs(pair[1])))

@@ -19,7 +19,7 @@ from charging.study.ranking import ChoiceRow, ranked
 from charging.study.solve import Solver
 from charging.study.store import Store, write_whole
 from charging.study.verdict import RANKING, block_hashes
-from charging.study.worst_case import Worst, search_worst
+from charging.study.worst_case import WorstPlace, search_worst
 
 TRIAL_BLOCK = 128
 """Members of a block of the indices and of the search: their rounds are small."""
@@ -29,11 +29,15 @@ FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
 
 @dataclass(frozen=True, slots=True)
 class SweepReport:
-    """What a study found."""
+    """What a study found.
+
+    studied : the first choice that anything drives; indices and worst case are of it.
+    """
 
     rows: tuple[ChoiceRow, ...]
+    studied: ChoiceRow
     indices: tuple[Index, ...]
-    worst: Worst | None
+    worst: WorstPlace | None
     document: dict[str, Any]
 
 
@@ -51,9 +55,10 @@ def report_sweep(plan: Plan, store: Store, hands: Hands | None = None) -> SweepR
     hands = Here(solver) if hands is None else hands
     results = by_choice(plan, store)
     rows = ranked(plan, results, solver.names, solver.replicate)
-    indices = choice_indices(plan, hands, rows[0], TRIAL_BLOCK)
-    worst = search_worst(plan, hands, rows[0].number, TRIAL_BLOCK)
-    document = ranking_document(plan, rows, indices, worst, block_hashes(store.finished()))
+    studied = next((row for row in rows if row.drivers), rows[0])
+    indices = choice_indices(plan, hands, studied, TRIAL_BLOCK)
+    worst = search_worst(plan, hands, studied.number, TRIAL_BLOCK)
+    document = ranking_document(plan, rows, studied, indices, worst, block_hashes(store.finished()))
     folder = store.folder
     part = folder / "sweep.nc.part"
     dataset = sweep_dataset(plan, solver, results)
@@ -62,9 +67,9 @@ def report_sweep(plan: Plan, store: Store, hands: Hands | None = None) -> SweepR
     write_whole(folder / RANKING, _json(document))
     write_whole(folder / "ranking.csv", ranking_csv(rows).encode())
     heat_map(plan, rows, folder / "heat_map.png")
-    if rows[0].drivers:
-        tornado(plan, rows[0], folder / "drivers.png")
-    return SweepReport(rows, indices, worst, document)
+    if studied.drivers:
+        tornado(studied, folder / "drivers.png")
+    return SweepReport(rows, studied, indices, worst, document)
 
 
 def ranking_csv(rows: Sequence[ChoiceRow]) -> str:

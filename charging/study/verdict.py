@@ -73,6 +73,8 @@ def choice_verdict(plan: Plan, row: ChoiceRow, draws: int) -> ChoiceVerdict:
         )
     elif reasons:
         verdict, reason = "not assessable", "; ".join(reasons)
+    elif _bonded(row):
+        verdict, reason = "within", "zero by construction: bonded"
     elif statistical is None:
         verdict = "not assessable"
         reason = (
@@ -87,7 +89,15 @@ def choice_verdict(plan: Plan, row: ChoiceRow, draws: int) -> ChoiceVerdict:
             f"the probability of exceeding a limit is at most {row.exceed.high:.2g}, and the case "
             f"accepts a statistical pass: {statistical}"
         )
-    return ChoiceVerdict(verdict, reason, probabilistic, qualifications(loaded))
+    with_it = qualifications(loaded)
+    if plan.file.surfaces is not None:
+        with_it = (f"only limits of {', '.join(plan.file.surfaces)} were judged", *with_it)
+    return ChoiceVerdict(verdict, reason, probabilistic, with_it)
+
+
+def _bonded(row: ChoiceRow) -> bool:
+    """Whether nothing that a limit speaks of can differ: every surface is bonded."""
+    return bool(row.limits) and all(one.worst == 0.0 for one in row.limits) and not row.failed
 
 
 def kept_with_confidence(exceed: Probability, confidence: float) -> str:
@@ -127,6 +137,8 @@ def _reasons(plan: Plan, loaded: LoadedCase, row: ChoiceRow, draws: int) -> list
                 f'plasma "{assumed[0]}" rests on assumed figures; accept it with [plasma] '
                 'accept_assumed = "reason"'
             )
+    if _bonded(row):
+        return found  # neither draws nor properties matter
     own = {name for _, quantity in concerned for name in (quantity.surface, quantity.against)}
     nameless = [
         f"{p.key} of {p.material}"

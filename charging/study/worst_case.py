@@ -41,6 +41,16 @@ class Worst:
     converged: bool
 
 
+@dataclass(frozen=True, slots=True)
+class WorstPlace:
+    """The worst case of a study: what the search found, and the limit that is worst there."""
+
+    search: Worst
+    limit: str
+    value_there: float
+    allowed: float
+
+
 def compass_search(
     function: Function, dimensions: int, *, starts: int, evaluations: int, seed: int
 ) -> Worst:
@@ -104,7 +114,7 @@ def _known(values: Array) -> Array:
     return np.where(np.isfinite(values), values, -np.inf)
 
 
-def search_worst(plan: Plan, hands: Hands, choice: int, block: int) -> Worst | None:
+def search_worst(plan: Plan, hands: Hands, choice: int, block: int) -> WorstPlace | None:
     """Worst case of a choice over the searched numbers, properties as recorded.
 
     The value is the largest severity over all limits.
@@ -112,10 +122,16 @@ def search_worst(plan: Plan, hands: Hands, choice: int, block: int) -> Worst | N
     wanted = plan.file.worst_case
     if wanted is None:
         return None
-    return compass_search(
+    found = compass_search(
         searched_severity(plan, hands, choice, block), len(plan.searched), starts=wanted.starts,
         evaluations=wanted.evaluations, seed=plan.file.seed,
     )  # fmt: skip
+    ((_, part),) = solved_trials(hands, trials(choice, found.place[None], 1, searched=True))
+    rows = against_limits(plan.choices[choice].loaded, part, plan.file.surfaces)
+    if not rows:
+        return WorstPlace(found, "no limit concerns the surfaces of the study", 0.0, float("inf"))
+    most = max(rows, key=lambda row: float(np.nan_to_num(row.severity[0])))
+    return WorstPlace(found, most.text, float(most.value[0]), most.requirement.limit)
 
 
 def searched_severity(plan: Plan, hands: Hands, choice: int, block: int) -> Function:

@@ -45,11 +45,13 @@ HALVES = surface("tape 1", 0.2, "[0.0, 1.0, 0.0]", *FILM, material="polyimide fi
 PLATE = surface("plate", 0.5, "[0.0, 0.0, -1.0]", "floating = true", "capacitance_F = 2e-9",
                 material="gold")  # fmt: skip
 LINK = '[[link]]\nbetween = ["plate", "structure"]\nresistance_ohm = 1e9\n'
+STRIP = surface("strip", 0.4, "[0.0, 0.2, 1.0]", material="oxidised aluminium")
 TIMES = np.array([1e-3, 0.1, 5.0, 100.0, 600.0, 1080.0])
 
 
-def run_of(*parts: str) -> ModeRun:
-    return solve_mode(load_case_text(HEAD + "".join(parts) + LINK))
+def run_of(*parts: str, barrier: bool = False) -> ModeRun:
+    head = HEAD.replace("barrier = false\n", "") if barrier else HEAD
+    return solve_mode(load_case_text(head + "".join(parts) + LINK))
 
 
 def by_name(run: ModeRun, name: str) -> np.ndarray:
@@ -72,6 +74,33 @@ def test_order_of_surfaces_changes_nothing(plain: ModeRun) -> None:
     assert other.net.node_names != plain.net.node_names
     for name in plain.net.node_names:
         a, b = by_name(plain, name), by_name(other, name)
+        assert (np.abs(a - b) <= allowed(a)).all(), name
+
+
+@pytest.fixture(scope="module")
+def walled() -> ModeRun:
+    """With barriers, and a panel beside the glass that it closes off."""
+    return run_of(PANEL, GLASS, PLATE, TAPE, STRIP, barrier=True)
+
+
+def test_order_of_surfaces_changes_nothing_behind_barriers(walled: ModeRun) -> None:
+    assert walled.balance.barriers is not None
+    y = walled.trajectories[0](TIMES)
+    which = np.zeros(len(TIMES), dtype=np.intp)
+    volts = walled.net.potentials(y)[:, walled.net.surface_node]
+    found = walled.balance.barriers.heights_and_slopes(which, walled.net.potentials(y), volts)
+    assert len(found.member)  # barriers act
+    other = run_of(STRIP, TAPE, PLATE, GLASS, PANEL, barrier=True)
+    for name in walled.net.node_names:
+        a, b = by_name(walled, name), by_name(other, name)
+        assert (np.abs(a - b) <= allowed(a)).all(), name
+
+
+def test_a_surface_in_two_pieces_behind_barriers(walled: ModeRun) -> None:
+    """Two half tapes at one place are seen as their mixture, here of equal potentials."""
+    other = run_of(PANEL, GLASS, PLATE, HALVES, STRIP, barrier=True)
+    for name in ("structure", "glass", "plate"):
+        a, b = by_name(walled, name), by_name(other, name)
         assert (np.abs(a - b) <= allowed(a)).all(), name
 
 

@@ -116,8 +116,9 @@ def test_a_dark_film_drives_the_lit_half_far_negative(dark_film: ModeRun) -> Non
     lowest = float((film * (1.0 / x - cap) + structure * cap).min())
     height = structure - lowest
     assert 0.0 < height < 20.0  # volts on kilovolts: the lit half rides on its barrier
-    state = dark_film.trajectories[0](np.array([86400.0]))
-    found = dark_film.balance.heights(np.zeros(1, dtype=np.intp), state)[0, 0]
+    end = np.array([86400.0])
+    state, (setting, _) = dark_film.trajectories[0](end), dark_film.around.at(end)
+    found = dark_film.balance.heights(np.zeros(1, dtype=np.intp), state, setting)[0, 0]
     assert float(found) == pytest.approx(height, abs=0.1)
 
 

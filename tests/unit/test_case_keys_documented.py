@@ -4,9 +4,11 @@ import re
 from pathlib import Path
 
 import pytest
+import typer
 
 from charging.case_tables import Case
 from charging.cli import app
+from charging.dataset import VARIABLES
 
 ROOT = Path(__file__).parents[2]
 README = (ROOT / "cases" / "README.md").read_text(encoding="utf-8")
@@ -43,3 +45,23 @@ def test_every_command_is_in_the_readme() -> None:
     for command in app.registered_commands:
         name = command.name or command.callback.__name__  # type: ignore[union-attr]
         assert f"halflit {name}" in readme, name
+
+
+RESULT = README.split("## Variables of a result")[1].split("\n## ")[0]
+ROWS = dict(re.findall(r"^\| `(\w+)` \| ([^|]*) \|", RESULT, flags=re.MULTILINE))
+
+
+def test_variables_of_a_result_are_documented() -> None:
+    assert set(ROWS) == set(VARIABLES)
+    for name, variable in VARIABLES.items():
+        dims, _, unit = ROWS[name].partition("; ")
+        assert dims.split(", ") == list(variable.dims), name
+        assert unit == (variable.units or "flags"), name
+
+
+def test_every_option_of_every_command_is_explained() -> None:
+    for group in (app, *(one.typer_instance for one in app.registered_groups)):
+        assert group is not None
+        for command in typer.main.get_command(group).commands.values():  # type: ignore[attr-defined]
+            for parameter in command.params:
+                assert getattr(parameter, "help", None), (command.name, parameter.name)

@@ -79,6 +79,8 @@ def test_drivers_indices_and_worst_case_of_a_study(tmp_path: Path) -> None:
     worst = document["worst_case"]
     assert worst["at"]["link.1.resistance_ohm"] == pytest.approx(1e13)
     assert worst["evaluations"] <= 40
+    assert worst["limit"].endswith("tag")
+    assert abs(worst["value"]) / worst["allowed"] == pytest.approx(worst["severity"], rel=1e-9)
     assert worst["severity"] >= abs(document["rows"][0]["worst_V"]) / 1000.0 * 0.98
     assert (tmp_path / "out" / "drivers.png").read_bytes()[:4] == b"\x89PNG"
 
@@ -89,8 +91,9 @@ def test_search_beats_ten_thousand_random_samples(tmp_path: Path) -> None:
     """The search of a few hundred evaluations against 10 000 random ones, same function."""
     study = plan(tmp_path, STUDY.replace("evaluations = 40", "evaluations = 300"))
     hands = Here(Solver(study))
-    found = search_worst(study, hands, 0, 128)
-    assert found is not None
+    worst = search_worst(study, hands, 0, 128)
+    assert worst is not None
+    found = worst.search
     places = np.random.default_rng(1).random((10_000, 2))
     sampled = searched_severity(study, hands, 0, 1000)(places)
     print(f"search {found.value:.6g} in {found.evaluations}, best of 10 000 {sampled.max():.6g}")

@@ -13,11 +13,11 @@ from scipy.stats import qmc, spearmanr
 
 from charging.study.indices import sobol_indices
 from charging.study.intervals import (
-    chance_correlation,
     half_width,
     probability,
     rank_correlation,
 )
+from charging.study.ranking import _drivers
 from charging.study.worst_case import compass_search
 
 Array = NDArray[np.float64]
@@ -138,15 +138,21 @@ def test_rank_correlation_against_scipy() -> None:
     assert rank_correlation(a, b) == pytest.approx(spearmanr(a, b).statistic, rel=1e-12)
 
 
-def test_correlations_by_chance() -> None:
-    """The strongest of 50 factors without effect stays below the limit in 95 of 100 studies."""
-    rng = np.random.default_rng(1)
-    limit = chance_correlation(64, 50, 0.95)
-    above = 0
-    for _ in range(200):
-        severity = rng.random(64)
-        above += any(abs(rank_correlation(rng.random(64), severity)) > limit for _ in range(50))
-    assert above <= 200 * 0.05 + 3.0 * np.sqrt(200 * 0.05 * 0.95)
+def test_drivers_by_chance() -> None:
+    """Idle factors of few scrambled points in many dimensions are named in 5 % of studies."""
+    names = [f"x{i}" for i in range(40)]
+    named, told = 0, 0
+    for seed in range(60):
+        rng = np.random.default_rng(seed)
+        points = np.concatenate(
+            [qmc.Sobol(40, scramble=True, rng=rng).random(8) for _ in range(16)]
+        )
+        severity = points[:, 0] ** 3 + 0.2 * rng.random(128)
+        found = [n for n, _ in _drivers(points, severity, names, np.repeat(np.arange(16), 8), 0.95)]
+        told += found[:1] == ["x0"]
+        named += found != ["x0"]
+    assert told == 60
+    assert named <= 60 * 0.05 + 3.0 * np.sqrt(60 * 0.05 * 0.95)
 
 
 def rippled(places: Array) -> Array:

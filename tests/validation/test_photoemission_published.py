@@ -74,22 +74,9 @@ def recorded_air_exposed_gold(energy: float) -> float:
     return float(yield_per_photon(energy, curve))
 
 
-# Semi-independent: the yields of clean gold know nothing of Wass et al., but the barrier of
-# 4.2 eV is theirs. The curve of clean gold claims a factor 10 near its threshold; that is the
-# tolerance. Which end of the published range belongs to which energy is our reading.
-# The recorded air-exposed curve took its points below 7 eV from Wass et al.: not counted.
+# The recorded air-exposed curve took its points below 7 eV from Wass et al.: not counted. Clean
+# gold with their barrier, semi-independent, is a row of `halflit evidence`.
 GOLD = [
-    Check(
-        f"yield of gold with an adsorbed layer at {energy} eV (semi-independent)",
-        published,
-        "1",
-        10.0,
-        WASS,
-        "measured",
-        lambda energy=energy: clean_gold_with_lowered_barrier(energy),  # type: ignore[misc]
-    )
-    for energy, published in ((4.8, 1.0e-5), (6.2, 4.4e-5))
-] + [
     Check(
         f"recorded yield of air-exposed gold at {energy} eV (own source)",
         published,
