@@ -29,7 +29,7 @@ Array = NDArray[np.float64]
 TOLERANCE = Tolerance(absolute=0.002, relative=2e-5)
 """Local error per step [V] and relative; what it gives along a day is a recorded figure."""
 
-ENSEMBLE_TOLERANCE = Tolerance(absolute=0.1, relative=1e-3, method=RODAS3)
+ENSEMBLE_TOLERANCE = Tolerance(absolute=0.05, relative=5e-4, method=RODAS3)
 """For many members on coarse tables: worst differentials within 1 V or 1 percent."""
 
 FIRST_STEP_S = 1e-6

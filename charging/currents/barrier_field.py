@@ -106,7 +106,7 @@ class BarrierField:
         excess = surface_V[member, surface] - least - height[member, surface]
         active = np.flatnonzero(excess > 0.0)
         place = member[active] * surface_V.shape[1] + surface[active]
-        if len(np.unique(place)) < len(place):
+        if (place[1:] == place[:-1]).any():  # several minima of one patch follow each other
             order = np.lexsort((-excess[active], place))
             first = np.diff(place[order], prepend=-1) > 0
             active = active[order[first]]

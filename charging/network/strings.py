@@ -258,7 +258,11 @@ def _repeated(setting: Setting, times: int) -> Setting:
         kept=None
         if kept is None
         else Kept(
-            *(many(part) for part in kept[:3]),
-            None if kept.focus is None else FocusPlace(*(many(part) for part in kept.focus)),
+            many(kept.sheath_m2),
+            many(kept.child_m2),
+            many(kept.photo_A_m2),
+            None
+            if kept.focus is None
+            else FocusPlace(np.repeat(kept.focus.first, times, axis=0), many(kept.focus.weight)),
         ),
     )

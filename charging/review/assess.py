@@ -28,6 +28,8 @@ ARRAY_VOLTAGE_V = 70.0
 
 NAMES_SHOWN = 4
 
+UNSEARCHED = "spreads of properties were not run (halflit review --corners runs them)"
+
 
 @dataclass(frozen=True, slots=True)
 class Row:
@@ -165,7 +167,7 @@ def reasons_against(
         more = f" and {len(names) - NAMES_SHOWN} more" if len(names) > NAMES_SHOWN else ""
         found.append(f"no source for {', '.join(names[:NAMES_SHOWN])}{more}")
     if not corner.searched:
-        found.append("spreads of properties were not run (halflit review --corners runs them)")
+        found.append(UNSEARCHED)
     elif not corner.trivial:
         total = corner.draws.count + corner.draws.failed
         if total < LEAST_DRAWS:

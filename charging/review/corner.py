@@ -93,6 +93,23 @@ def corners(
     return search.found()
 
 
+def serving(sizes: Array) -> list[int]:
+    """Few combinations that serve all quantities: the one of each, from sizes [C, Q].
+
+    Examples
+    --------
+    >>> serving(np.array([[1.0, 0.98, 0.1], [0.5, 1.0, 0.2], [0.0, 0.0, 0.3]]))
+    [0, 0, 2]
+    """
+    near = sizes >= (1.0 - NEAR) * sizes.max(axis=0)
+    left = np.ones(sizes.shape[1], dtype=np.bool_)
+    chosen: list[int] = []
+    while left.any():
+        chosen.append(int((near & left).sum(axis=1).argmax()))
+        left &= ~near[chosen[-1]]
+    return [max(chosen, key=lambda c: float(sizes[c, q])) for q in range(sizes.shape[1])]
+
+
 class _Search:
     def __init__(
         self,
@@ -136,14 +153,9 @@ class _Search:
             for c, cell in enumerate(self.cells)
             for v, variant in enumerate(cell.variants)
         }
-        worst = np.array([self._size(q, self.places[q].value) for q in heard])
-        near = {combo: own >= (1.0 - NEAR) * worst for combo, own in size.items()}
-        left = np.ones(len(heard), dtype=np.bool_)
-        chosen: list[Combo] = []
-        while left.any():
-            chosen.append(max(near, key=lambda combo: int((near[combo] & left).sum())))
-            left &= ~near[chosen[-1]]
-        return {q: max(chosen, key=lambda combo: size[combo][i]) for i, q in enumerate(heard)}
+        combos = list(size)
+        homes = serving(np.array([size[combo] for combo in combos]))
+        return {q: combos[home] for q, home in zip(heard, homes, strict=True)}
 
     def _combo(self, q: int) -> Combo:
         """Where a quantity is worst at the values of the records."""

@@ -40,7 +40,7 @@ class Change:
             return f"thickness of '{self.surface}' {1e6 * float(self.value):.3g} µm"
         if self.key == "material":
             how = ", bonded to structure, no film" if self.bonds else ""
-            return f"'{self.surface}' of {self.value}{how}"
+            return f"'{self.surface}' made of {self.value}{how}"
         if self.key == "link":
             return f"bleed resistor of {self.value:.3g} ohm from '{self.surface}' to structure"
         return f"'{self.surface}' bonded to structure"

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from charging.clock import iso_time
-from charging.review.assess import Row
+from charging.review.assess import UNSEARCHED, Row
 from charging.review.check import Review
 from charging.review.criteria import WHEN_EXCEEDED, energy_class
 from charging.review.extremes import Quantity
@@ -149,6 +149,10 @@ def _first(review: Review, row: Row) -> str:
     surfaces = {s.name: s for s in review.loaded.case.surface}
     if name not in surfaces:
         return "First fix to try: larger bonded conductors that see the Sun."
+    if review.fixes is not None and review.fixes.verified:
+        own = [change.text for change in review.fixes.chosen if change.surface == name]
+        if own:
+            return f"First fix, in the combination that was reviewed whole: {'; '.join(own)}."
     note = "" if review.fixes is None else " (no fix of this surface alone was found)"
     return f"First fix to try: {first_fix(surfaces[name])}{note}."
 
@@ -159,6 +163,13 @@ def sentences(review: Review) -> list[str]:
     found = [
         sentence(review, row) for verdict in order for row in review.rows if row.verdict == verdict
     ]
+    if not review.searched:
+        # one sentence for all whose only fault is that
+        left = [r for r in review.rows if r.verdict == "not assessable" and r.reason == UNSEARCHED]
+        found = [sentence(review, r) for v in order for r in review.rows
+                 if r.verdict == v and r not in left]  # fmt: skip
+        found.append(f"{len(left)} limits are not exceeded at the values of the records: "
+                     f"{UNSEARCHED}.")  # fmt: skip
     within = sum(row.verdict == "within" for row in review.rows)
     if within:
         found.append(f"{within} of {len(review.rows)} limits are within.")

@@ -114,6 +114,7 @@ def geometry(document: Mapping[str, Any]) -> Child:
                 for row in account["surfaces"]
             ],
             numbers=(1, 2, 3, 4),
+            classes="long",
         ),
         items(
             [

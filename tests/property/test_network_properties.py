@@ -136,8 +136,8 @@ def test_jacobian_at_a_thousand_random_states(plain: ModeRun, empty: bool) -> No
     numeric = np.empty_like(jacobian)
     volts = balance.net.potentials(y)
     near = np.abs(volts).min(axis=1)
+    h = np.minimum(1e-3 * np.maximum(1.0, near) ** 0.5, 0.02)
     for j in range(n):
-        h = np.minimum(1e-3 * np.maximum(1.0, near) ** 0.5, 0.02)
         estimates = []
         for step in (h, 0.5 * h):
             move = np.zeros_like(y)

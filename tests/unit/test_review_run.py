@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import re
 from dataclasses import replace
+from html import escape
 from html.parser import HTMLParser
 from pathlib import Path
 from typing import Any
@@ -19,6 +20,7 @@ from charging.orbit_run import solve_mode
 from charging.review.blocks import Runner
 from charging.review.check import Options, Review, load_case_or_result, review_case
 from charging.review.compare import compare, reviewed
+from charging.review.corner import serving
 from charging.review.designs import Change, designed
 from charging.review.document import review_document
 from charging.review.extremes import extremes
@@ -27,6 +29,16 @@ from charging.review.space import HIGH, LOW, Variant, Workshop
 from materials.library import library_text
 
 EVIL = "<script>alert(1)</script> \"'&amp; =1+1 </style> $x_1$"
+EVIL_TABLES = f"""
+[[limit]]
+kind = "structure"
+allowed_V = 1e6
+requirement_id = '''id {EVIL}'''
+source_document = '''document {EVIL}'''
+clause = '''clause {EVIL}'''
+reason = '''reason {EVIL}'''
+margin_policy = {{factor = 1.5, basis = '''basis {EVIL}'''}}
+"""
 CASE = """\
 title = {title}
 [orbit]
@@ -171,6 +183,10 @@ def test_bad_input_exits_2(folder: Path) -> None:
 @pytest.fixture(scope="module")
 def thick(folder: Path) -> tuple[Path, Review, dict[str, Any]]:
     case = write(folder / "thick", 127e-6, 1e16, title=f"'''{EVIL}'''")
+    case.write_text(case.read_text(encoding="utf-8") + EVIL_TABLES, encoding="utf-8")
+    record = case.parent / "blanket.toml"
+    text = re.sub(r"source = .*", lambda _: f"source = '''{EVIL}'''", record.read_text(), count=1)
+    record.write_text(text, encoding="utf-8")
     review = review_case(load_case(case), Options(draws=20))
     return case, review, review_document(review)
 
@@ -272,7 +288,76 @@ def test_everything_from_a_case_is_escaped(page: str) -> None:
     assert [script.get("type") for script in outline.scripts] == ["application/json"]
     data = re.search(r'id="review-data">(.*?)</script>', page, flags=re.DOTALL)
     assert data is not None
-    assert json.loads(data.group(1))["title"] == EVIL
+    island = json.loads(data.group(1))
+    assert island["title"] == EVIL
+    assert f"id {EVIL}" in {row["requirement_id"] for row in island["limits"]}
+    for word in ("id", "document", "basis"):
+        assert f"{word} &lt;script&gt;alert(1)&lt;/script&gt;" in page
+    for figure in re.findall(r"<svg.*?</svg>", page, flags=re.DOTALL):
+        assert "alert(1)" not in re.sub(r'aria-label="[^"]*"', "", figure)
+
+
+def test_review_json_keeps_the_strings_of_a_case(
+    folder: Path, page: str, thick: tuple[Path, Review, dict[str, Any]]
+) -> None:
+    kept = json.loads((folder / "page" / "review.json").read_text(encoding="utf-8"))
+    assert kept["title"] == EVIL
+    assert f"id {EVIL}" in {row["requirement_id"] for row in kept["requirements"]}
+    assert EVIL in {row["source"] for row in kept["properties"]}
+
+
+def test_without_corners_nothing_is_within(folder: Path, thin: Path) -> None:
+    code, text = halflit("review", str(thin), "--no-corners", "--json", "--out", str(folder / "nc"))
+    assert code == 4
+    document = json.loads(text)
+    for row in document["limits"]:
+        if not row["bonded"]:
+            assert (row["verdict"], row["corner_value"], row["draws"]) == (
+                "not assessable",
+                None,
+                0,
+            )
+            assert "spreads of properties were not run" in row["reason"]
+    assert document["fixes"] is None
+    assert "there is no corner" in (folder / "nc" / "report.html").read_text(encoding="utf-8")
+
+
+def test_no_solution_exits_3(thin: Path, folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    from charging.__main__ import main
+    from charging.errors import NoSolutionError
+
+    def stuck(*_: object) -> None:
+        raise NoSolutionError("no step at 2031-03-20T00:00:00Z")
+
+    monkeypatch.setattr("charging.review.check.nominal_cells", stuck)
+    monkeypatch.setattr("sys.argv", ["halflit", "review", str(thin), "--out", str(folder / "o3")])
+    with pytest.raises(SystemExit) as ended:
+        main()
+    assert ended.value.code == 3
+    assert not (folder / "o3").exists()
+
+
+def test_every_quantity_is_searched_near_its_worst() -> None:
+    random = np.random.Generator(np.random.PCG64(5))
+    for _ in range(50):
+        sizes = random.random((6, 9)) ** 4
+        homes = serving(sizes)
+        for q, home in enumerate(homes):
+            assert sizes[home, q] >= 0.95 * sizes[:, q].max()
+            assert sizes[home, q] == sizes[sorted(set(homes)), q].max()
+
+
+@pytest.mark.slow
+def test_two_processes_give_the_same_review(folder: Path) -> None:
+    case = write(folder / "both", 127e-6, 1e16, law="both")
+    text = case.read_text(encoding="utf-8") + '[[mode]]\nname = "lit"\nalternative = true\n'
+    case.write_text(text + "illumination = 1.0\n", encoding="utf-8")
+    loaded = load_case(case)
+    one, two = (
+        review_document(review_case(loaded, Options(draws=40, fixes=False, workers=count)))
+        for count in (1, 2)
+    )
+    assert one == two
 
 
 def test_the_report_stands_alone(page: str) -> None:
@@ -290,14 +375,14 @@ def test_the_report_stands_alone(page: str) -> None:
 
 def test_the_report_holds_every_section(page: str, thick: tuple[Path, Review, Any]) -> None:
     for anchor in ("verdict", "compliance", "cells", "pairs", "potentials", "currents", "timeline",
-                   "sensitivities", "laws", "fixes", "properties", "plasmas", "assumptions",
-                   "not-modelled", "claims", "cautions", "references", "versions"):  # fmt: skip
+                   "jumps", "geometry", "sensitivities", "laws", "fixes", "properties", "plasmas",
+                   "assumptions", "not-modelled", "claims", "cautions", "references", "versions"):  # fmt: skip
         assert f'<section id="{anchor}"' in page or f'id="{anchor}" aria-labelledby' in page
     short = thick[2]["run_hash"][:12]
     assert f"halflit review, run {short}" in page  # the foot of every printed page
     assert "counter(page)" in page
     for row in thick[2]["properties"]:
-        assert row["source"] is None or row["source"].split(",")[0].split("&")[0] in page
+        assert row["source"] is None or escape(row["source"]).split(",")[0] in page
 
 
 def test_references_are_of_this_run_only(thick: tuple[Path, Review, dict[str, Any]]) -> None:
