@@ -7,6 +7,7 @@ from charging.barriers import overcount, without_barrier
 from charging.case import LoadedCase
 from charging.currents.uncharged import what_decides
 from charging.orbit_run import ModeRun
+from charging.wakes import heavy_plasmas
 from environments.orbit import EARTH_RADIUS_M
 from environments.plasma import warnings_of as spectrum_warnings
 
@@ -26,6 +27,11 @@ def cautions(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
     found += _along_orbit(mode)
     for plasma in dict.fromkeys(mode.whole_plasmas):
         found += [f'plasma "{plasma.name}": {text}' for text in spectrum_warnings(plasma)]
+    found += [
+        f'wake ion current not assessable in plasma "{name}": it holds no ions as light as '
+        "He+, and counts as isotropic here"
+        for name in heavy_plasmas(mode)
+    ]
     found += _deciding_assumptions(loaded, mode)
     if loaded.case.shape:
         from charging.shape.account import shape_cautions  # costs time only with shapes

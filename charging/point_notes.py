@@ -3,12 +3,16 @@
 from collections.abc import Iterator, Mapping
 
 import numpy as np
+from scipy.constants import physical_constants
 
 from charging.currents.balance import Root
 from charging.currents.uncharged import CHARGED_V, what_decides
 from environments.plasma import Plasma, moments, warnings_of
 from materials.record import EMISSION_NEEDED, EMISSION_OPTIONAL, Material
 from materials.secondary import YieldLaw, fitted_range_eV
+
+PROTON_MASS_kg = physical_constants["proton mass"][0]
+HEAVY = 2.0  # ions of more than so many proton masses
 
 
 def angle_notes(
@@ -84,6 +88,14 @@ def general_notes(
     if plasma.basis in ("assumed", "memory"):
         words = "assumed" if plasma.basis == "assumed" else "from memory, unchecked"
         notes.append(f'plasma "{plasma.name}": its figures are {words}')
+    heavy = sorted(
+        {p.species.name for p in plasma.populations if p.species.mass_kg > HEAVY * PROTON_MASS_kg}
+    )
+    if heavy and material.emits:
+        notes.append(
+            f"{', '.join(heavy)} release electrons as protons of the same energy would: too many "
+            "below about 1 keV"
+        )
     if collection == "auto":
         notes.append("the blend of plane and sphere by sheath length is assumed")
     notes.append(

@@ -70,7 +70,10 @@ class Fontheim:
     def __post_init__(self) -> None:
         if not self.low_cutoff_eV < self.high_cutoff_eV:
             raise EnvironmentDataError(
-                "is not above low_cutoff_eV", key=("high_cutoff_eV",), value=self.high_cutoff_eV
+                "is not above low_cutoff_eV",
+                key=("high_cutoff_eV",),
+                value=self.high_cutoff_eV,
+                allowed=f"a number above {self.low_cutoff_eV:g}",
             )
         levels = (
             self.power_coefficient_m2_s_sr_eV,

@@ -30,6 +30,7 @@ INSIDE_A_CELL = 4  # further points inside each cell of the table of a spectrum
 # of all that crosses the surface: below it an extremum counts as a double root. The integrals
 # are good to 1e-8 of themselves, so nobody could tell it from one.
 TOUCHING = 1e-11
+DOUBLE_WIDTH = 1e-6  # of the potential: roots nearer than this may be one double root
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,12 +121,28 @@ def all_roots(model: SurfaceModel, light: float) -> tuple[Root, ...]:
     # the same extremum may end two intervals
     found.sort()
     volts = [v for i, v in enumerate(found) if i == 0 or v - found[i - 1] > 2e-9]
+    volts = _without_doubles(volts, current, noise)
     roots = []
     for i, v in enumerate(volts):
         near = [abs(v - other) / 3.0 for other in volts[max(0, i - 1) : i + 2] if other != v]
         step = min(1e-6 * max(1.0, abs(v)), *near, np.inf)
         roots.append(Root(v, current(v - step) > 0.0 > current(v + step)))
     return tuple(roots)
+
+
+def _without_doubles(
+    volts: list[float], current: Callable[[float], float], noise: Callable[[float], float]
+) -> list[float]:
+    """Roots without those that rounding makes of one double root: nothing but noise between."""
+    kept: list[float] = []
+    for v in volts:
+        if kept and v - kept[-1] < DOUBLE_WIDTH * max(1.0, abs(v)):
+            middle = 0.5 * (v + kept[-1])
+            if abs(current(middle)) <= noise(middle):
+                kept[-1] = middle
+                continue
+        kept.append(v)
+    return kept
 
 
 def _scan(model: SurfaceModel) -> Array:

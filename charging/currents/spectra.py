@@ -189,14 +189,17 @@ AT_ONCE = 200  # potentials whose integrals are evaluated together
 def _end_eV(distribution: Distribution, mass_kg: float, reach_eV: float) -> float:
     """Energy lost at which nothing more arrives, or the reach of the tables [eV]."""
     end = min(reach_eV, distribution.top_eV)
+    whole = distribution_moments(distribution, mass_kg).number_flux_m2_s
     if end == distribution.cutoff_eV:
-        return end
+        edge = float(distribution.flux(np.array([end]), mass_kg)[0])
+        if edge * end > NOTHING * whole:  # else it has ended below its cut-off, as a beam does
+            return end
 
     def arrives(lost_eV: float) -> bool:
         share = repelled_averages(distribution, mass_kg, [], np.array([lost_eV]))[0]
         return bool(share[0] > NOTHING)
 
-    if arrives(end):
+    if end != distribution.cutoff_eV and arrives(end):
         return end
     low = 0.0
     while end - low > 1e-6 * end:

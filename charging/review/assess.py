@@ -15,6 +15,7 @@ from charging.review.limits import Requirement, Standing, Verdict, size_of, stan
 from charging.review.nominal import Cell, Place
 from charging.review.sensitivity import Corner
 from charging.review.space import Property, Variant, properties
+from charging.wakes import heavy_plasmas
 
 DRIVES = 0.05
 """Share of the limit by which a property must move a quantity to drive it from elsewhere."""
@@ -197,6 +198,8 @@ def _unfed(loaded: LoadedCase, cells: Sequence[Cell]) -> frozenset[str]:
         if along is not None and along.streams is not None:
             unfed = np.flatnonzero(along.unfed_wakes())
             names |= {loaded.case.names[i] for i in unfed}
+        if heavy_plasmas(cell.run):
+            names |= set(loaded.case.names)
     return frozenset(names)
 
 

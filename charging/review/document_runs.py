@@ -36,7 +36,11 @@ def _spans(cell: Cell) -> Iterator[tuple[str, float, float]]:
     for e in around.eclipses:
         if e.umbra_start is not None and e.umbra_end is not None:
             minutes = (e.umbra_end - e.umbra_start) / 60.0
-            yield f"umbra of the {e.body}, {minutes:.1f} min", e.umbra_start, e.umbra_end
+            yield (
+                f"umbra of the {e.body.capitalize()}, {minutes:.1f} min",
+                e.umbra_start,
+                e.umbra_end,
+            )
     for event in around.episodes:
         name = cell.run.plasmas[event.plasma].name
         yield (

@@ -10,7 +10,6 @@ from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
 
 import numpy as np
-import xarray as xr
 from matplotlib import rc_context
 from matplotlib.axes import Axes
 
@@ -281,10 +280,3 @@ def cleaned(text: str, anchor: str, label: str) -> Markup:
     text = re.sub(r"^<svg ", head, text)
     text = re.sub(r'^(<svg[^>]*?) width="[^"]*"', r"\1", text)
     return Markup(re.sub(r'^(<svg[^>]*?) height="[^"]*"', r"\1", text).strip())
-
-
-def dataset_of(review: Review) -> xr.Dataset:
-    """Dataset behind the figures."""
-    live = [row for row in review.rows if not row.corner.trivial]
-    cell, member = _shown(review, live)
-    return mode_dataset(CaseRun(review.loaded, (cell.run,)), cell.run, member)

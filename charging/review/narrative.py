@@ -160,16 +160,16 @@ def _first(review: Review, row: Row) -> str:
 def sentences(review: Review) -> list[str]:
     """One sentence per limit that is not within, the worst first; one for all that are."""
     order = ("exceeded", "not assessable")
+    # one sentence for all whose only fault is that their spreads were not run
     found = [
-        sentence(review, row) for verdict in order for row in review.rows if row.verdict == verdict
+        sentence(review, row)
+        for verdict in order
+        for row in review.rows
+        if row.verdict == verdict and row.reason != UNSEARCHED
     ]
-    if not review.searched:
-        # one sentence for all whose only fault is that
-        left = [r for r in review.rows if r.verdict == "not assessable" and r.reason == UNSEARCHED]
-        found = [sentence(review, r) for v in order for r in review.rows
-                 if r.verdict == v and r not in left]  # fmt: skip
-        found.append(f"{len(left)} limits are not exceeded at the values of the records: "
-                     f"{UNSEARCHED}.")  # fmt: skip
+    left = sum(row.reason == UNSEARCHED for row in review.rows)
+    if left:
+        found.append(f"{left} limits are not exceeded at the values of the records: {UNSEARCHED}.")
     within = sum(row.verdict == "within" for row in review.rows)
     if within:
         found.append(f"{within} of {len(review.rows)} limits are within.")

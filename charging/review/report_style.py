@@ -66,6 +66,7 @@ footer { padding-bottom: 2rem; border-top: 1px solid var(--line); margin-top: 2.
   td.long, .long td:last-child { min-width: 0; }
   thead { display: table-header-group; }
   tr, figure, .verdict { break-inside: avoid; }
+  figure svg { max-height: 215mm; }
   h2, h3, caption { break-after: avoid; }
   a { color: inherit; text-decoration: none; }
   * { print-color-adjust: exact; -webkit-print-color-adjust: exact; }

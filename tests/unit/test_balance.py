@@ -409,3 +409,13 @@ def test_roots_of_random_triples_against_a_fine_scan():
 def test_roots_of_two_thousand_triples(block: int):
     for seed in range(1000 + 100 * block, 1100 + 100 * block):
         assert_no_root_missed(seed)
+
+
+@pytest.mark.parametrize(("between", "count"), [(1e-14, 1), (1e-9, 2)])
+def test_a_double_root_that_rounding_parts_counts_once(between: float, count: int) -> None:
+    """Two roots with nothing but noise between them are one; with a current, they are two."""
+    volts = [-211.0, -76.47875, -76.47874, 0.05]
+    kept = balance._without_doubles(volts, lambda v: between, lambda v: 1e-12)
+    assert len([v for v in kept if -77.0 < v < -76.0]) == count
+    assert kept[0] == -211.0
+    assert kept[-1] == 0.05

@@ -17,6 +17,7 @@ from charging.currents.shielding import shielded, shielded_height, vacuum_share
 from charging.orbit_run import CaseRun, solve_mode
 from charging.results import mode_document
 from charging.summary import mode_summary
+from charging.wakes import heavy_plasmas
 
 CASES = Path(__file__).parents[2] / "cases"
 
@@ -175,3 +176,13 @@ def test_a_bad_timeline_ends_the_command_with_its_line(
     said = done.output + (str(done.exception) if done.exception else "")
     assert done.exit_code != 0
     assert where in said
+
+
+def test_a_plasma_of_oxygen_alone_is_named_in_low_orbit() -> None:
+    low = LOW_ORBIT.replace(
+        'model = "regions"\naccept_assumed = "a test"', 'use = "ECSS auroral worst case"'
+    )
+    loaded = load_case_text(low)
+    assert heavy_plasmas(solve_mode(loaded)) == ("ECSS auroral worst case",)
+    high = load_case_text(low.replace("6730.0", "42164.0"))
+    assert heavy_plasmas(solve_mode(high)) == ()

@@ -5,9 +5,11 @@ from __future__ import annotations
 import json
 import re
 from dataclasses import replace
+from datetime import UTC, datetime
 from html import escape
 from html.parser import HTMLParser
 from pathlib import Path
+from types import SimpleNamespace
 from typing import Any
 
 import numpy as np
@@ -23,8 +25,10 @@ from charging.review.compare import compare, reviewed
 from charging.review.corner import serving
 from charging.review.designs import Change, designed
 from charging.review.document import review_document
+from charging.review.document_runs import region_rows
 from charging.review.extremes import extremes
 from charging.review.files import write_review
+from charging.review.report_run import timeline
 from charging.review.space import HIGH, LOW, Variant, Workshop
 from materials.library import library_text
 
@@ -347,6 +351,25 @@ def test_every_quantity_is_searched_near_its_worst() -> None:
             assert sizes[home, q] == sizes[sorted(set(homes)), q].max()
 
 
+def test_regions_are_told_in_stretches() -> None:
+    """Breaks within one region do not split it; ends lie at the breaks."""
+    along = SimpleNamespace(
+        breaks_s=(600.0, 1200.0, 1800.0, 9999.0),
+        name_at=lambda t: "plasmasphere" if t < 1200.0 else "magnetosphere lobes",
+    )
+    around = SimpleNamespace(along=along)
+    scene = SimpleNamespace(mode="base", plasma="as in the case")
+    cells = [SimpleNamespace(scene=scene, run=SimpleNamespace(around=around))]
+    rows = region_rows(datetime(2031, 3, 20, tzinfo=UTC), 3600.0, cells)  # type: ignore[arg-type]
+    assert [(r["region"], r["from"], r["lasts_s"]) for r in rows] == [
+        ("plasmasphere", "2031-03-20T00:00:00Z", 1200.0),
+        ("magnetosphere lobes", "2031-03-20T00:20:00Z", 2400.0),
+    ]
+    page = str(list(timeline({"timeline": [], "regions": rows}) or ()))
+    assert "33.3%" in page
+    assert "66.7%" in page
+
+
 @pytest.mark.slow
 def test_two_processes_give_the_same_review(folder: Path) -> None:
     case = write(folder / "both", 127e-6, 1e16, law="both")
@@ -376,13 +399,14 @@ def test_the_report_stands_alone(page: str) -> None:
 def test_the_report_holds_every_section(page: str, thick: tuple[Path, Review, Any]) -> None:
     for anchor in ("verdict", "compliance", "cells", "pairs", "potentials", "currents", "timeline",
                    "jumps", "geometry", "sensitivities", "laws", "fixes", "properties", "plasmas",
-                   "assumptions", "not-modelled", "claims", "cautions", "references", "versions"):  # fmt: skip
+                   "assumptions", "not-modelled", "claims", "cautions", "references",
+                   "versions"):  # fmt: skip
         assert f'<section id="{anchor}"' in page or f'id="{anchor}" aria-labelledby' in page
     short = thick[2]["run_hash"][:12]
     assert f"halflit review, run {short}" in page  # the foot of every printed page
     assert "counter(page)" in page
     for row in thick[2]["properties"]:
-        assert row["source"] is None or escape(row["source"]).split(",")[0] in page
+        assert row["source"] is None or escape(row["source"], quote=False).split(",")[0] in page
 
 
 def test_references_are_of_this_run_only(thick: tuple[Path, Review, dict[str, Any]]) -> None:

@@ -101,7 +101,10 @@ def without_source(key: str) -> str:
 
 BEGIN = Variant("begin", "sanders_inouye_1979", "auto")
 CELL: Any = SimpleNamespace(
-    variants=(BEGIN,), run=SimpleNamespace(assumed=(), around=SimpleNamespace(along=None))
+    variants=(BEGIN,),
+    run=SimpleNamespace(
+        assumed=(), around=SimpleNamespace(along=None), way=SimpleNamespace(trajectory=None)
+    ),
 )
 
 
@@ -194,7 +197,11 @@ def test_memory_never_blocks() -> None:
 def test_an_assumed_plasma_blocks_until_accepted() -> None:
     cell: Any = SimpleNamespace(
         variants=(BEGIN,),
-        run=SimpleNamespace(assumed=("textbook",), around=SimpleNamespace(along=None)),
+        run=SimpleNamespace(
+            assumed=("textbook",),
+            around=SimpleNamespace(along=None),
+            way=SimpleNamespace(trajectory=None),
+        ),
     )
     requirement = requirements(load().case)[0]
     quantity = Quantity("normal", "film", "structure")

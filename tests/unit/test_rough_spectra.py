@@ -14,6 +14,7 @@ from charging.currents.emission import emitter
 from charging.currents.lookup import net_currents
 from charging.currents.spectra import attracted_averages, repelled_averages, spectrum_table
 from charging.currents.surface import Setting, surface_currents, surface_model
+from environments.auroral import Fontheim
 from environments.distributions import Tabulated
 from environments.plasma import ELECTRON, HYDROGEN_ION, Plasma, Population, population_of
 from environments.spectrum import solar_spectrum
@@ -128,3 +129,23 @@ def test_lookup_of_a_march_follows_the_direct_path(seed: int) -> None:
     net, slope = net_currents([model]).current_and_slope(which, v, dark)
     assert (np.abs(net - direct.by_mechanism.sum(axis=-1)) <= BAR * gross).all()
     assert (np.abs((slope - direct.slope) * v) <= 1e-4 * gross).all()
+
+
+@pytest.mark.parametrize("width_eV", [500.0, 5.0, 0.05])
+def test_a_beam_alone_ends_below_its_cut_off(width_eV: float) -> None:
+    """A beam underflows long before the cut-off: nothing there may be 0/0."""
+    beam = Fontheim(0.0, 1.2, 0.0, 3e3, 3.5e9, 1e4, width_eV, 50.0, 4e4)
+    ions = Population(HYDROGEN_ION, "maxwellian", 1e3, 1e3)
+    around = Plasma("x", "x", "x", "assumed", None, "", (population_of(ELECTRON, beam), ions))
+    model = surface_model(
+        [load_material("gold")], [around], solar_spectrum(), law="lin_joy_2005", radius_m=1.0
+    )
+    v = -np.concatenate([np.linspace(9e3, 1.2e4, 500), np.geomspace(1.0, 2e5, 500)])
+    rows = surface_currents(model, v[:, None], Setting(np.ones((v.size, 1)), np.zeros((v.size, 1))))
+    assert np.isfinite(rows.by_mechanism).all()
+    assert np.isfinite(rows.slope).all()
+    assert np.isfinite(net_currents([model]).coefficients).all()
+    # beyond the beam by twenty widths nothing arrives
+    electron = rows.by_mechanism[:, 0, 0]
+    beyond = v < -(1e4 + 20.0 * width_eV)
+    assert np.abs(electron[beyond]).max() < 1e-12 * np.abs(electron).max()

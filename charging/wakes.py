@@ -1,0 +1,28 @@
+"""Plasmas in low orbit that hold no light ions, so that wakes in them cannot be assessed."""
+
+from __future__ import annotations
+
+from typing import Final
+
+from scipy.constants import atomic_mass
+
+from charging.orbit_run import ModeRun
+from environments.orbit import EARTH_RADIUS_M
+
+STREAMING_BELOW_M: Final = 2.0e6
+"""Height below which the ionosphere streams past a spacecraft faster than its heavy ions move."""
+_LIGHT_KG: Final = 8.0 * atomic_mass
+
+
+def heavy_plasmas(mode: ModeRun) -> tuple[str, ...]:
+    """Names of the whole plasmas of a run in low orbit whose ions are all heavier than He+."""
+    if mode.way.trajectory is None:
+        return ()
+    if mode.way.lowest_m() - EARTH_RADIUS_M > STREAMING_BELOW_M:
+        return ()
+    found = []
+    for plasma in dict.fromkeys(mode.whole_plasmas):
+        ions = [p.species.mass_kg for p in plasma.populations if p.species.charge_number > 0]
+        if ions and min(ions) > _LIGHT_KG:
+            found.append(plasma.name)
+    return tuple(found)
