@@ -14,7 +14,7 @@ from charging.cli.output import one_line, print_json, print_table, volts
 from charging.cli.runs import AllowOutside, CaseOrResult, Json
 
 if TYPE_CHECKING:
-    from charging.review.check import Review
+    from charging.review.check import Options, Review
 
 EXIT = {"within": 0, "exceeded": 1, "not assessable": 4}
 MOST_WORKERS = 2
@@ -71,7 +71,7 @@ def review(
     The folder of a finished sweep gives its probabilistic verdict. Exit 0 all within, 1 a limit
     exceeded, 4 not assessable, 2 bad input, 3 no solution.
     """
-    from charging.review.check import Options, load_case_or_result, review_case
+    from charging.review.check import load_case_or_result, review_case
     from charging.review.document import review_document
     from charging.review.files import review_target, write_review
 
@@ -79,13 +79,7 @@ def review(
         _leave_if_sweep(case, json=json)
     loaded = load_case_or_result(case, allow_outside=allow_outside)
     target = review_target(case, out)
-    options = Options(
-        fixes=fixes,
-        workers=workers or usual_workers(),
-        progress=_told(),
-        notes=lambda text: print(f"note: {text}", file=sys.stderr, flush=True),
-        corners=corners,
-    )
+    options = _options(workers, fixes=fixes, corners=corners)
     found = review_case(loaded, options)
     if options.progress is not None:
         print(file=sys.stderr)
@@ -97,6 +91,22 @@ def review(
         _print_review(found, document)
         print(f"\nWritten to {target}{os.sep}: report.html, review.json")
     raise typer.Exit(EXIT[found.verdict])
+
+
+def _options(workers: int | None, *, fixes: bool, corners: bool | None = None) -> Options:
+    from charging.errors import printable
+    from charging.review.check import Options
+
+    def note(text: str) -> None:
+        print(f"note: {printable(text)}", file=sys.stderr, flush=True)
+
+    return Options(
+        fixes=fixes,
+        workers=workers or usual_workers(),
+        progress=_told(),
+        notes=note,
+        corners=corners,
+    )
 
 
 def _leave_if_sweep(folder: Path, *, json: bool) -> None:
@@ -243,8 +253,12 @@ def compare(
     from charging.review.compare import compare as compared
     from charging.review.compare import reviewed
 
-    count = workers or usual_workers()
-    sides = [reviewed(path, allow_outside=allow_outside, workers=count) for path in (before, after)]
+    options = _options(workers, fixes=False)
+    sides = [
+        reviewed(path, allow_outside=allow_outside, options=options) for path in (before, after)
+    ]
+    if options.progress is not None:
+        print(file=sys.stderr)
     document = compared(sides[0], sides[1])
     if json:
         print_json(document)

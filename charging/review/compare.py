@@ -26,7 +26,9 @@ class Reviewed:
     document: Mapping[str, Any]
 
 
-def reviewed(path: Path, *, allow_outside: bool = False, workers: int = 1) -> Reviewed:
+def reviewed(
+    path: Path, *, allow_outside: bool = False, options: Options | None = None
+) -> Reviewed:
     """Load one side; its review.json is used where it belongs to the same inputs and code.
 
     Raises
@@ -38,7 +40,10 @@ def reviewed(path: Path, *, allow_outside: bool = False, workers: int = 1) -> Re
     kept = _kept(path, loaded)
     if kept is not None:
         return Reviewed(loaded, kept)
-    review = review_case(loaded, Options(fixes=False, workers=workers))
+    options = options or Options(fixes=False)
+    if options.notes is not None:
+        options.notes(f"{path}: no review of these inputs by this program there, so it runs now")
+    review = review_case(loaded, options)
     return Reviewed(loaded, review_document(review))
 
 
