@@ -303,5 +303,7 @@ def _maybe(value: float | None, unit: str) -> str:
 def _short(value: object) -> str:
     from charging.errors import printable
 
+    if isinstance(value, float):
+        return f"{value:.6g}"
     text = "-" if value is None else printable(str(value))
     return text if len(text) <= 60 else f"{text[:57]}..."

@@ -247,21 +247,25 @@ def _rerun(
     for scene, variant in dict.fromkeys((*everywhere, *_probes(live, cells))):
         by_scene.setdefault(scene, []).append(variant)
     wanted = list(dict.fromkeys(row.quantity for row in live))
+    # the case as it stands comes first: a limit may stand worse at the corner of another one
+    designs: list[Design] = [(), *(fix.design for fix in fixes)]
     asked = [
-        (scene, [replace(v, design=fix.design) for fix in fixes for v in variants])
+        (scene, [replace(v, design=design) for design in designs for v in variants])
         for scene, variants in by_scene.items()
     ]
-    worst = np.zeros((len(fixes), len(live)))
+    worst = np.zeros((len(designs), len(live)))
     for (_, variants), found in zip(asked, runner.solve(loaded, asked, wanted), strict=True):
         of_scene = _severity(found.value, live, wanted)
-        each = of_scene.reshape(len(fixes), len(variants) // len(fixes), len(live))
+        each = of_scene.reshape(len(designs), len(variants) // len(designs), len(live))
         worst = np.maximum(worst, each.max(axis=1))
+    before = np.maximum(worst[0], [row.severity for row in live])
     return [
-        _judged(loaded, live, fix, severities) for fix, severities in zip(fixes, worst, strict=True)
+        _judged(loaded, live, fix, before, severities)
+        for fix, severities in zip(fixes, worst[1:], strict=True)
     ]
 
 
-def _judged(loaded: LoadedCase, live: Sequence[Row], fix: Fix, worst: Array) -> Fix:
+def _judged(loaded: LoadedCase, live: Sequence[Row], fix: Fix, before: Array, worst: Array) -> Fix:
     """Status of a fix after its reruns; pairs with another surface are no fault of its own."""
     if not np.isfinite(worst).all():
         return replace(fix, status="no solution", worst=float("inf"))
@@ -275,9 +279,7 @@ def _judged(loaded: LoadedCase, live: Sequence[Row], fix: Fix, worst: Array) -> 
     worsened = [
         named(row.quantity, row.requirement.requirement_id)
         for i, row in enumerate(live)
-        if i not in own
-        and worst[i] > 1.0
-        and (row.severity <= 1.0 or worst[i] > row.severity + WORSE)
+        if i not in own and worst[i] > 1.0 and (before[i] <= 1.0 or worst[i] > before[i] + WORSE)
     ]
     status: Status = "solves" if size <= 1.0 else "not enough"
     if worsened:
