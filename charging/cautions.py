@@ -7,7 +7,7 @@ from charging.barriers import overcount, without_barrier
 from charging.case import LoadedCase
 from charging.currents.uncharged import what_decides
 from charging.orbit_run import ModeRun
-from charging.wakes import heavy_plasmas
+from charging.wakes import heavy_plasmas, outrun_plasmas
 from environments.orbit import EARTH_RADIUS_M
 from environments.plasma import warnings_of as spectrum_warnings
 
@@ -31,6 +31,11 @@ def cautions(loaded: LoadedCase, mode: ModeRun) -> tuple[str, ...]:
         f'wake ion current not assessable in plasma "{name}": it holds no ions as light as '
         "He+, and counts as isotropic here"
         for name in heavy_plasmas(mode)
+    ]
+    found += [
+        f'ions of plasma "{name}" are slower than the spacecraft but count as coming from all '
+        'sides: no ram, no wake; model = "regions" or a file of moments has both'
+        for name in outrun_plasmas(mode)
     ]
     found += _deciding_assumptions(loaded, mode)
     if loaded.case.shape:

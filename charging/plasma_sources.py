@@ -17,6 +17,7 @@ from environments.activity import Activity
 from environments.errors import EnvironmentDataError
 from environments.magnetosphere import magnetic_place
 from environments.moon import MOON_RADIUS_M, moon_position_m
+from environments.orbit import EARTH_RADIUS_M
 from environments.plasma import ELECTRON, Plasma
 from environments.plasma_timeline import PlasmaTimeline
 from environments.population_series import smoothstep
@@ -73,10 +74,34 @@ def _measured(case: Case, way: Path, timeline: PlasmaTimeline, knots_s: Array) -
     """Plasma of a file, whose rows become knots."""
 
     def sample(time_s: Array) -> Sampled:
-        return _sampled(timeline.along(moments(case, time_s)))
+        return _carried(way, time_s, _sampled(timeline.along(moments(case, time_s))))
 
     knots = np.union1d(knots_s, _rows_s(case, timeline.times))
     return plasma_on_way(case, way, sample, knots, (), case.plasma.base, REGIONS)
+
+
+def _carried(way: Path, time_s: Array, found: Sampled) -> Sampled:
+    """Measured ions near the Earth, turning with it: a spacecraft outruns the cold ones.
+
+    Beyond `TURNS_WITHIN_RE` of an Earth orbit, and elsewhere, they count as arriving from all
+    sides: a file of moments says nothing of their motion.
+    """
+    if way.trajectory is None:
+        return found
+    position, own = way.trajectory.position_velocity(time_s)
+    turning = EARTH_TURNS_RAD_S * np.stack([-position[1], position[0], np.zeros(len(time_s))])
+    near = np.sqrt((position**2).sum(axis=0)) < TURNS_WITHIN_RE * EARTH_RADIUS_M
+    if not near.any():
+        return found
+    velocity = np.where(near, turning, own)
+    return found._replace(
+        populations=tuple(
+            one
+            if one.species.charge_number < 0 or one.velocity_m_s is not None
+            else replace(one, velocity_m_s=velocity)
+            for one in found.populations
+        )
+    )
 
 
 def activity_of(case: Case, mode: Mode | None, files: CaseFiles) -> Activity:
@@ -112,6 +137,8 @@ def _substorms(case: Case) -> tuple[Substorm, ...]:
 
 
 EARTH_TURNS_RAD_S = 7.2921159e-5  # sidereal; IERS conventions
+TURNS_WITHIN_RE = 6.0
+"""Plasma counts as turning with the Earth out to here (assumed; the plasmasphere by day)."""
 HOT_EV = 100.0
 """Temperature above which electrons of an arc's plasma count as precipitating."""
 

@@ -16,6 +16,7 @@ from charging.review.limits import (
     requirements,
     standing,
 )
+from charging.wakes import heavy_plasmas
 
 Array = NDArray[np.float64]
 
@@ -46,7 +47,8 @@ class SurfacePeaks:
 
     lowest, highest : absolute potential [V]; normal, inverted : lowest and highest of
     surface minus structure [V]; field : largest |field| in the dielectric, signed [V/m];
-    bonded : part of structure.
+    bonded : part of structure; unfed : stands for a part of the run in a wake that no light
+    ions fill.
     """
 
     surface: str
@@ -57,6 +59,7 @@ class SurfacePeaks:
     inverted: Peak
     field: Peak
     bonded: bool
+    unfed: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -118,8 +121,18 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
         return Peak(value, time, law)
 
     along = mode.around.along
+    heavy = bool(heavy_plasmas(mode))
+    unfed_at_times = frozenset(
+        np.flatnonzero(along.unfed_wakes()).tolist()
+        if along is not None and along.streams is not None
+        else range(len(loaded.case.surface))
+        if heavy
+        else ()
+    )
 
     def told(number: int, found: Peak) -> Peak:
+        if heavy:
+            return replace(found, assessable=abs(found.value) < NO_VOLTAGE_V)
         if along is None or along.streams is None:
             return found
         unfed = bool(along.unfed_at(np.array([found.time_s]))[0, number])
@@ -146,6 +159,7 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
                 inverted=told(i, peak(difference, True)),
                 field=told(i, high if abs(high.value) >= abs(low.value) else low),
                 bonded=bool(node == 0),
+                unfed=i in unfed_at_times and bool(node != 0),
             )
         )
     structure = [v[:, 0] for v in absolute]
@@ -189,10 +203,11 @@ def _judge(loaded: LoadedCase, mode: ModeRun, requirement: Requirement,
     ]
     stand = standing(requirement, peak.value)
     assumed = mode.assumed
-    if not peak.assessable:
+    if not peak.assessable or (found.unfed and not stand.exceeded):
+        when = "" if not peak.assessable else "for a part of the run: "
         return Judgement(
             found.surface, mode.name, stand, peak, "not assessable",
-            "wake ion current not assessable: no ions as light as He+ pass there",
+            f"wake ion current not assessable: {when}no ions as light as He+ pass there",
         )  # fmt: skip
     if stand.exceeded:
         verdict: Verdict = "exceeded"

@@ -4,13 +4,15 @@ from __future__ import annotations
 
 from typing import Final
 
-from scipy.constants import atomic_mass
+from scipy.constants import atomic_mass, e
 
 from charging.orbit_run import ModeRun
 from environments.orbit import EARTH_RADIUS_M
 
 STREAMING_BELOW_M: Final = 2.0e6
 """Height below which the ionosphere streams past a spacecraft faster than its heavy ions move."""
+SPEED_M_S: Final = 7.5e3
+"""Of a spacecraft in low orbit against the plasma."""
 _LIGHT_KG: Final = 8.0 * atomic_mass
 
 
@@ -26,3 +28,23 @@ def heavy_plasmas(mode: ModeRun) -> tuple[str, ...]:
         if ions and min(ions) > _LIGHT_KG:
             found.append(plasma.name)
     return tuple(found)
+
+
+def outrun_plasmas(mode: ModeRun) -> tuple[str, ...]:
+    """Names of the whole plasmas of a run in low orbit with ions slower than the spacecraft.
+
+    A plasma named in a case counts as isotropic: it has neither ram nor wake.
+    """
+    if mode.way.trajectory is None:
+        return ()
+    if mode.way.lowest_m() - EARTH_RADIUS_M > STREAMING_BELOW_M:
+        return ()
+    return tuple(
+        plasma.name
+        for plasma in dict.fromkeys(mode.whole_plasmas)
+        if any(
+            p.species.charge_number > 0
+            and 0.5 * p.species.mass_kg * SPEED_M_S**2 > e * p.temperature_eV
+            for p in plasma.populations
+        )
+    )

@@ -178,7 +178,8 @@ def sampled_trajectory(
         if radius.max() > _FARTHEST_M:
             km = 1e-3 * float(radius.max())
             raise EnvironmentDataError(
-                f"holds a position {km:.6g} km away, beyond the Lagrange points of Sun and Earth: wrong unit?",
+                f"holds a position {km:.6g} km away, beyond the Lagrange points of Sun and Earth: "
+                "wrong unit?",
                 file=file,
             )
     for one in segments:

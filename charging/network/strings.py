@@ -204,7 +204,7 @@ def along(low_V: Array, high_V: Array, count: int) -> Points:
 
     Examples
     --------
-    >>> points = along(np.array([[-100.0]]), np.array([[60.0]]), 10)
+    >>> points = along(np.array([[-100.0]]), np.array([[60.0]]), 16)
     >>> float((points.weight_V * points.potential_V**2).sum().round(3))  # (100^3 + 60^3)/3
     405333.333
     """

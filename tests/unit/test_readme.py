@@ -51,7 +51,9 @@ def test_the_first_command_runs_the_demonstration(tmp_path: Path) -> None:
 COMMANDS = re.findall(r"^\| `halflit ([^`]+)`", README, flags=re.MULTILINE)
 
 
-@pytest.mark.parametrize("command", [c for c in COMMANDS if not re.search("CASE|RESULT|BEFORE|STUDY", c)])
+@pytest.mark.parametrize(
+    "command", [c for c in COMMANDS if not re.search("CASE|RESULT|BEFORE|STUDY", c)]
+)
 def test_commands_of_the_table_run(command: str, tmp_path: Path) -> None:
     assert halflit(*shlex.split(command), cwd=tmp_path)
 
