@@ -31,7 +31,12 @@ def barriers(cases: Sequence[Case], surface_node: Index, nodes: int) -> Barriers
     fields: list[BarrierField] = []
     which = np.zeros(len(cases), dtype=np.intp)
     for i, case in enumerate(cases):
-        key = (case.shape, case.body.radius_m, tuple((s.normal, s.area_m2) for s in case.surface))
+        key = (
+            case.shape,
+            case.body.radius_m,
+            tuple((s.normal, s.area_m2) for s in case.surface),
+            _caps(case, surface_node),
+        )
         if key not in keys:
             found = _field(case, surface_node, nodes)
             if found is None:
@@ -61,14 +66,58 @@ def _field(case: Case, surface_node: Index, nodes: int) -> BarrierField | None:
     on_sphere = [(i, s.normal) for i, s in enumerate(case.surface) if s.normal is not None]
     if not on_sphere:
         return None
-    patches = [
-        Patch(normal, case.surface[i].area_m2, int(surface_node[i])) for i, normal in on_sphere
-    ]
-    surface = np.array([i for i, _ in on_sphere], dtype=np.intp)
-    weights = np.zeros((len(patches), len(DISTANCES), nodes))
-    weights[np.arange(len(patches)), 0, surface_node[surface]] = 1.0
-    weights[:, 1:-1] = sphere_weights(patches, case.body.radius_m, nodes, 1.0 + DISTANCES[1:-1])
-    return barrier_field(surface, surface_node[surface], weights)
+    return barrier_field(*_on_sphere(case, on_sphere, surface_node, nodes))
+
+
+def _caps(case: Case, surface_node: Index) -> tuple[int, ...]:
+    """Cap of every surface, by the number of the first surface of that cap.
+
+    What looks the same way and is one conductor, or films alike, is one cap however it is
+    divided.
+    """
+    known: dict[object, int] = {}
+    found = []
+    for i, surface in enumerate(case.surface):
+        film = (surface.material, surface.thickness_m, surface.attached_to, surface.surface_state)
+        alike: object = int(surface_node[i]) if surface.thickness_m is None else film
+        found.append(known.setdefault((surface.normal, alike), i))
+    return tuple(found)
+
+
+def _on_sphere(
+    case: Case,
+    on_sphere: Sequence[tuple[int, tuple[float, float, float]]],
+    surface_node: Index,
+    nodes: int,
+) -> tuple[Index, Index, Array]:
+    """Surfaces, their nodes and weights [S, K, n] of surfaces that stand on the sphere.
+
+    Seen from its own axis a cap is at the potential of its surface; seen from others its
+    parts count by area.
+    """
+    cap_of = _caps(case, surface_node)
+    surfaces = np.array([i for i, _ in on_sphere], dtype=np.intp)
+    caps = list(dict.fromkeys(cap_of[i] for i in surfaces))
+    share = np.zeros((len(caps) + 1, nodes))
+    share[-1, 0] = 1.0  # what no cap covers is structure
+    for i in surfaces:
+        share[caps.index(cap_of[i]), surface_node[i]] += case.surface[i].area_m2
+    area = share[:-1].sum(axis=1)
+    share[:-1] /= area[:, None]
+    normal = dict(on_sphere)
+    patches = [Patch(normal[c], float(area[k]), k) for k, c in enumerate(caps)]
+    along = sphere_weights(
+        patches, case.body.radius_m, len(caps) + 1, 1.0 + DISTANCES[1:-1], structure=len(caps)
+    )
+    weights = np.zeros((len(surfaces), len(DISTANCES), nodes))
+    for row, i in enumerate(surfaces):
+        k = caps.index(cap_of[i])
+        seen = share.copy()
+        seen[k] = 0.0
+        seen[k, surface_node[i]] = 1.0
+        weights[row, 0, surface_node[i]] = 1.0
+        weights[row, 1:-1] = along[k] @ seen
+    return surfaces, surface_node[surfaces], weights
 
 
 class Overcount(NamedTuple):

@@ -157,20 +157,23 @@ class Surface(Table):
         default="as recorded", description="state of the surface for photoemission"
     )
     area_m2: float = Field(
-        default=0.0, gt=0.0, le=1e5, description="needed without face or faces, which give it"
+        default=0.0, ge=1e-9, le=1e5, description="needed without face or faces, which give it"
     )
     face: Name | None = Field(default=None, description="of a [[shape]]: shape.face")
     faces: tuple[Name, ...] = Field(
         default=(), max_length=MOST_ENTRIES, description="several of them, instead of face"
     )
-    thickness_m: float | None = Field(default=None, gt=0.0, le=1.0, description="of a dielectric")
+    thickness_m: float | None = Field(default=None, ge=1e-9, le=1.0, description="of a dielectric")
     normal: Direction | None = Field(default=None, description="outward, body axes")
     tracks_sun: bool = Field(default=False, description="turns about body y towards the Sun")
     side: Literal["front", "back"] | None = Field(default=None, description="of a sun tracker")
     attached_to: Name = Field(default="structure", description="structure or an isolated conductor")
     floating: bool = Field(default=False, description="an isolated conductor")
     capacitance_F: float | None = Field(
-        default=None, gt=0.0, description="of an isolated conductor to what it is attached to"
+        default=None,
+        ge=1e-15,
+        le=1.0,
+        description="of an isolated conductor to what it is attached to",
     )
     neighbours: tuple[Name, ...] = Field(default=(), max_length=MOST_ENTRIES)
     temperature_K: SurfaceTemperature | None = None
@@ -193,7 +196,7 @@ class Link(Table):
     """A resistor between two conductors."""
 
     between: tuple[Name, Name]
-    resistance_ohm: Positive
+    resistance_ohm: float = Field(ge=1e-6, le=1e20)
 
     @model_validator(mode="after")
     def _consistent(self) -> Self:

@@ -270,7 +270,11 @@ def no_solution(
     y = error.state[None]
     mass = balance.mass if balance.mass.ndim == 2 else balance.mass[error.member]
     rate = balance.rhs(which, np.array([error.time_s]), y)[0]
-    volts, moving = net.potentials(y)[0], net.potentials(np.linalg.solve(mass, rate))
+    try:
+        moving = net.potentials(np.linalg.solve(mass, rate))
+    except np.linalg.LinAlgError:
+        moving = rate
+    volts = net.potentials(y)[0]
     node = int(np.argmax(np.abs(moving)))
     name = net.node_names[node]
     time = iso_time(case.epoch, error.time_s)

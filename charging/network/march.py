@@ -186,7 +186,14 @@ def march(
         step = np.where(lands, room, np.where(h[active] > 0.5 * room, 0.5 * room, h[active]))
         # what holds before a jump holds up to it: no stage of a step that ends there looks over
         latest = np.nextafter(stops[goal[active]], -np.inf)
-        y1, error, c2, c3 = _step(system, active, t[active], y[active], step, latest, tolerance)
+        try:
+            y1, error, c2, c3 = _step(system, active, t[active], y[active], step, latest, tolerance)
+        except np.linalg.LinAlgError:
+            raise NoSolutionError(
+                f"the balance of charges has no solution {t[active].min():.6g} s after the start: "
+                "currents or capacitances differ by more than a computer's digits",
+                next_step="Look for extreme thicknesses, capacitances or resistances.",
+            ) from None
         tried[active] += 1
         good = error <= 1.0
         factor = SAFETY * np.maximum(error, 1e-8) ** exponent

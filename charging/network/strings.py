@@ -106,7 +106,7 @@ class Strings:
         """
         x = np.minimum(np.maximum(setting.light[..., self.surface] / FULL_LIGHT, 0.0), 1.0)
         voltage = self.voltage_V if self.voltage_V.ndim == 1 else self.voltage_V[member]
-        span = LEAST_SPAN_V + voltage * x * x * (3.0 - 2.0 * x)
+        span = np.hypot(LEAST_SPAN_V, voltage * x * x * (3.0 - 2.0 * x))
         negative, positive = -self.grounded * span, (1.0 - self.grounded) * span
         if motional_V is None:
             return negative, positive
@@ -212,9 +212,10 @@ def along(low_V: Array, high_V: Array, count: int) -> Points:
     parts = []
     for pick in (np.minimum, np.maximum):
         a, b = np.arcsinh(pick(low_V, 0.0) / SCALE_V), np.arcsinh(pick(high_V, 0.0) / SCALE_V)
-        # an end that stands at 0 V stays there
+        # beyond 0 V an end stays there; an end at 0 V moves with the upper part alone
+        upper = pick is np.maximum
         d_a, d_b = (
-            np.where(pick(end, 0.0) == end, 1.0 / np.hypot(end, SCALE_V), 0.0)
+            np.where((end >= 0.0) == upper, 1.0 / np.hypot(end, SCALE_V), 0.0)
             for end in (low_V, high_V)
         )
         a, b, d_a, d_b = (v[:, None, :] for v in (a, b, d_a, d_b))

@@ -1,5 +1,6 @@
 """Barriers inside the charge balance and in whole runs."""
 
+import re
 from dataclasses import replace
 from pathlib import Path
 
@@ -7,14 +8,16 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from charging.barriers import barriers, overcount, without_barrier
-from charging.case import LoadedCase, load_case
+from charging.barriers import _on_sphere, barriers, overcount, without_barrier
+from charging.case import LoadedCase, load_case, load_case_text
 from charging.cautions import cautions
 from charging.currents.barrier import escape_height
 from charging.dataset import mode_dataset
 from charging.orbit_run import CaseRun, ModeRun, run_case
+from charging.spacecraft import spacecraft_network
 
 Array = NDArray[np.float64]
+DAY = Path(__file__).parents[2] / "cases" / "geo_substorm_day.toml"
 
 HALVES = """
 title = "A sphere, half of it lit"
@@ -255,3 +258,35 @@ def test_share_of_electrons_that_a_barrier_would_turn_back(several: CaseRun) -> 
     expected = float(((1.0 - np.exp(-100.0 / hot)) * thermal).sum() / thermal.sum())
     assert found.surface == 1
     assert found.share == pytest.approx(expected, rel=1e-12)
+
+
+@pytest.mark.parametrize("name", ["nadir panel", "launch ring"])
+def test_a_divided_surface_has_the_weights_of_the_whole(name: str) -> None:
+    """Films or conductors alike that look the same way are one cap however they are divided."""
+    text = DAY.read_text(encoding="utf-8")
+    whole = load_case(DAY).case
+    parts = re.split(r"(?m)^(?=\[\[?)", text)
+    (own,) = [p for p in parts if f'name = "{name}"' in p]
+    area = float(re.findall(r"area_m2 = ([\d.]+)", own)[0])
+    first = own.replace(f"area_m2 = {area}", f"area_m2 = {0.3 * area!r}")
+    second = own.replace(f"area_m2 = {area}", f"area_m2 = {0.7 * area!r}").replace(
+        f'"{name}"', f'"{name} b"', 1
+    )
+    assert first != own
+    divided = load_case_text(text.replace(own, first + second)).case
+    found = {}
+    for label, case in (("whole", whole), ("divided", divided)):
+        net = spacecraft_network(case, load_case(DAY).materials)
+        on_sphere = [(i, s.normal) for i, s in enumerate(case.surface) if s.normal is not None]
+        rows, _, weights = _on_sphere(case, on_sphere, net.surface_node, len(net.node_names))
+        found[label] = {
+            case.surface[i].name: dict(zip(net.node_names, w.T, strict=True))
+            for i, w in zip(rows, weights, strict=True)
+        }
+    for surface, by_node in found["whole"].items():
+        other = found["divided"][surface]
+        for node, w in by_node.items():
+            pieces = w * 0.0 + other[node]
+            if f"{node} b" in other:
+                pieces = pieces + other[f"{node} b"]
+            np.testing.assert_allclose(pieces, w, atol=1e-12, err_msg=f"{surface}, {node}")

@@ -186,7 +186,7 @@ FAULTS = [
     ('name = "bus panel"', 'name = "structure"', "own structure", ""),
     ('name = "bus panel"', 'name = "../bus"', "cannot be a name", "letters"),
     ('name = "bus panel"', 'name = "bus\\n"', "cannot be a name", "letters"),
-    ("area_m2 = 4.0", "area_m2 = -4.0", 'surface "bus panel": area_m2', "above 0"),
+    ("area_m2 = 4.0", "area_m2 = -4.0", 'surface "bus panel": area_m2', "at least 1e-09"),
     ("area_m2 = 4.0", "aera_m2 = 4.0", 'key "aera_m2" is unknown', 'Nearest: "area_m2"'),
     ("normal = [0.0, 0.0, 1.0]", "normal = [0.0, 1.0]", "has 2 entries", "three numbers"),
     ("normal = [0.0, 0.0, 1.0]", "normal = [0, 0, 1, 0]", "has 4 entries", "three numbers"),

@@ -126,7 +126,7 @@ def balance_A(structure_V: float, bus: float, low: float, high: float) -> float:
 @pytest.mark.parametrize(("bus", "voltage"), [(0.0001, 100.0), (0.3, 160.0), (20.0, 100.0)])
 def test_negative_ground_floats_where_the_areas_say(bus: float, voltage: float) -> None:
     mode = run_case(case_of(bus=bus, voltage=voltage)).modes[0]
-    high = voltage + LEAST_SPAN_V
+    high = float(np.hypot(voltage, LEAST_SPAN_V))
     expected = brentq(balance_A, -voltage, 0.0, args=(bus, 0.0, high), xtol=1e-9)
     assert structure(mode) == pytest.approx(expected, abs=0.05)
     assert charge_audit(mode.balance, 0, mode.trajectories[0]).relative < 1e-4
