@@ -38,6 +38,12 @@ class Quantity(NamedTuple):
     basis: str
     source: str
 
+    @property
+    def range(self) -> str:
+        """What is allowed, in words."""
+        unit = "" if self.unit == "1" else f" {self.unit}"
+        return f"{self.low:g} to {self.high:g}{unit}"
+
 
 _WIND: Final = "typical solar wind at 1 AU: Feldman et al. 1977; OMNI statistics"
 
@@ -135,7 +141,7 @@ class Activity:
                 raise EnvironmentDataError(
                     "is out of range", key=(name,),
                     value=value if isinstance(value, float) else None,
-                    allowed=f"{quantity.low:g} to {quantity.high:g} {quantity.unit}",
+                    allowed=quantity.range,
                 )  # fmt: skip
         if self.series:
             if self.times is None or any(v.shape != self.times.shape for v in self.series.values()):
@@ -260,7 +266,7 @@ def read_activity(path: str | Path, constants: Mapping[str, float] | None = None
             if not quantity.low <= value <= quantity.high:
                 raise table.error(
                     f"{name} = {value:g} is out of range", line,
-                    allowed=f"{quantity.low:g} to {quantity.high:g} {quantity.unit}",
+                    allowed=quantity.range,
                 )  # fmt: skip
         values.append(row)
     columns = np.array(values).T
