@@ -18,8 +18,12 @@ app = typer.Typer(
 )
 
 
-@app.command(epilog="Example: halflit case new --out my_case.toml")
+@app.command(epilog="Example: halflit case new my_case.toml")
 def new(
+    file: Annotated[
+        Path | None,
+        typer.Argument(metavar="FILE", show_default=False, help="File to write, as --out."),
+    ] = None,
     out: Annotated[
         Path | None,
         typer.Option("--out", show_default=False, help="File to write [default: print it]."),
@@ -31,7 +35,11 @@ def new(
     Exit 0 done, 2 the file exists or cannot be written.
     """
     from charging.case_template import CASE_TEMPLATE
+    from charging.errors import InputError
 
+    if file is not None and out is not None:
+        raise InputError("FILE and --out are given; give one of them")
+    out = file if out is None else out
     if out is None:
         print(CASE_TEMPLATE, end="")
         return

@@ -54,6 +54,16 @@ def test_new_writes_a_file_once(case, tmp_path):
     assert list(tmp_path.iterdir()) == [file]
 
 
+def test_new_takes_the_file_as_its_argument(case, tmp_path):
+    file = tmp_path / "mine.toml"
+    assert case("new", file)[0] == 0
+    assert file.read_text(encoding="utf-8") == CASE_TEMPLATE
+    assert case("new", file)[0] == 2
+    code, _, err = case("new", file, "--out", tmp_path / "other.toml")
+    assert (code, (tmp_path / "other.toml").exists()) == (2, False)
+    assert "one of them" in err
+
+
 def test_new_does_not_follow_a_dangling_link_without_force(case, tmp_path):
     link = tmp_path / "link.toml"
     link.symlink_to(tmp_path / "elsewhere.toml")
