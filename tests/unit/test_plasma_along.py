@@ -156,6 +156,24 @@ def test_moments_change_across_every_boundary() -> None:
         assert abs(np.log(total[1] / total[0])) > 0.01
 
 
+@pytest.mark.slow
+@pytest.mark.parametrize(
+    "name", ["polar_aurora_night", "meo_navigation_day", "gto_transfer", "inclined_eccentric"]
+)
+def test_moments_change_across_every_boundary_of_a_demonstration(name: str) -> None:
+    case = load_case(Path(__file__).parents[2] / "cases" / f"{name}.toml")
+    along = surroundings_of(case).along
+    assert along is not None
+    region = along.sampled.region
+    edges = np.flatnonzero(region[1:] != region[:-1])
+    assert edges.size >= 6
+    for k in edges:
+        around = along.knots_s[k] + np.array([-300.0, 300.0])
+        n, T = along.moments(np.clip(around, 0.0, case.case.duration_s))
+        before, after = (n * T).sum(axis=0)
+        assert abs(np.log(after / before)) > 1e-3
+
+
 def test_tables_of_the_march_are_the_direct_path() -> None:
     """Net current with streaming ions, both ways, at random potentials and times."""
     case = loaded(REGION, **TRANSFER)
