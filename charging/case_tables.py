@@ -171,7 +171,7 @@ class Surface(Table):
     floating: bool = Field(default=False, description="an isolated conductor")
     capacitance_F: float | None = Field(
         default=None,
-        ge=1e-15,
+        ge=1e-20,
         le=1.0,
         description="of an isolated conductor to what it is attached to",
     )
