@@ -30,6 +30,7 @@ from charging.case_types import (
     CsvFile,
     Direction,
     FreeText,
+    LimitKind,
     Name,
     Positive,
     Reference,
@@ -214,16 +215,7 @@ class MarginPolicy(Table):
 class Limit(Table):
     """A limit that replaces the default of its kind and scope, else adds to them."""
 
-    kind: Literal[
-        "normal",
-        "inverted",
-        "field",
-        "neighbour normal",
-        "neighbour inverted",
-        "neighbour",
-        "energy",
-        "structure",
-    ] = Field(
+    kind: LimitKind = Field(
         description="surface below or above structure; field in a dielectric; dielectric below or "
         "above a neighbouring conductor; difference of neighbours; energy stored in a film; "
         "structure against the plasma"

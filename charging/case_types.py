@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from datetime import datetime
-from typing import Annotated, TypeAlias
+from typing import Annotated, Literal, TypeAlias
 
 from pydantic import AfterValidator, BaseModel, ConfigDict, Field, StringConstraints
 
@@ -34,6 +34,17 @@ Moment: TypeAlias = Annotated[datetime, AfterValidator(utc_time)]
 """Moment in UTC; the file must say Z or an offset."""
 Direction: TypeAlias = Annotated[tuple[float, float, float], AfterValidator(direction)]
 """Unit vector along what was written; any length but zero is accepted."""
+LimitKind: TypeAlias = Literal[
+    "normal",
+    "inverted",
+    "field",
+    "neighbour normal",
+    "neighbour inverted",
+    "neighbour",
+    "energy",
+    "structure",
+]
+"""What a limit bounds."""
 Positive: TypeAlias = Annotated[float, Field(gt=0.0)]
 Share: TypeAlias = Annotated[float, Field(ge=0.0, le=1.0)]
 Angle: TypeAlias = Annotated[float, Field(ge=-360.0, le=360.0)]

@@ -15,7 +15,6 @@ from charging.errors import Problem, ProblemsFound
 
 NAME_PATTERN = r"^[A-Za-z0-9](?:[A-Za-z0-9 ,()._+-]{0,62}[A-Za-z0-9)+])?$"
 FIRST_YEAR, LAST_YEAR = 1950, 2100  # range of the low-precision solar position
-_CONTROL_CHARACTER = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]")  # all but tab and line end
 _LONGEST_TEXT = 4000
 
 

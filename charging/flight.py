@@ -30,7 +30,7 @@ from environments.pointing import (
 )
 from environments.sun import distance_au, earth_shadow_radii_m, illumination, sun_path
 from environments.timescales import utc_at
-from environments.trajectory import KeplerTrajectory, Trajectory, geometry
+from environments.trajectory import Geometry, KeplerTrajectory, Trajectory, geometry
 
 Array = NDArray[np.float64]
 
@@ -117,20 +117,13 @@ class Path:
         InputError
             The body spins and its turns are not followed.
         """
-        leg = self.legs[number]
         if self.trajectory is None:
             return vector
-        if leg.attitude.law == "spin" and not leg.attitude.resolved:
-            raise InputError(
-                "attitude.resolved: strings that move through a field need every turn of the spin",
-                key=("attitude", "resolved"),
-                value=leg.attitude.resolved,
-                allowed="true, or strings without negative_end_m and positive_end_m",
-            )
         shot = geometry(self.trajectory, time_s)
-        axes = self._law(leg.attitude).axes(
-            shot.seconds, shot.position_m, shot.velocity_m_s, shot.sun_direction
-        )
+        axes = self._followed_axes(
+            self.legs[number], shot, "strings that move through a field",
+            "strings without negative_end_m and positive_end_m",
+        )  # fmt: skip
         return to_body(axes, vector)
 
     def along_normals(self, number: int, time_s: Array, vector: Array) -> Array:
@@ -147,19 +140,25 @@ class Path:
         if self.trajectory is None:
             sun = np.broadcast_to(np.array(leg.sun_direction)[:, None], vector.shape)
             return components(self.case.surface, vector, sun, leg)
-        if leg.attitude.law == "spin" and not leg.attitude.resolved:
-            raise InputError(
-                "attitude.resolved: ions that stream past need every turn of the spin",
-                key=("attitude", "resolved"),
-                value=leg.attitude.resolved,
-                allowed="true, or a plasma without streaming ions",
-            )
         shot = geometry(self.trajectory, time_s)
-        axes = self._law(leg.attitude).axes(
-            shot.seconds, shot.position_m, shot.velocity_m_s, shot.sun_direction
+        axes = self._followed_axes(
+            leg, shot, "ions that stream past", "a plasma without streaming ions"
         )
         sun = to_body(axes, shot.sun_direction)
         return components(self.case.surface, to_body(axes, vector), sun, leg)
+
+    def _followed_axes(self, leg: Leg, shot: Geometry, what: str, instead: str) -> Array:
+        """Body axes of a leg; an error that says what needs them where its turns are not kept."""
+        if leg.attitude.law == "spin" and not leg.attitude.resolved:
+            raise InputError(
+                f"attitude.resolved: {what} need every turn of the spin",
+                key=("attitude", "resolved"),
+                value=leg.attitude.resolved,
+                allowed=f"true, or {instead}",
+            )
+        return self._law(leg.attitude).axes(
+            shot.seconds, shot.position_m, shot.velocity_m_s, shot.sun_direction
+        )
 
     def lowest_m(self) -> float:
         """Least distance from the Earth's centre along the run [m]; inf for a fixed case."""

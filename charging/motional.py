@@ -8,15 +8,13 @@ from numpy.typing import NDArray
 from charging.case_strings import ArrayString
 from charging.case_tables import Case
 from charging.flight import Path, moments
+from environments.earth_axes import turning_with_earth_m_s
 from environments.magnetic_field import field_T, motional_field_V_m, motional_potential_V
 
 Array = NDArray[np.float64]
 
 FIELD_WITHIN_M = 6.0 * 6.371e6
 """Distance within which a dipole stands for the Earth's field."""
-
-EARTH_TURNS_RAD_S = 7.2921159e-5
-"""Sidereal rate, IERS conventions."""
 
 
 def field_aboard_V_m(case: Case, way: Path, time_s: Array) -> Array:
@@ -31,7 +29,7 @@ def field_aboard_V_m(case: Case, way: Path, time_s: Array) -> Array:
     near = (position**2).sum(axis=0) < FIELD_WITHIN_M**2
     if near.any():
         place = position[:, near]
-        turning = EARTH_TURNS_RAD_S * np.stack((-place[1], place[0], np.zeros(place.shape[1])))
+        turning = turning_with_earth_m_s(place)
         field = field_T(place, moments(case, time_s[near]))
         found[:, near] = motional_field_V_m(velocity[:, near] - turning, field)
     return found

@@ -14,6 +14,7 @@ from charging.flight import Path, epoch64, moments
 from charging.motional import largest_V_m
 from charging.plasma_along import Arc, PlasmaAlong, Sampled, Sampler, plasma_on_way
 from environments.activity import Activity
+from environments.earth_axes import turning_with_earth_m_s
 from environments.errors import EnvironmentDataError
 from environments.magnetosphere import magnetic_place
 from environments.moon import MOON_RADIUS_M, moon_position_m
@@ -89,11 +90,10 @@ def _carried(way: Path, time_s: Array, found: Sampled) -> Sampled:
     if way.trajectory is None:
         return found
     position, own = way.trajectory.position_velocity(time_s)
-    turning = EARTH_TURNS_RAD_S * np.stack([-position[1], position[0], np.zeros(len(time_s))])
     near = np.sqrt((position**2).sum(axis=0)) < TURNS_WITHIN_RE * EARTH_RADIUS_M
     if not near.any():
         return found
-    velocity = np.where(near, turning, own)
+    velocity = np.where(near, turning_with_earth_m_s(position), own)
     return found._replace(
         populations=tuple(
             one
@@ -136,7 +136,6 @@ def _substorms(case: Case) -> tuple[Substorm, ...]:
     return tuple(found)
 
 
-EARTH_TURNS_RAD_S = 7.2921159e-5  # sidereal; IERS conventions
 TURNS_WITHIN_RE = 6.0
 """Plasma counts as turning with the Earth out to here (assumed; the plasmasphere by day)."""
 HOT_EV = 100.0

@@ -16,7 +16,7 @@ from charging.review.limits import (
     requirements,
     standing,
 )
-from charging.wakes import heavy_plasmas
+from charging.wakes import heavy_plasmas, unfed_surfaces
 
 Array = NDArray[np.float64]
 
@@ -122,13 +122,7 @@ def mode_summary(loaded: LoadedCase, mode: ModeRun) -> ModeSummary:
 
     along = mode.around.along
     heavy = bool(heavy_plasmas(mode))
-    unfed_at_times = frozenset(
-        np.flatnonzero(along.unfed_wakes()).tolist()
-        if along is not None and along.streams is not None
-        else range(len(loaded.case.surface))
-        if heavy
-        else ()
-    )
+    unfed_at_times = unfed_surfaces(mode)
 
     def told(number: int, found: Peak) -> Peak:
         if heavy:

@@ -10,8 +10,8 @@ from numpy.typing import ArrayLike, NDArray
 
 from environments.errors import EnvironmentDataError, nearest_name
 from environments.substorm import Substorm
-from environments.text_table import number, read_table
-from environments.timescales import read_tai, utc_from_tai
+from environments.text_table import increasing_times, number, read_table
+from environments.timescales import utc_from_tai
 
 Array = NDArray[np.float64]
 
@@ -253,13 +253,8 @@ def read_activity(path: str | Path, constants: Mapping[str, float] | None = None
             raise table.error(f"column {name} is also given as a constant", table.columns_line)
     stamps: list[np.datetime64] = []
     values: list[list[float]] = []
-    for line, cells in table.rows:
-        try:
-            stamps.append(read_tai(cells[0], "UTC", zone="required"))
-        except EnvironmentDataError as error:
-            raise table.error(str(error), line) from error
-        if len(stamps) > 1 and stamps[-1] <= stamps[-2]:
-            raise table.error(f"time {cells[0]} is not after the one before", line)
+    for stamp, line, cells in increasing_times(table):
+        stamps.append(stamp)
         row = [number(cell, line, table.file) for cell in cells[1:]]
         for name, value in zip(table.columns[1:], row, strict=True):
             quantity = QUANTITIES[name]

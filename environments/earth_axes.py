@@ -20,6 +20,36 @@ _DAY: Final = np.timedelta64(86400 * 10**9, "ns")
 _DAYS_PER_CENTURY: Final = 36525.0
 _ARCSEC: Final = np.pi / 648000.0
 
+EARTH_TURNS_RAD_S: Final = 7.2921159e-5
+"""Sidereal rate about the pole; IERS conventions."""
+
+
+def turning_with_earth_m_s(position_m: ArrayLike) -> Array:
+    """Velocity of what turns with the Earth as a rigid body.
+
+    Parameters
+    ----------
+    position_m : array_like, shape (3, N)
+        From the Earth's centre [m], GCRS-like; the pole counts as the third axis.
+
+    Returns
+    -------
+    ndarray, shape (3, N)
+        [m s-1], inertial.
+
+    Raises
+    ------
+    ValueError
+        Not vectors.
+
+    Examples
+    --------
+    >>> float(turning_with_earth_m_s([[6378137.0], [0.0], [0.0]])[1, 0].round(1))  # to the east
+    465.1
+    """
+    x, y, _ = as_vectors(position_m, "position_m")
+    return np.asarray(EARTH_TURNS_RAD_S * np.stack((-y, x, np.zeros_like(x))), dtype=np.float64)
+
 
 def centuries_tt(times: ArrayLike) -> Array:
     """Julian centuries of Terrestrial Time since J2000 at UTC times.

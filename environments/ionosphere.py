@@ -19,6 +19,7 @@ from numpy.typing import ArrayLike, NDArray
 from scipy.constants import e
 
 from environments.coefficients import Coefficient
+from environments.earth_axes import turning_with_earth_m_s
 from environments.ionosphere_climatology import (
     F107_RANGE,
     TABLE,
@@ -78,7 +79,6 @@ _GRID_KM: Final = (100.0, 2000.0, 20.0)
 _FOOT_KM: Final = 150.0
 _ANCHOR_KM: Final = 600.0
 _MAX_DECLINATION: Final = 0.39777  # sine of the obliquity, 23.44 deg
-_EARTH_TURNS_RAD_S: Final = 7.2921159e-5  # sidereal; IERS conventions
 _GM: Final = 3.986004418e14
 
 
@@ -264,8 +264,7 @@ def ionosphere_series(found: Ionosphere, position_m: ArrayLike) -> tuple[Populat
     tuple of PopulationSeries
         Electrons, O+, He+, H+.
     """
-    x, y, _ = as_vectors(position_m, "position_m")
-    velocity = np.asarray(_EARTH_TURNS_RAD_S * np.stack((-y, x, np.zeros_like(x))))
+    velocity = turning_with_earth_m_s(position_m)
     source = "International Reference Ionosphere climatology; diffusive equilibrium"
     rows = (
         (ELECTRON, found.electron_density_m3, found.electron_temperature_eV),

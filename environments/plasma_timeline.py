@@ -14,7 +14,7 @@ from environments.plasma import BASES
 from environments.population_series import PopulationSeries
 from environments.regions import REGIONS, RegionPlasma
 from environments.species import SPECIES, Species
-from environments.text_table import TextTable, number, read_table
+from environments.text_table import TextTable, increasing_times, number, read_table
 from environments.timescales import read_tai, utc_from_tai
 from environments.two_maxwellians import spectrum_moments, two_maxwellians
 
@@ -245,14 +245,7 @@ def _species(population: str) -> Species | None:
 
 
 def _times(table: TextTable) -> Stamps:
-    stamps: list[np.datetime64] = []
-    for line, cells in table.rows:
-        try:
-            stamps.append(read_tai(cells[0], "UTC", zone="required"))
-        except EnvironmentDataError as error:
-            raise table.error(str(error), line) from error
-        if len(stamps) > 1 and stamps[-1] <= stamps[-2]:
-            raise table.error(f"time {cells[0]} is not after the one before", line)
+    stamps = [stamp for stamp, _, _ in increasing_times(table)]
     if len(stamps) < 2:
         raise table.error("holds one row; a timeline needs two", table.rows[0][0])
     return utc_from_tai(np.array(stamps))

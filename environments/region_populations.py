@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from scipy.constants import electron_mass
 
 from environments import lunar_wake, plasma_sheet, plasmasphere, tail_lobe
+from environments.earth_axes import turning_with_earth_m_s
 from environments.magnetosheath import Magnetosheath
 from environments.plasma_sheet import SheetMoments
 from environments.population_series import PopulationSeries
@@ -21,7 +22,6 @@ Array = NDArray[np.float64]
 ALPHA: Final = Species("He++", HELIUM_ION.mass_kg - electron_mass, +2)
 """Alpha particle."""
 
-_EARTH_TURNS_RAD_S: Final = 7.2921159e-5  # sidereal; IERS conventions
 _WIND: Final = "Feldman et al. 1977; Stverak et al. 2009; exponents see environments.solar_wind"
 _SHEATH: Final = "energy balance of the shocked wind; Spreiter, Summers & Alksne 1966"
 _SHEET: Final = "after Korth et al. 1999, Denton et al. 2005; tail Baumjohann et al. 1989"
@@ -179,9 +179,7 @@ def cold_series(
     counted = 1.0 - plasmasphere_end(places.l_shell)
     beside = counted * np.maximum(cold.density_m3 - hot.electron_density_m3, 0.0)
     density = places.cold_only * cold.density_m3 + places.plasma_sheet * beside
-    x, y, _ = from_earth_m
-    turning = _EARTH_TURNS_RAD_S * np.stack((-y, x, np.zeros_like(x)))
-    velocity = np.asarray(turning, dtype=np.float64)
+    velocity = turning_with_earth_m_s(from_earth_m)
     found = [
         PopulationSeries(
             ELECTRON, "maxwellian", None, density, cold.temperature_eV, velocity,

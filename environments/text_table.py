@@ -9,13 +9,16 @@
 """
 
 import re
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
 from stat import S_ISREG
 from typing import Final
 
+import numpy as np
+
 from environments.errors import EnvironmentDataError, nearest_name
+from environments.timescales import read_tai
 
 LARGEST_FILE_BYTES: Final = 10_000_000
 _NUMBER: Final = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eEdD][+-]?\d+)?")
@@ -51,6 +54,31 @@ class TextTable:
             problem, file=self.file, line=line, allowed=more.get("allowed"),
             nearest=more.get("nearest"),
         )  # fmt: skip
+
+
+def increasing_times(table: TextTable) -> Iterator[tuple[np.datetime64, int, list[str]]]:
+    """Read the first cell of row after row as a time in UTC with Z.
+
+    Yields
+    ------
+    datetime64, int, list of str
+        TAI; the line of the row and its cells.
+
+    Raises
+    ------
+    EnvironmentDataError
+        With file and line: no such time, or not after the one before.
+    """
+    last: np.datetime64 | None = None
+    for line, cells in table.rows:
+        try:
+            stamp = read_tai(cells[0], "UTC", zone="required")
+        except EnvironmentDataError as error:
+            raise table.error(str(error), line) from error
+        if last is not None and stamp <= last:
+            raise table.error(f"time {cells[0]} is not after the one before", line)
+        last = stamp
+        yield stamp, line, cells
 
 
 def read_lines(path: str | Path) -> list[str]:

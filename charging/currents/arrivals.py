@@ -53,9 +53,7 @@ def both_limits(
     """
     value, slope = _thermal_arrivals(group, table, collection, strength, pull_V)
     for spectrum in spectra:
-        # per particle: the collected columns count charge, the yields electrons
-        scale = np.full(value.shape[-1], spectrum.current_A_m2 / spectrum.charge_number)
-        scale[:2] = spectrum.current_A_m2
+        scale = _scale_of(spectrum, value.shape[-1])
         present = strength[..., spectrum.plasma, None, None]
         share, d_share = spectrum(pull_V)
         value = value + present * scale * share
@@ -99,10 +97,17 @@ def _limits(
     for k, plasma in enumerate(group.plasma[group.maxwellian]):
         found[..., plasma, :] += each[..., k, :]
     for spectrum in spectra:
-        scale = np.full(found.shape[-1], spectrum.current_A_m2 / spectrum.charge_number)
-        scale[:2] = spectrum.current_A_m2
+        scale = _scale_of(spectrum, found.shape[-1])
         found[..., spectrum.plasma, :] += scale * spectrum(pull_V)[0]
     return found
+
+
+def _scale_of(spectrum: SpectrumTable, columns: int) -> Array:
+    """Currents [A m-2] that columns of shares stand for; see `both_limits`."""
+    # per particle: the collected columns count charge, the yields electrons
+    scale = np.full(columns, spectrum.current_A_m2 / spectrum.charge_number)
+    scale[:2] = spectrum.current_A_m2
+    return scale
 
 
 def _thermal_arrivals(

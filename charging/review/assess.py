@@ -6,8 +6,6 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import NamedTuple
 
-import numpy as np
-
 from charging.array_strings import array_voltage_V
 from charging.case import LoadedCase
 from charging.review.extremes import STRUCTURE, Quantity, node_of
@@ -15,7 +13,7 @@ from charging.review.limits import Requirement, Standing, Verdict, size_of, stan
 from charging.review.nominal import Cell, Place
 from charging.review.sensitivity import Corner
 from charging.review.space import Property, Variant, properties
-from charging.wakes import heavy_plasmas
+from charging.wakes import unfed_surfaces
 
 DRIVES = 0.05
 """Share of the limit by which a property must move a quantity to drive it from elsewhere."""
@@ -192,15 +190,7 @@ def assumed_plasmas(loaded: LoadedCase, cells: Sequence[Cell]) -> list[str]:
 
 def _unfed(loaded: LoadedCase, cells: Sequence[Cell]) -> frozenset[str]:
     """Surfaces whose ion current in the wake is not assessable in some scene."""
-    names: set[str] = set()
-    for cell in cells:
-        along = cell.run.around.along
-        if along is not None and along.streams is not None:
-            unfed = np.flatnonzero(along.unfed_wakes())
-            names |= {loaded.case.names[i] for i in unfed}
-        if heavy_plasmas(cell.run):
-            names |= set(loaded.case.names)
-    return frozenset(names)
+    return frozenset(loaded.case.names[i] for cell in cells for i in unfed_surfaces(cell.run))
 
 
 def _without_source(loaded: LoadedCase) -> list[Property]:

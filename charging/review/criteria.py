@@ -1,18 +1,11 @@
 """Published design limits against surface charging, as data with where they come from."""
 
 from dataclasses import dataclass
-from typing import Literal
+from typing import TypeAlias
 
-Kind = Literal[
-    "normal",
-    "inverted",
-    "field",
-    "neighbour normal",
-    "neighbour inverted",
-    "neighbour",
-    "energy",
-    "structure",
-]
+from charging.case_types import LimitKind
+
+Kind: TypeAlias = LimitKind
 
 
 @dataclass(frozen=True, slots=True)

@@ -13,9 +13,6 @@ from charging.shape.craft import Craft, craft_panels, neighbours, patches
 from charging.shape.solution import field_at, shape_field
 from charging.shape.views import Wings, craft_of, sun_views, table_error
 
-STEP_V = 1000.0
-"""Negative potential of everything but one surface, for the barrier that stands for geometry."""
-
 
 def geometry_account(case: Case) -> dict[str, Any]:
     """Numbers about the shapes of a case.

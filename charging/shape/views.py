@@ -101,26 +101,6 @@ def table_error(craft: Craft, wings: Wings) -> tuple[Array, Array]:
     return np.abs(error).max(axis=1), np.sqrt((error**2).mean(axis=1))
 
 
-def flow_exposure(craft: Craft, towards: Array, angles_rad: Array) -> tuple[Array, Array]:
-    """Mean cosine and free share [S, N] of surfaces in a beam, as of ions in low orbit.
-
-    Parameters
-    ----------
-    craft : Craft
-    towards : ndarray [3, N]
-        Unit vectors in body axes from which the flow comes (along the velocity: ram).
-    angles_rad : ndarray [N]
-        Angles of the wings.
-
-    Returns
-    -------
-    ndarray [S, N], ndarray [S, N]
-        A surface with cosine 0 lies in the wake; the product of both is the part of its area
-        that a beam of parallel ions strikes, per area.
-    """
-    return exposure(craft, towards, angles_rad)
-
-
 def wings_of(leg: Leg) -> Wings:
     """Where the wings stand in a leg of a run."""
     if not leg.parked:

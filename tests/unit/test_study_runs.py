@@ -14,12 +14,11 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-import xarray as xr
 
 from charging.case import load_case
 from charging.errors import InputError
 from charging.orbit_run import run_case
-from charging.study.dataset import by_choice
+from charging.study.dataset import by_choice, open_sweep
 from charging.study.hands import Processes
 from charging.study.plan import Plan, load_study
 from charging.study.report import ranking_csv, report_sweep
@@ -209,7 +208,7 @@ def test_report_of_a_sweep(serial: tuple[Path, list[Results]]) -> None:
         assert 0.0 <= low <= row["exceed_probability"] <= high <= 1.0
         if row["exceed_probability"] == 0.0:
             assert high >= 3.0 / 6.0  # never probability 0
-    with xr.open_dataset(folder / "out" / "sweep.nc") as kept:
+    with open_sweep(folder / "out") as kept:
         assert kept.sizes["member"] == 12
         assert kept["surface_name"].values.tolist() == ["hull", "blanket no. 1.5", "tag"]
         drawn = kept["material_polyimide_film_bulk_resistivity_ohm_m"].values

@@ -14,16 +14,15 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
+from charging.evidence.yields import total_yield
 from materials import load_material
 from materials.backscatter import (
     hunger_kuchler_1979,
-    prokopenko_laframboise_1980,
 )
 from materials.ion_impact import whipple_1981
 from materials.photoemission import yield_per_photon
 from materials.secondary import (
     sanders_inouye_1979,
-    true_secondary_peak,
 )
 
 
@@ -36,25 +35,6 @@ class Check:
     source: str
     basis: str
     ours: Callable[[], float]
-
-
-def total_yield(name: str, energy: float, law: Callable[..., object]) -> float:
-    """Total yield at normal incidence, as a yield bench measures it."""
-    material = load_material(name)
-    delta = np.asarray(
-        law(
-            energy,
-            peak_yield=true_secondary_peak(material),
-            peak_energy_eV=material.value("secondary_yield_peak_energy_eV"),
-        )
-    )
-    eta = prokopenko_laframboise_1980(
-        energy,
-        high_energy=material.value("backscatter_high_energy"),
-        low_energy_drop=material.get("backscatter_low_energy_drop", 0.0),
-        drop_energy_eV=material.get("backscatter_drop_energy_eV", 4e3),
-    )
-    return float(delta + eta)
 
 
 def second_crossover(name: str, law: Callable[..., object]) -> float:
